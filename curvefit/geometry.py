@@ -91,9 +91,7 @@ class Warp:
     @staticmethod
     def terms(u: Array, v: Array) -> Array:
         """The bend polynomial's terms, shape (n, 10): all products u^i v^j with i + j <= 3."""
-        return np.stack(
-            [u**i * v**j for i in range(4) for j in range(4 - i)], axis=-1
-        )
+        return np.stack([u**i * v**j for i in range(4) for j in range(4 - i)], axis=-1)
 
     def _bow(self, xy: Array) -> Array:
         if self.bend is None:

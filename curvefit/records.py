@@ -107,9 +107,7 @@ def _hold(record: Any, name: str, dtype: Any, shape: tuple[int | None, ...]) -> 
     array = np.array(value, dtype=dtype)
     expected = tuple(n if s is None else s for n, s in zip(array.shape, shape, strict=False))
     if array.ndim != len(shape) or array.shape != expected:
-        raise ValueError(
-            f"{type(record).__name__}.{name} has shape {array.shape}, needs {shape}"
-        )
+        raise ValueError(f"{type(record).__name__}.{name} has shape {array.shape}, needs {shape}")
     array.setflags(write=False)
     object.__setattr__(record, name, array)
 

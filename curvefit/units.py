@@ -120,7 +120,9 @@ UNITS: tuple[Unit, ...] = (
 # fmt: on
 
 _SUPERSCRIPTS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-")
-_MARKS = str.maketrans({"·": ".", "⋅": ".", "−": "-", "–": "-", "ℓ": "l", "∕": "/", "⁄": "/", "º": "°"})
+_MARKS = str.maketrans(
+    {"·": ".", "⋅": ".", "−": "-", "–": "-", "ℓ": "l", "∕": "/", "⁄": "/", "º": "°"}
+)
 
 
 def fold(text: str) -> str:
