@@ -133,7 +133,7 @@ class Finding(_Record):
     severity: Severity
     code: str
     message: str
-    where: Location = Location()
+    where: Location = field(default_factory=Location)
     remedy: str = ""
 
 
