@@ -76,9 +76,14 @@ class ChartError(Exception):
         File, page, panel, axis, pixel box, line and key, as far as known.
     remedy : str
         What the user can do; names the notes key or the option.
+
+    Attributes
+    ----------
+    partial : the Reading as far as it got, or None.
     """
 
     exit_code = 4
+    partial: object | None = None
 
     def __init__(self, what: str, where: Location | None = None, remedy: str = "") -> None:
         super().__init__(what)
