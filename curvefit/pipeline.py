@@ -158,9 +158,12 @@ def _traces(panel: Panel, notes: Notes, before: Reading | None) -> tuple[Trace, 
     """The panel's lines; those of a previous reading where nothing that shapes them changed."""
     from curvefit.trace import trace
 
-    if before is not None and any(p is panel for p in before.panels):
-        if _shaping(notes.curves) == _shaping(before.notes.curves):
-            return tuple(t for t in before.traces if t.panel is panel)
+    if (
+        before is not None
+        and any(p is panel for p in before.panels)
+        and _shaping(notes.curves) == _shaping(before.notes.curves)
+    ):
+        return tuple(t for t in before.traces if t.panel is panel)
     return trace(panel, notes.curves)
 
 
