@@ -109,7 +109,7 @@ class Warp:
         flat = np.asarray(xy, float).reshape(-1, 2)
         straight = flat.copy()
         if self.bend is not None:
-            for _ in range(8):  # the bow is a small fraction of the box: a fixed point
+            for _ in range(20):  # the bow is a small fraction of the box: a fixed point
                 straight = flat - self._bow(straight)
         return project(np.linalg.inv(self.matrix), straight)
 

@@ -88,7 +88,7 @@ UNITS: tuple[Unit, ...] = (
     Unit("[ft_i]", "length", _FOOT, "ft", ("ft", "ft.", "feet", "foot", "fthead", "pies", "pieds", "fuss", "piedi", "ftwg", "fth2o")),
     Unit("mm", "length", 1e-3, "mm", ("mm", "millimetre", "millimeter")),
     Unit("cm", "length", 1e-2, "cm", ("cm",)),
-    Unit("[in_i]", "length", _INCH, "in", ("in", "in.", "inch", "inches", '"', "″", "''", "zoll")),
+    Unit("[in_i]", "length", _INCH, "in", ("in", "in.", "inch", "inches", '"', "′′", "''", "zoll")),
     Unit("kPa", "pressure", 1e3, "kPa", ("kpa", "kn/m2")),
     Unit("Pa", "pressure", 1.0, "Pa", ("pa",)),
     Unit("MPa", "pressure", 1e6, "MPa", ("mpa",)),
