@@ -97,7 +97,7 @@ class Warp:
         if self.bend is None:
             return np.zeros_like(xy)
         w, h = self.size
-        return self.terms(2 * xy[:, 0] / w - 1, 2 * xy[:, 1] / h - 1) @ self.bend
+        return np.asarray(self.terms(2 * xy[:, 0] / w - 1, 2 * xy[:, 1] / h - 1) @ self.bend)
 
     def to_panel(self, xy: ArrayLike) -> Array:
         """Page pixels → straightened box pixels; arrays of shape (n, 2)."""

@@ -210,8 +210,9 @@ def _gathered(
     curves: tuple[Curve, ...] = (),
 ) -> tuple[Finding, ...]:
     """The findings that the records of the stages so far carry, in the order of the stages."""
-    records = (*panels, *traces, *curves)
-    return page.findings + tuple(f for record in records for f in record.findings)
+    carried = [p.findings for p in panels]
+    carried += [t.findings for t in traces] + [c.findings for c in curves]
+    return page.findings + tuple(f for findings in carried for f in findings)
 
 
 def _once(findings: tuple[Finding, ...], page: Page) -> tuple[Finding, ...]:

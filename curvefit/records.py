@@ -39,8 +39,10 @@ __all__ = [
     "Band",
     "By",
     "Curve",
+    "DutyPoint",
     "Finding",
     "Fit",
+    "Interval",
     "Mark",
     "Page",
     "Panel",
@@ -532,6 +534,38 @@ class Fit(_Record):
     def curve(self) -> Curve:
         """The fitted curve (the first one of a family)."""
         return self.curves[0]
+
+
+@dataclass(frozen=True, slots=True)
+class Interval(_Record):
+    """A value with its 95 % interval, SI; low and high are None where they are not known."""
+
+    value: float
+    low: float | None = None
+    high: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class DutyPoint(_Record):
+    """One crossing of pump and system, SI; None where the chart or the system does not tell.
+
+    shaft_power_si is read from the power curve, hydraulic_power_si is ρgQH, computed_power_si is
+    ρgQH/η. stable : a disturbance of the flow dies away. share_of_bep : flow over BEP flow.
+    energy_si : energy to the shaft per volume pumped [J/m³]; energy_year_si [J].
+    """
+
+    flow_si: Interval
+    head_si: Interval
+    stable: bool
+    efficiency_si: Interval | None = None
+    shaft_power_si: Interval | None = None
+    computed_power_si: Interval | None = None
+    hydraulic_power_si: float | None = None
+    npsh_required_si: Interval | None = None
+    npsh_available_si: Interval | None = None
+    share_of_bep: float | None = None
+    energy_si: float | None = None
+    energy_year_si: float | None = None
 
 
 @dataclass(frozen=True, slots=True, eq=False)

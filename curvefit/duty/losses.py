@@ -29,7 +29,7 @@ def velocity_head(flow: Array, diameter: float) -> Array:
 
 @dataclass(frozen=True, slots=True)
 class Pipe:
-    """A length of pipe; exactly one of roughness [m], friction_factor, hazen_williams_c is given."""
+    """A length of pipe, with one of roughness [m], friction_factor or hazen_williams_c."""
 
     name: str
     length: float
@@ -63,7 +63,9 @@ class Pipe:
         assert self.roughness is not None
         assert liquid.viscosity is not None
         reynolds = 4.0 * flow / (np.pi * self.inside_diameter * liquid.viscosity)
-        return np.array([_darcy(re, self.roughness / self.inside_diameter) for re in reynolds])
+        return np.array(
+            [_darcy(float(re), self.roughness / self.inside_diameter) for re in reynolds]
+        )
 
     @property
     def method(self) -> str:
@@ -176,7 +178,7 @@ def k_of_type(kind: str, bore: float, other_bore: float | None = None) -> float:
             Di1=_other(other_bore), Di2=bore, method="Rennels"
         ),
         "sudden_expansion": lambda: f.diffuser_sharp(
-            Di1=bore, Di2=_other(other_bore), method="Borda-Carnot"
+            Di1=bore, Di2=_other(other_bore), method="Rennels"
         ),
     }
     return float(at[kind]())

@@ -95,7 +95,7 @@ def line_of_fit(fit: Fit) -> Line:
     def on_grid(effect: Array) -> Callable[[Array], Array]:
         return lambda flow: np.interp(flow, grid, effect)
 
-    causes = {}
+    causes: dict[str, Callable[[Array], Array]] = {}
     if fit.factors is not None:
         causes |= {f"{fit.name} line {i}": on_grid(row) for i, row in enumerate(fit.factors)}
     if fit.calibration is not None:

@@ -201,8 +201,8 @@ class _Reader:
             try:
                 if not match:
                     raise ValueError
-                head, flow = parse(match[2], "length"), parse(match[3], "flow")
-                value = float(match[1]) * head.factor / flow.factor**2
+                length, rate = parse(match[2], "length"), parse(match[3], "flow")
+                value = float(match[1]) * length.factor / rate.factor**2
             except (ValueError, InputError) as error:
                 raise self.fail(
                     "loss_coefficient", f"{value!r} is not understood", remedy
