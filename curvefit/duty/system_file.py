@@ -83,16 +83,31 @@ class _Reader:
         self.file = file
 
     def fail(self, key: str, what: str, remedy: str) -> InputError:
-        name = key.rpartition(".")[2].partition("[")[0]
-        line = next(
-            (
-                i
-                for i, one in enumerate(self.lines, 1)
-                if re.search(rf"(^|[\s\[.{{,]){re.escape(name)}\s*(=|\]|\.)", one)
-            ),
-            None,
-        )
-        return InputError(what, Location(file=self.file, line=line, key=key), remedy)
+        return InputError(what, Location(file=self.file, line=self.line_of(key), key=key), remedy)
+
+    def line_of(self, key: str) -> int | None:
+        """The line on which a key such as "discharge.pipe[2].length" stands, or its table does."""
+        table, _, name = key.rpartition(".")
+        start = self.header(table)
+        if name.endswith("]"):
+            return self.header(key) or None
+        for i, one in enumerate(self.lines[start:], start + 1):
+            if i > start + 1 and re.match(r"\s*\[", one) and table:
+                break
+            if re.search(rf"(^|[\s.{{,\[]){re.escape(name)}\s*(=|\])", one):
+                return i
+        return start or None
+
+    def header(self, table: str) -> int:
+        """The line of a table's header, 0 where there is none."""
+        name, _, number = table.rstrip("]").partition("[")
+        rows = [
+            i
+            for i, one in enumerate(self.lines, 1)
+            if name and re.match(rf"\s*\[+\s*{re.escape(name)}\s*\]", one)
+        ]
+        which = int(number) - 1 if number else 0
+        return rows[which] if which < len(rows) else 0
 
     def known(self, table: object, names: tuple[str, ...], where: str) -> Mapping[str, Any]:
         if not isinstance(table, dict):
@@ -197,7 +212,7 @@ class _Reader:
         value = top["loss_coefficient"]
         remedy = 'Write "0.0021 m/(m3/h)2", or a number in m/(m³/s)².'
         if isinstance(value, str):
-            match = re.fullmatch(r"\s*(\S+)\s+(\S+)\s*/\s*\(?([^()]+?)\)?\s*(?:\^?2|²)\s*", value)
+            match = re.fullmatch(r"\s*(\S+)\s+(\w+)\s*/\s*\(?([^()]+?)\)?\s*(?:\^?2|²)\s*", value)
             try:
                 if not match:
                     raise ValueError
