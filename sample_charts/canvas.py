@@ -174,7 +174,7 @@ def _ink_text(paper: NDArray[np.uint8], mark: Text, scale: float) -> None:
     shift = np.array([shift[0] * np.cos(turn) + shift[1] * np.sin(turn),
                       -shift[0] * np.sin(turn) + shift[1] * np.cos(turn)])  # fmt: skip
     corner = np.array(mark.at) * scale + shift - np.array(cover.shape[::-1]) / 2
-    _blend(paper, cover, int(round(corner[0])), int(round(corner[1])), mark.colour)
+    _blend(paper, cover, round(corner[0]), round(corner[1]), mark.colour)
 
 
 def _blend(paper: NDArray[np.uint8], cover: NDArray[np.uint8], x: int, y: int, c: Colour) -> None:

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+import itertools
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -62,17 +63,16 @@ def style(rng: np.random.Generator, mono: bool | None = None, hand: bool = False
 
 def draft(
     scene: Scene, look: Style, width: float = 432.0, height: float = 360.0, top: float = 0.0,
-    page: tuple[float, float] | None = None,
+    page: Drawing | None = None,
 ) -> tuple[Drawing, list[Box]]:  # fmt: skip
-    """(drawing, plot boxes) of a scene; on a `page` of that size the chart starts at `top`."""
-    sheet = page or (width, height)
-    drawing = Drawing(*sheet)
-    shift = (sheet[0] - width) / 2
+    """(drawing, plot boxes) of a scene; the chart is added to a `page` from `top` down."""
+    drawing = page or Drawing(width, height)
+    shift = (drawing.width - width) / 2
     left, right = (_margin(scene, look, side) for side in ("left", "right"))
     y = top + 12.0
     for k, line in enumerate(scene.heading):
-        drawing.text((shift + left, y), line, look.size + (2 if k == 0 else 0), look.font,
-                     align="left")  # fmt: skip
+        size = look.size + (2 if k == 0 else 0)
+        drawing.text((shift + left, y), _written(line, look), size, look.font, align="left")
         y += look.size + 5
     above = look.size * (1.9 if look.title != "along" else 0.6)
     tops = 3.4 * look.size if any(a.side == "top" for a in scene.panels[0].axes) else 0.0
@@ -88,6 +88,15 @@ def draft(
         boxes.append(box)
         at += float(tall) + gap
     return drawing, boxes
+
+
+def _written(text: str, look: Style) -> str:
+    """Text as that hand writes it: a draughtsman letters words in capitals, units as they are."""
+    if look.font != "hand":
+        return text
+    small = ("m", "kW", "mm", "n", "l/s", "L/s", "m3/h", "m³/h", "ft", "gpm", "hp")
+    keep = [w if w in small or set(w) & set("[]=0123456789") else w.upper() for w in text.split()]
+    return " ".join(keep)
 
 
 def _margin(scene: Scene, look: Style, side: str) -> float:
@@ -111,8 +120,9 @@ def _panel(drawing: Drawing, panel: PanelSpec, box: Box, look: Style, scene: Sce
         drawing.area([(a, y0), (b, y0), (b, y1), (a, y1)], (0.88, 0.92, 0.88))
     _grid(drawing, panel, box, look)
     drawing.line([(x0, y0), (x1, y0), (x1, y1), (x0, y1), (x0, y0)], look.frame)
+    lift = 3.2 * look.size if any(a.side == "top" for a in panel.axes) else 0.0
     for axis in panel.axes:
-        _axis(drawing, axis, box, look, scene)
+        _axis(drawing, axis, box, look, scene, lift)
     for k, line in enumerate(panel.lines):
         xy = place(panel, line, box)
         colour = look.colours[k % len(look.colours)]
@@ -125,8 +135,6 @@ def _panel(drawing: Drawing, panel: PanelSpec, box: Box, look: Style, scene: Sce
 
 
 def _points(line: LineSpec) -> LineSpec:
-    from dataclasses import replace
-
     assert line.points is not None
     return replace(line, flow=line.points[0], value=line.points[1])
 
@@ -183,7 +191,9 @@ def number(value: float, axis: AxisSpec, comma: bool, thousands: str = "") -> st
     return text.replace(".", ",") if comma else text
 
 
-def _axis(drawing: Drawing, axis: AxisSpec, box: Box, look: Style, scene: Scene) -> None:
+def _axis(
+    drawing: Drawing, axis: AxisSpec, box: Box, look: Style, scene: Scene, lift: float
+) -> None:
     x0, y0, x1, y1 = box
     side, _, rank = axis.side.partition(".")
     out = (int(rank or 1) - 1) * look.size * 4.3
@@ -211,34 +221,35 @@ def _axis(drawing: Drawing, axis: AxisSpec, box: Box, look: Style, scene: Scene)
         else:
             drawing.text((away, y), text, look.size, look.font,
                          align="right" if side == "left" else "left")  # fmt: skip
-    _title(drawing, axis, (x0, y0, x1, y1), edge, sign, reach, look)
+    _title(drawing, axis, box, edge, sign, reach, look, lift)
 
 
 def _title(drawing: Drawing, axis: AxisSpec, box: Box, edge: float, sign: float, reach: float,
-           look: Style) -> None:  # fmt: skip
+           look: Style, lift: float) -> None:  # fmt: skip
+    """The title; `lift` is the height of a flow axis on top, which value titles clear."""
     x0, y0, x1, y1 = box
     side = axis.side.partition(".")[0]
-    size = look.size
+    size, title = look.size, _written(axis.title, look)
     if side in ("bottom", "top"):
         y = edge + sign * (max(look.tick, 0) + 3.0 + 1.9 * size)
         if look.title == "end":
-            drawing.text((x1, y), axis.title, size, look.font, align="right")
+            drawing.text((x1, y), title, size, look.font, align="right")
         else:
-            drawing.text(((x0 + x1) / 2, y), axis.title, size, look.font)
+            drawing.text(((x0 + x1) / 2, y), title, size, look.font)
     elif look.title == "along":
         x = edge + sign * (max(look.tick, 0) + 5.0 + reach + 0.7 * size)
         turn = 90.0 if side == "left" or look.frame < 1.0 else -90.0
-        drawing.text((x, (y0 + y1) / 2), axis.title, size, look.font, angle=turn)
+        drawing.text((x, (y0 + y1) / 2), title, size, look.font, angle=turn)
     else:
         stagger = 1.3 * size * (axis.side.count(".") and 1)
         x = edge - 2.2 * size if side == "left" else edge + 2.2 * size
-        drawing.text((x, y0 - 1.25 * size - stagger), axis.title, size, look.font,
+        drawing.text((x, y0 - 1.25 * size - stagger - lift), title, size, look.font,
                      align="left" if side == "left" else "right")  # fmt: skip
 
 
 def _labels(drawing: Drawing, panel: PanelSpec, box: Box, look: Style) -> None:
     """Labels at the lines' ends, pushed apart where they would touch."""
-    x0, y0, x1, y1 = box
+    x1 = box[2]
     spots = []
     for k, line in enumerate(panel.lines):
         if not line.label:
@@ -252,13 +263,15 @@ def _labels(drawing: Drawing, panel: PanelSpec, box: Box, look: Style) -> None:
         elif look.label == "end" or not _falls(line):
             x, y = xy[-1]
             inside = x + 4 + length < x1 - 2 or not any(a.side == "right" for a in panel.axes)
-            spots.append([x + 4, y, line.label, "left", colour] if inside
-                         else [x1 - 4, y - 1.1 * look.size, line.label, "right", colour])  # fmt: skip
+            if inside:
+                spots.append([x + 4, y, line.label, "left", colour])
+            else:
+                spots.append([x1 - 4, y - 1.1 * look.size, line.label, "right", colour])
         else:
             x, y = xy[len(xy) // 30]
             spots.append([x + 5, y - 0.85 * look.size, line.label, "left", colour])
     spots.sort(key=lambda s: s[1])
-    for above, below in zip(spots, spots[1:], strict=False):
+    for above, below in itertools.pairwise(spots):
         if abs(above[0] - below[0]) < 40 and below[1] - above[1] < 1.15 * look.size:
             below[1] = above[1] + 1.15 * look.size
     for x, y, label, align, colour in spots:

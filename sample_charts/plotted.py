@@ -103,8 +103,8 @@ def _panel(axes: Any, panel: PanelSpec, scene: Scene, colours: list[str], lined:
     for k, line in enumerate(panel.lines):
         colour = colours[k % len(colours)]
         drawn = on[line.axis]
-        drawn.plot(line.flow, line.value, styles[k % len(styles)], color=colour, clip_on=False,
-                   solid_capstyle="butt", dash_capstyle="butt",
+        drawn.plot(line.flow, line.value, linestyle=styles[k % len(styles)], color=colour,
+                   clip_on=False, solid_capstyle="butt", dash_capstyle="butt",
                    linewidth=1.0 if line.path else None)  # fmt: skip
         if line.points is not None:
             drawn.plot(*line.points, "os^D"[k % 4], color=colour, markersize=4.5, mfc="white")
