@@ -123,7 +123,7 @@ def read_page(
         with _stage("fit", seconds, progress):
             fits = _fits(curves, before, fit)
         with _stage("check", seconds, progress):
-            checked = check(curves, fits)
+            checked = check(curves, fits, pumps)
     except ChartError as error:
         error.at(file=page.file, page=page.number)
         error.partial = done
