@@ -32,7 +32,10 @@ class GivenMark:
 
 @dataclass(frozen=True, slots=True)
 class AxisNotes:
-    """name : "bottom", "left", "right.2" …; the panel is the one that holds these notes."""
+    """name : "bottom", "left", "right.2" …; the panel is the one that holds these notes.
+
+    unit : a UCUM code, or the spelling where the unit has no code (metric horsepower: "PS").
+    """
 
     name: str
     quantity: str | None = None
@@ -67,7 +70,9 @@ class CurveNotes:
     path : a polyline that the line follows. With `path` alone a new line is started; with a name
     or `at` too, it replaces the read line between its ends (`whole`: the whole line).
     leave_out : boxes in which the read line is not trusted; drop : this is no curve.
-    axis : name of its value axis in the panel, flow_axis likewise. SI: diameter_si, speed_si.
+    axis : name of its value axis in the panel ("right.2"), flow_axis likewise.
+    diameter_si, speed_si : SI; speed_ratio instead where the speed is a share of the rated one.
+    level : what a line of equal efficiency, power or NPSH is worth, in `level_unit`.
     """
 
     name: str | None = None
@@ -84,8 +89,10 @@ class CurveNotes:
     diameter_unit: str = "mm"
     speed_si: float | None = None
     speed_unit: str = "/min"
+    speed_ratio: float | None = None
     stages: int | None = None
     level: float | None = None
+    level_unit: str = "%"
     label: str | None = None
     pump: str | None = None
     line: int | None = None
@@ -106,7 +113,11 @@ class PumpNotes:
 
 @dataclass(frozen=True, slots=True)
 class Notes:
-    """All notes on one page; an empty one gives nothing and everything is read."""
+    """All notes on one page; an empty one gives nothing and everything is read.
+
+    given : the given entries as they stand in the file, stored px, by table name: what `write`
+        keeps in the new notes file.
+    """
 
     page: PageNotes = PageNotes()
     panels: tuple[PanelNotes, ...] = ()
