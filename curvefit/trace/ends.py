@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from curvefit.geometry import arc_length
+from curvefit.trace.centre import Line
 
 __all__ = ["extended", "supported"]
 
@@ -35,23 +36,32 @@ def _carry(xy: Array, by: float, memory: float) -> Array:
     return out
 
 
-def supported(ink: Array, known: Array, theta: float | None = None) -> tuple[int, int]:
-    """First and last index of the stretch that carries the line: the largest sum of ink − theta.
+def supported(line: Line) -> tuple[int, int]:
+    """First and last index of the stretch that carries the line.
 
-    ink : (n,) coverage along the line 0–1; known : (n,) 0 where hidden, which counts neither way.
-    theta : the ink a px must show; None: 0.28 of the line's own duty cycle.
+    Notes
+    -----
+    The stretch of the largest sum of a gain a px: clean ink is worth 1 − θ; thick continuous ink
+    (a bundle) a little; blank paper, and ink in bits and pieces (letters), cost θ = 0.28 of the
+    line's own duty cycle; what is hidden counts neither way.
     """
-    seen = np.clip(ink, 0, 1) > 0.45
-    if theta is None:
-        inside = np.nonzero(seen)[0]
-        duty = seen[inside[0] : inside[-1] + 1].mean() if len(inside) else 1.0
-        theta = 0.28 * float(duty)
-    gain = np.where(known > 0.4, seen - theta, np.where(seen, 1 - theta, 0.0))
+    from scipy.ndimage import minimum_filter1d
+
+    clean = line.good
+    inside = np.nonzero(clean)[0]
+    if len(inside) < 4:
+        return 0, 0
+    solid = minimum_filter1d(line.ink, 13) > 0.7
+    duty = float((clean | solid)[inside[0] : inside[-1] + 1].mean())
+    theta = 0.28 * duty
+    gain = np.where(clean, 1.0 - theta, np.where(solid, 0.15, -theta))
+    hidden = (line.known < 0.5) & ~clean
+    gain = np.where(hidden, np.where(line.ink > 0.45, 0.02, -0.02), gain)
     total = np.r_[0.0, np.cumsum(gain)]
     lowest = np.minimum.accumulate(total)
     last = int((total - lowest).argmax())
     first = int(total[: last + 1].argmin())
-    inside = np.nonzero(seen[first:last])[0]
-    if not len(inside):
+    shown = np.nonzero((line.ink > 0.5)[first:last])[0]
+    if not len(shown):
         return first, max(last - 1, first)
-    return first + int(inside[0]), first + int(inside[-1])
+    return first + int(shown[0]), first + int(shown[-1])

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -58,7 +59,7 @@ def _find_lines(dark: Image, margin: int) -> list[tuple[NDArray[np.float64], flo
     """Horizontal lines: their centre row at every column, and thickness [px]."""
     rows, cols = dark.shape
     edges = np.linspace(margin, cols - margin, 13).astype(int)
-    mean = np.stack([dark[:, a:b].mean(1) for a, b in zip(edges[:-1], edges[1:], strict=True)], 1)
+    mean = np.stack([dark[:, a:b].mean(1) for a, b in pairwise(edges)], 1)
     typical = np.sort(mean, axis=1)[:, 3:6].mean(1)  # present in the lower-middle blocks
     base = _local_base(typical, 12)
     excess = np.clip(typical - base, 0, None)

@@ -7,11 +7,14 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
+from curvefit.geometry import resample
 from curvefit.records import Panel
 from curvefit.trace.centre import Line, centred, width_along
 from curvefit.trace.ends import extended, supported
 from curvefit.trace.grid import Inked, without_lines
 from curvefit.trace.ink import MARGIN, Flat, hues, straightened, stroke_width
+from curvefit.trace.sift import is_frame, without_doubles
+from curvefit.trace.text import lettering
 from curvefit.trace.track import Track, Tracking, across, best_track, peel
 
 __all__ = ["Found", "Settings", "lines_of"]
@@ -29,6 +32,15 @@ class Settings:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
+class Layer:
+    """One ink of the drawing, (rows, cols) each: all of it, without letters, and what is visible."""
+
+    ink: Image
+    lines: Image
+    known: Image
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class Found:
     """A line with the ink that it was seen in."""
 
@@ -42,29 +54,38 @@ def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
     flat = straightened(panel)
     inked = without_lines(flat.dark, MARGIN)
     width = stroke_width(inked.ink, 0.02 * panel.warp.size[0])
+    letters = lettering(panel, inked.ink, width)
     found: list[Found] = []
     for member, colour in hues(flat, inked.ink, width):
-        layer = _layer(flat, inked, member)
+        layer = _layer(flat, inked, member, letters)
         found += [Found(line, colour) for line in _follow(layer, width, tolerances)]
-    return found
+    found = [
+        f for f in found if not is_frame(f.line, inked.rows, inked.cols, flat.dark.shape, MARGIN)
+    ]
+    least = 0.6 * tolerances.shortest * panel.warp.size[0]
+    kept = without_doubles([f.line for f in found], least)
+    return [found[i] for i in kept]
 
 
-def _layer(flat: Flat, inked: Inked, member: Image) -> Inked:
-    """One ink alone: the others are neither ink nor blank."""
+def _layer(flat: Flat, inked: Inked, member: Image, letters: NDArray[np.bool_]) -> Layer:
+    """One ink alone: the others are neither ink nor blank, and nor are letters."""
     own = inked.ink * member
     other = inked.ink * (1.0 - member)
     known = inked.known * np.clip(1.0 - 1.5 * other, 0, 1)
-    return Inked(own, known.astype(np.float32), inked.rows, inked.cols)
+    known = np.where(letters, 0.3 * known, known).astype(np.float32)
+    lines = np.where(letters, 0.0, own).astype(np.float32)
+    return Layer(own.astype(np.float32), lines, known)
 
 
-def _follow(layer: Inked, width: float, settings: Settings) -> list[Line]:
+def _follow(layer: Layer, width: float, settings: Settings) -> list[Line]:
     import cv2
 
     rows, cols = layer.ink.shape
     k = float(np.clip(settings.tracking.stroke / width, 0.15, 1.6))
     size = (max(round(cols * k), 16), max(round(rows * k), 16))
     how = cv2.INTER_AREA if k < 1 else cv2.INTER_LINEAR
-    small = cv2.resize(layer.ink, size, interpolation=how)
+    seen = 0.3 * layer.ink + 0.7 * layer.lines
+    small = cv2.resize(seen, size, interpolation=how)
     known = cv2.resize(layer.known, size, interpolation=how)
     reward = across(small, known, settings.tracking)
     scale = np.array([cols / size[0], rows / size[1]])
@@ -74,35 +95,30 @@ def _follow(layer: Inked, width: float, settings: Settings) -> list[Line]:
         if track is None or track.score < settings.shortest * size[0]:
             break
         line, own = _refined(layer, track, scale, width)
-        peel(reward, track, 0.5 * own * k + 0.5)
+        peel(reward, track.x, track.y, 0.5 * own * k + 0.3)
         if line is not None:
+            x, y = ((line.xy + 0.5) / scale - 0.5).T
+            peel(reward, x, y, 0.5 * own * k + 0.3)
             lines.append(line)
     return lines
 
 
 def _refined(
-    layer: Inked, track: Track, scale: NDArray[np.float64], width: float
+    layer: Layer, track: Track, scale: NDArray[np.float64], width: float
 ) -> tuple[Line | None, float]:
     """The track at sub-pixel precision between its true ends, and the width of its stroke."""
     rough = (np.stack([track.x, track.y], 1) + 0.5) * scale - 0.5
-    own = width_along(layer.ink, rough_dense(rough), 3.0 * width + 2)
+    own = width_along(layer.lines, resample(rough, 2.0), 3.0 * width + 2)
     if not np.isfinite(own):
         own = width
     own = float(np.clip(own, 0.4 * width, 2.5 * width))
-    line = centred(layer.ink, layer.known, rough, own)
+    line = centred(layer.lines, layer.known, rough, own)
     reach = 24.0 + 3 * own
-    longer = centred(layer.ink, layer.known, extended(line.xy, reach, 60.0), own, slack=1.5)
-    first, last = supported(longer.ink, longer.known)
+    longer = centred(layer.lines, layer.known, extended(line.xy, reach, 60.0), own, slack=1.5)
+    first, last = supported(longer)
     if last - first < 12:
         return None, own
     return trimmed(longer, first, last), own
-
-
-def rough_dense(rough: NDArray[np.float64]) -> NDArray[np.float64]:
-    """A node polyline with a point every two px."""
-    from curvefit.geometry import resample
-
-    return resample(rough, 2.0)
 
 
 def trimmed(line: Line, first: int, last: int) -> Line:

@@ -1,4 +1,4 @@
-"""A smooth line through scattered offsets: penalised B-spline, its stiffness by cross-validation."""
+"""A smooth line through scattered offsets: penalised B-spline, stiffness by cross-validation."""
 
 from __future__ import annotations
 

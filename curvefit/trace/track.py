@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 __all__ = ["Track", "Tracking", "across", "best_track", "peel"]
 
+Array = NDArray[np.float64]
 Image = NDArray[np.float32]
 STEP = 8  #: columns between two nodes of a track
 
@@ -19,8 +20,7 @@ class Tracking:
 
     stroke: float = 2.4
     steepest: int = 18  #: rows a step of 8 columns
-    turn: int = 3  #: largest change of slope from step to step
-    bend: float = 0.3  #: cost of a change of slope by one row a step, squared
+    bend: tuple[float, ...] = (0.0, 0.4, 3.0, 8.0)  #: cost of a change of slope by 0, 1 … rows
     blank: float = 0.2  #: cost of a pixel without ink
     beside: float = 0.35  #: cost of ink beside the stroke (letters, blots)
 
@@ -38,7 +38,8 @@ def across(ink: Image, known: Image, tracking: Tracking) -> Image:
     """Reward of each working pixel for a line that runs through it from left to right."""
     from scipy.ndimage import uniform_filter1d
 
-    core = uniform_filter1d(ink, 3, axis=0) * 0.5 + ink * 0.5
+    # saturated, so that a steep stroke (tall in its column) is worth no more than a flat one
+    core = np.clip(1.35 * (uniform_filter1d(ink, 3, axis=0) * 0.5 + ink * 0.5), 0, 1)
     gap = round(tracking.stroke * 1.2) + 1
     beside = np.zeros_like(ink)
     beside[gap:-gap] = np.minimum(ink[: -2 * gap], ink[2 * gap :])
@@ -74,7 +75,7 @@ def best_track(reward: Image, tracking: Tracking) -> Track | None:
     slopes = np.arange(-tracking.steepest, tracking.steepest + 1)
     segments = _segments(reward, slopes)
     n, rows, steps = segments.shape
-    turns = [t for k in range(tracking.turn + 1) for t in ({k, -k})]
+    turns = [t for k in range(len(tracking.bend)) for t in ({k, -k})]
     value = np.full((n, rows), -1e6, np.float32)
     source = np.empty((steps, n, rows), np.int8)
     ends = np.empty(steps, np.float32)
@@ -84,7 +85,7 @@ def best_track(reward: Image, tracking: Tracking) -> Track | None:
         turn_of = np.full((n, rows), 127, np.int8)
         for t in turns:
             low, high = max(0, -t), n - max(0, t)
-            candidate = value[low + t : high + t] - np.float32(tracking.bend * t * t)
+            candidate = value[low + t : high + t] - np.float32(tracking.bend[abs(t)])
             better = candidate > best[low:high]
             np.copyto(best[low:high], candidate, where=better)
             np.copyto(turn_of[low:high], np.int8(t), where=better)
@@ -115,11 +116,12 @@ def best_track(reward: Image, tracking: Tracking) -> Track | None:
     return Track(np.array(xs[::-1]), np.array(ys[::-1]), float(ends[last]))
 
 
-def peel(reward: Image, track: Track, half: float, worth: float = 0.0) -> None:
-    """Take a track's ink out of the reward map, in place: it is worth `worth` a pixel."""
+def peel(reward: Image, xs: Array, ys: Array, half: float, worth: float = 0.0) -> None:
+    """Take a line's ink out of the reward map, in place: it is worth `worth` a pixel."""
     rows, cols = reward.shape
-    x = np.arange(max(int(np.ceil(track.x[0])), 0), min(int(track.x[-1]) + 1, cols))
-    y = np.interp(x, track.x, track.y)
+    x = np.arange(max(int(np.ceil(xs.min())), 0), min(int(xs.max()) + 1, cols))
+    order = np.argsort(xs, kind="stable")
+    y = np.interp(x, xs[order], ys[order])
     slope = np.gradient(y) if len(y) > 1 else np.zeros_like(y)
     tall = half * np.sqrt(1.0 + slope * slope)
     for k in range(-int(tall.max()) - 1, int(tall.max()) + 2):

@@ -1,0 +1,70 @@
+"""Letters inside the plot box: ink that is probably no line."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from curvefit.records import Panel
+from curvefit.trace.ink import MARGIN
+
+__all__ = ["lettering"]
+
+Image = NDArray[np.float32]
+
+
+def lettering(panel: Panel, ink: Image, width: float) -> NDArray[np.bool_]:
+    """(rows, cols) mask of the ink of letters: small compact shapes, or shapes inside a word.
+
+    Notes
+    -----
+    A shape is a letter if it is small against the panel, thicker than a stroke (1.9 w + 1) and
+    does not fill its smallest rectangle as a dash does; or if it lies in the box of a word that
+    was read there. Ink that runs on out of the box is a line and stays.
+    """
+    import cv2
+
+    mask = (ink > 0.3).astype(np.uint8)
+    count, labels, stats, _ = cv2.connectedComponentsWithStats(mask, connectivity=8)
+    largest = 0.045 * max(panel.warp.size) + 6 * width
+    small = np.maximum(stats[:, cv2.CC_STAT_WIDTH], stats[:, cv2.CC_STAT_HEIGHT]) < largest
+    small[0] = False
+    worded = _within(_word_mask(panel, ink.shape), labels, count)
+    letters = small & (worded > 0.6)
+    for i in np.nonzero(small & ~letters & (stats[:, cv2.CC_STAT_AREA] > 3 * width))[0]:
+        x, y, w, h = stats[i, :4]
+        shape = labels[y : y + h, x : x + w] == i
+        letters[i] = _compact(shape, int(stats[i, cv2.CC_STAT_AREA]), width)
+    letters[0] = False
+    return np.asarray(letters[labels])
+
+
+def _compact(shape: NDArray[np.bool_], area: int, width: float) -> bool:
+    """Whether a shape is thicker than a stroke and no filled rectangle."""
+    import cv2
+
+    points = np.argwhere(shape)[:, ::-1].astype(np.float32)
+    (_, size, _) = cv2.minAreaRect(points)
+    short, long = sorted((size[0] + 1.0, size[1] + 1.0))
+    return bool(short > 1.9 * width + 1.0 and area < 0.78 * short * long)
+
+
+def _word_mask(panel: Panel, shape: tuple[int, ...]) -> NDArray[np.uint8]:
+    import cv2
+
+    mask = np.zeros(shape, np.uint8)
+    for word in panel.words:
+        if not any(c.isalnum() for c in word.text) or word.score < 0.4:
+            continue
+        box = panel.warp.to_panel(word.box) + MARGIN
+        middle = box.mean(0)
+        box = middle + (box - middle) * 1.06
+        cv2.fillPoly(mask, [np.round(box).astype(np.int32)], 1)
+    return mask
+
+
+def _within(mask: NDArray[np.uint8], labels: NDArray[np.int32], count: int) -> NDArray[np.float64]:
+    """Share of each labelled shape that lies inside the mask."""
+    area = np.bincount(labels.ravel(), minlength=count)
+    inside = np.bincount(labels.ravel(), weights=mask.ravel(), minlength=count)
+    return np.asarray(inside / np.maximum(area, 1))
