@@ -216,12 +216,22 @@ def _axis(
         away = edge + sign * (max(look.tick, 0.0) + 3.0)
         text = number(value, axis, scene.comma, thousands)
         reach = max(reach, text_width(text, look.size, look.font))
-        if flat:
-            drawing.text((x, away + sign * 0.45 * look.size), text, look.size, look.font)
-        else:
-            drawing.text((away, y), text, look.size, look.font,
-                         align="right" if side == "left" else "left")  # fmt: skip
+        spot = (x, away + sign * 0.45 * look.size) if flat else (away, y)
+        align = "centre" if flat else ("right" if side == "left" else "left")
+        drawing.text(spot, text, look.size, look.font, align=align)
+        if not scene.numbers:
+            _paint_over(drawing, spot, text, align, look)
     _title(drawing, axis, box, edge, sign, reach, look, lift)
+
+
+def _paint_over(
+    drawing: Drawing, spot: tuple[float, float], text: str, align: str, look: Style
+) -> None:
+    wide, half = text_width(text, look.size, look.font), 0.62 * look.size
+    left = spot[0] - {"left": 0.0, "centre": wide / 2, "right": wide}[align] - 1.0
+    low, high = spot[1] - half, spot[1] + half
+    right = left + wide + 2.0
+    drawing.area([(left, low), (right, low), (right, high), (left, high)], WHITE)
 
 
 def _title(drawing: Drawing, axis: AxisSpec, box: Box, edge: float, sign: float, reach: float,

@@ -318,11 +318,12 @@ SOURCE = (
 
 def scene(
     kind: str, rng: np.random.Generator, units: str | None = None, language: str | None = None,
-    comma: bool | None = None, **choices: object,
+    comma: bool | None = None, numbers: bool = True, **choices: object,
 ) -> Scene:  # fmt: skip
     """A scene of that kind around an invented pump.
 
-    units : "m3/h", "l/s" or "us"; language of the titles; decimal `comma`.
+    units : "m3/h", "l/s" or "us"; language of the titles; decimal `comma`; `numbers` False
+    paints the tick numbers over.
     """
     if kind in ("inches", "published"):
         units, language = "us", "en"
@@ -336,6 +337,7 @@ def scene(
     if kind == "published":
         points = {c.quantity: [p.tolist() for p in c.points or ()] for c in panels[0].lines}
         heading = ("Pump test (published textbook data)",)
-        return Scene(kind, panels, heading, None, comma, SOURCE, {"points": points})
+        return Scene(kind, panels, heading, None, comma, numbers, SOURCE, {"points": points})
     speed = None if kind == "speeds" else writer.pump.speed
-    return Scene(kind, panels, _heading(writer.pump, rng, speed is not None), speed, comma)
+    heading = _heading(writer.pump, rng, speed is not None)
+    return Scene(kind, panels, heading, speed, comma, numbers)

@@ -122,7 +122,9 @@ def _scale(axes: Any, way: str, spec: AxisSpec, scene: Scene, numbers: bool = Tr
     (axes.set_xlim if way == "x" else axes.set_ylim)(spec.lo, spec.hi)
     axis.set_major_locator(FixedLocator(list(spec.ticks)))
     texts = [number(t, spec, scene.comma) for t in spec.ticks]
-    axis.set_major_formatter(FixedFormatter(texts if numbers else [""] * len(texts)))
+    axis.set_major_formatter(
+        FixedFormatter(texts if numbers and scene.numbers else [""] * len(texts))
+    )
     if title:
         (axes.set_xlabel if way == "x" else axes.set_ylabel)(spec.title)
 

@@ -80,13 +80,18 @@ class PanelSpec:
 
 @dataclass(frozen=True)
 class Scene:
-    """A whole chart. `comma`: decimal comma; `facts`: what else its truth should hold."""
+    """A whole chart.
+
+    comma : decimal comma; numbers : False where the tick numbers are painted over; facts : what
+    else its truth should hold.
+    """
 
     kind: str
     panels: tuple[PanelSpec, ...]
     heading: tuple[str, ...]
     speed: float | None
     comma: bool = False
+    numbers: bool = True
     source: str = "invented"
     facts: dict[str, object] = field(default_factory=dict)
 
