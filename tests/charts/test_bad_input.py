@@ -79,8 +79,9 @@ def test_a_page_that_does_not_exist_is_a_wrong_command(tmp_path):
     [
         ("[[panel]\nname = ", "line 1"),
         ("no_such_key = 3\n", "no_such_key"),
-        ('[[panel]]\nname = "Z"\n[[panel.axis]]\nname = "left"\nunit = "m"\n', "Z"),
-        ('[[panel]]\nname = "A"\n[[panel.axis]]\nname = "left"\nunit = "parsec"\n', "parsec"),
+        ('[[axis]]\npanel = "Z"\nside = "left"\nunit = "m"\n', "Z"),
+        ('[[axis]]\npanel = "A"\nside = "left"\nunit = "parsec"\n', "parsec"),
+        ('[[axis]]\npanel = "A"\nside = "left"\n\ncolour = "red"\n', "colour"),
     ],
 )
 def test_notes_with_an_error_name_the_place(notes, word, tmp_path):
