@@ -11,7 +11,7 @@ __all__ = ["Track", "Tracking", "across", "best_track", "peel"]
 
 Array = NDArray[np.float64]
 Image = NDArray[np.float32]
-STEP = 8  #: columns between two nodes of a track
+STEP = 16  #: columns between two nodes of a track
 
 
 @dataclass(frozen=True, slots=True)
@@ -19,8 +19,8 @@ class Tracking:
     """Costs and rewards of a pixel of length, in working pixels (a stroke is 2.4 of them wide)."""
 
     stroke: float = 2.4
-    steepest: int = 18  #: rows a step of 8 columns
-    bend: tuple[float, ...] = (0.0, 0.4, 3.0, 8.0)  #: cost of a change of slope by 0, 1 … rows
+    steepest: int = 36  #: rows a step of 16 columns
+    bend: tuple[float, ...] = (0.0, 0.4, 1.6, 3.6, 6.4)  #: cost of a change of slope by 0, 1 … rows
     blank: float = 0.2  #: cost of a pixel without ink
     beside: float = 0.35  #: cost of ink beside the stroke (letters, blots)
 
@@ -68,7 +68,7 @@ def best_track(reward: Image, tracking: Tracking) -> Track | None:
 
     Notes
     -----
-    Dynamic programming over (row, slope) in steps of 8 columns. A second-order state carries a
+    Dynamic programming over (row, slope) in steps of 16 columns. A second-order state carries a
     line straight through crossings; a blank costs little, so that gaps are bridged where the
     line goes on behind them.
     """
