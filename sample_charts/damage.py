@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 Array = NDArray[np.float64]
 Picture = NDArray[np.uint8]
 Where = Callable[[Array], Array]
-KINDS = ("clean", "scan", "fax", "photo", "curl", "copy", "tinted", "turned", "coarse")
+KINDS = ("clean", "scan", "fax", "photo", "curl", "copy", "tinted", "turned", "coarse", "through")
 
 
 def damage(picture: Picture, kind: str, rng: np.random.Generator, fine: int = 1
@@ -46,6 +46,8 @@ def damage(picture: Picture, kind: str, rng: np.random.Generator, fine: int = 1
         return _noise(_light(_blur(out, 0.9), rng, 0.35), rng, 4.0), where
     if kind == "copy":
         return _streaks(out, rng), where
+    if kind == "through":
+        out = _through(out)
     return _noise(_paper(_blur(out, float(rng.uniform(0.6, 1.0))), rng), rng, 3.0), where
 
 
@@ -153,6 +155,12 @@ def _fax(picture: Picture, rng: np.random.Generator) -> Picture:
     out[specks < 0.0004] = 0
     out[specks > 0.9985] = 255
     return out
+
+
+def _through(picture: Picture) -> Picture:
+    """The back of the sheet, mirrored and pale."""
+    back = _blur(np.ascontiguousarray(picture[::-1, ::-1]), 2.0)
+    return np.asarray(np.minimum(picture, 255 - (255 - back) // 7), np.uint8)
 
 
 def _streaks(picture: Picture, rng: np.random.Generator) -> Picture:

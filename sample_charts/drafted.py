@@ -29,7 +29,7 @@ class Style:
     width: float
     frame: float  # width of the frame [pt]
     title: str  # "along", "end", "above"
-    label: str  # "end", "start", "on"
+    label: str  # "end", "start", "on" (in a gap of the line), "leader", "legend"
     thousands: str = ""
 
 
@@ -258,6 +258,58 @@ def _title(drawing: Drawing, axis: AxisSpec, box: Box, edge: float, sign: float,
 
 
 def _labels(drawing: Drawing, panel: PanelSpec, box: Box, look: Style) -> None:
+    """The lines' labels, in the style's place."""
+    if look.label == "legend":
+        _legend(drawing, panel, box, look)
+    elif look.label in ("on", "leader"):
+        for k, line in enumerate(panel.lines):
+            if line.label:
+                xy = place(panel, line, box)
+                colour = look.colours[k % len(look.colours)]
+                spot = xy[int(len(xy) * (0.5 + 0.06 * (k % 4)))]
+                (_on if look.label == "on" else _leader)(drawing, spot, line.label, colour, look)
+    else:
+        _end_labels(drawing, panel, box, look)
+
+
+def _on(drawing: Drawing, spot: Array, label: str, colour: Colour, look: Style) -> None:
+    """A label that stands on its line, the line left out behind it."""
+    wide, half = text_width(label, look.size, look.font) / 2 + 2.0, 0.6 * look.size
+    x, y = spot
+    corners = [
+        (x - wide, y - half),
+        (x + wide, y - half),
+        (x + wide, y + half),
+        (x - wide, y + half),
+    ]
+    drawing.area(corners, WHITE)
+    drawing.text((x, y), label, look.size, look.font, colour)
+
+
+def _leader(drawing: Drawing, spot: Array, label: str, colour: Colour, look: Style) -> None:
+    """A label off the line, tied to it by a thin line."""
+    x, y = spot[0] + 22.0, spot[1] - 20.0
+    drawing.line([spot, (x, y), (x + 4, y)], 0.5)
+    drawing.text((x + 6, y), label, look.size, look.font, align="left")
+
+
+def _legend(drawing: Drawing, panel: PanelSpec, box: Box, look: Style) -> None:
+    """A framed list of lines and their labels in the lower left of the box."""
+    named = [(k, line) for k, line in enumerate(panel.lines) if line.label and not line.path]
+    wide = 34.0 + max(text_width(line.label, look.size, look.font) for _, line in named)
+    tall = 1.4 * look.size * len(named) + 4.0
+    x, y = box[0] + 12.0, box[3] - tall - 10.0
+    frame = [(x, y), (x + wide, y), (x + wide, y + tall), (x, y + tall), (x, y)]
+    drawing.area(frame, WHITE)
+    drawing.line(frame, 0.6)
+    for row, (k, line) in enumerate(named):
+        at = y + 2.0 + (row + 0.5) * 1.4 * look.size
+        colour, dash = look.colours[k % len(look.colours)], look.dashes[k % len(look.dashes)]
+        drawing.line([(x + 5, at), (x + 25, at)], look.width, colour, dash)
+        drawing.text((x + 30, at), line.label, look.size, look.font, align="left")
+
+
+def _end_labels(drawing: Drawing, panel: PanelSpec, box: Box, look: Style) -> None:
     """Labels at the lines' ends, pushed apart where they would touch."""
     x1 = box[2]
     spots = []

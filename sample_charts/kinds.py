@@ -214,6 +214,34 @@ def top(w: _Writer) -> tuple[PanelSpec, ...]:
     return (PanelSpec(axes, (head, npsh)),)
 
 
+def feet(w: _Writer) -> tuple[PanelSpec, ...]:
+    """Two diameters, the head in metres on the left and in feet on the right."""
+    lines = tuple(
+        w.line("head", "left", 1.3, diameter=d, label=f"{d:.0f} mm", named=True)
+        for d in _diameters(w.pump, w.rng, 2)
+    )
+    left = w.axis("left", "head", lines)
+    other = "m" if left.unit == "[ft_i]" else "[ft_i]"
+    factor = SI[left.unit] / SI[other]
+    _, _, ticks = nice(0.0, left.hi * factor)
+    inside = tuple(t for t in ticks if t <= left.hi * factor)
+    right = AxisSpec("right", "head", other, w.title("head", other), 0.0, left.hi * factor, inside)
+    return (PanelSpec((w.axis("bottom", "flow", lines, room=1.15), left, right), lines),)
+
+
+def letters(w: _Writer, n: int = 3) -> tuple[PanelSpec, ...]:
+    """Trims named by letters that nearly meet at shut-off: a letter is no diameter."""
+    lines = []
+    for k in range(n):
+        trim = replace(w.pump, flow_best=w.pump.flow_best * (1 - 0.13 * k),
+                       head_best=w.pump.head_best * (1 - 0.01 * k))  # fmt: skip
+        writer = _Writer(trim, w.rng, "m3/h", w.language)
+        writer.unit = w.unit
+        lines.append(writer.line("head", "left", 1.35, label="ABCDEFG"[k]))
+    axes = (w.axis("bottom", "flow", lines, room=1.1), w.axis("left", "head", lines))
+    return (PanelSpec(axes, tuple(lines)),)
+
+
 def quad(w: _Writer) -> tuple[PanelSpec, ...]:
     """Four curves in one box on four value axes."""
     to = 1.3
@@ -307,6 +335,7 @@ _KINDS: dict[str, Callable[..., tuple[PanelSpec, ...]]] = {
     f.__name__: f
     for f in (
         single, family, twin, stacked, quad, hill, top, logs, offset, speeds, inches, published,
+        feet, letters,
     )
 }  # fmt: skip
 KINDS = tuple(_KINDS)

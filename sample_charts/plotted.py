@@ -100,6 +100,8 @@ def _panel(axes: Any, panel: PanelSpec, scene: Scene, colours: list[str], lined:
         axes.axvspan(*panel.shaded, color="#dfe8df", linewidth=0)
     axes.set_axisbelow(True)
     styles = ["-", "--", "-.", (0, (4, 1.5))] if dashes else ["-"]
+    height = axes.get_position().height * axes.figure.get_size_inches()[1] * 72
+    pushes = _pushes(panel, height)
     for k, line in enumerate(panel.lines):
         colour = colours[k % len(colours)]
         drawn = on[line.axis]
@@ -108,7 +110,7 @@ def _panel(axes: Any, panel: PanelSpec, scene: Scene, colours: list[str], lined:
                    linewidth=1.0 if line.path else None)  # fmt: skip
         if line.points is not None:
             drawn.plot(*line.points, "os^D"[k % 4], color=colour, markersize=4.5, mfc="white")
-        _label(drawn, line, colour, k)
+        _label(drawn, line, colour, k, pushes.get(k, 0.0))
 
 
 def _scale(axes: Any, way: str, spec: AxisSpec, scene: Scene, numbers: bool = True,
@@ -129,13 +131,27 @@ def _scale(axes: Any, way: str, spec: AxisSpec, scene: Scene, numbers: bool = Tr
         (axes.set_xlabel if way == "x" else axes.set_ylabel)(spec.title)
 
 
-def _label(axes: Any, line: LineSpec, colour: str, k: int) -> None:
+def _label(axes: Any, line: LineSpec, colour: str, k: int, push: float) -> None:
     if not line.label:
         return
     end = -1 if not line.path or k % 2 else 0
-    axes.annotate(line.label, (line.flow[end], line.value[end]), (4, 0 if not line.path else 6),
+    axes.annotate(line.label, (line.flow[end], line.value[end]), (4, 6 if line.path else push),
                   textcoords="offset points", color=colour, va="center",
                   ha="center" if line.path else "left", annotation_clip=False)  # fmt: skip
+
+
+def _pushes(panel: PanelSpec, height: float) -> dict[int, float]:
+    """How far [pt] each label at a line's end is moved so that no two touch."""
+    ends = sorted(
+        (float(panel.axis(line.axis).fraction(line.value[-1])) * height, k)
+        for k, line in enumerate(panel.lines)
+        if line.label and not line.path
+    )
+    pushed, last = {}, -np.inf
+    for at, k in ends:
+        last = max(at, last + 10.0)
+        pushed[k] = last - at
+    return pushed
 
 
 def raster(figure: Any, dpi: float) -> NDArray[np.uint8]:
