@@ -1,0 +1,251 @@
+"""What stayed in doubt, in words that a user can act on."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from curvefit.errors import Location
+from curvefit.identify.levels import Level
+from curvefit.identify.line import Line
+from curvefit.identify.placing import Label, spot
+from curvefit.identify.quantities import Choice
+from curvefit.identify.quantities import Settings as ChoiceSettings
+from curvefit.identify.wording import Meaning, quantity_named
+from curvefit.records import Axis, Finding, Panel, Trace
+from curvefit.units import from_si
+
+__all__ = [
+    "no_axis",
+    "no_unit",
+    "of_choice",
+    "of_family",
+    "of_label",
+    "of_level",
+    "of_page",
+    "of_twin",
+]
+
+
+def _words(quantity: str) -> str:
+    return {"npsh_required": "NPSH"}.get(quantity, quantity.replace("_", " "))
+
+
+def _at(trace: Trace) -> str:
+    x, y = trace.xy[len(trace.flat) // 2]
+    return f"at = [{x:.0f}, {y:.0f}]"
+
+
+def no_axis(trace: Trace, panel: Panel) -> Finding:
+    """A line that no pair of axes turns into numbers."""
+    return Finding(
+        "warning",
+        "curve.no-axis",
+        f"a line in panel {panel.name} was followed, but the panel has no"
+        " flow axis and value axis to read it against",
+        Location(panel=panel.name),
+        "give the axis two marks in the notes",
+    )
+
+
+def no_unit(trace: Trace, panel: Panel, flow: Axis | None, value: Axis) -> Finding:
+    """A line whose axis has no unit."""
+    which = "flow axis" if flow is None else value.name
+    return Finding(
+        "warning",
+        "curve.no-unit",
+        f"a line in panel {panel.name} could not be turned into numbers: the unit of the"
+        f" {which} is not known",
+        Location(panel=panel.name, axis=None if flow is None else value.name),
+        "give the unit of the axis in the notes",
+    )
+
+
+def of_choice(line: Line, choice: Choice) -> None:
+    """Mark a quantity as a guess where the next best was nearly as good."""
+    needed = ChoiceSettings().margin
+    unread = choice.axis.quantity is None or (choice.axis.guessed and choice.named is None)
+    if choice.axis.quantity is None or choice.margin < needed:
+        line.doubts |= {"quantity"} | ({"axis"} if choice.margin < needed else set())
+    if choice.margin >= needed and not (unread and choice.axis.quantity is None):
+        return
+    why = (
+        f"the axis {choice.axis.name} does not say what it shows"
+        if choice.margin >= needed
+        else f"label, shape and colour favour it by {max(choice.margin, 0):.1f} only,"
+        f" {needed:.1f} needed"
+    )
+    line.findings.append(
+        Finding(
+            "warning",
+            "curve.guess",
+            f"this line was taken as {_words(choice.quantity)} on {choice.axis.name}: {why}",
+            remedy=f"a [[curve]] note with {_at(line.trace)} and quantity or axis settles it",
+        )
+    )
+
+
+def of_level(line: Line, level: Level) -> None:
+    """Say where the level of an iso line is unknown or was mended."""
+    text = "" if level.label is None else f' "{level.label.text}"'
+    if level.value is None:
+        line.findings.append(
+            Finding(
+                "warning",
+                "curve.no-level",
+                f"no level could be read for this line of equal {_words(line.quantity[4:])}"
+                + (f" (its label reads{text}, which its neighbours contradict)" if text else ""),
+                remedy=f"a [[curve]] note with {_at(line.trace)} and level settles it",
+            )
+        )
+    elif level.bent:
+        line.doubts.add("level")
+        line.findings.append(
+            Finding(
+                "info",
+                "curve.level-mended",
+                f"the label{text} was taken as {from_si(level.value, level.unit):g} %,"
+                " the level that fits between its neighbours",
+                remedy=f"a [[curve]] note with {_at(line.trace)} and level settles it",
+            )
+        )
+
+
+def of_label(line: Line, label: Label, meaning: Meaning) -> None:
+    """Say where a label was bent, or stands far from the line that it was given to."""
+    if meaning.value is None or meaning.kind != "diameter":
+        return
+    shown = from_si(meaning.value, meaning.unit)
+    seen = spot(label, line.trace)
+    far = min(seen.gap, seen.start, seen.end)
+    if meaning.cost >= 0.5:
+        line.findings.append(
+            Finding(
+                "info",
+                "label.mended",
+                f'the label "{label.text}" was read as Ø{shown:.6g}, in line with the others',
+                remedy=f"a [[curve]] note with {_at(line.trace)} and diameter settles it",
+            )
+        )
+    if "/" in label.text and meaning.unit == "mm":
+        line.doubts.add("diameter")
+        line.findings.append(
+            Finding(
+                "info",
+                "label.stepped",
+                f'the label "{label.text}" names two diameters; the first, {shown:.6g} mm, stands'
+                " for the line",
+                remedy=f"a [[curve]] note with {_at(line.trace)} and diameter settles it",
+            )
+        )
+    if far > 4.0:
+        line.doubts.add("diameter")
+
+
+def of_twin(line: Line, twin: Line, sure: bool) -> None:
+    """Say that a line was named after its twin in another panel."""
+    line.doubts |= {"diameter"} if twin.diameter is not None else {"speed"}
+    how = "ends at the same flow as" if sure else "has the same place in its family as"
+    line.findings.append(
+        Finding(
+            "info" if sure else "warning",
+            "curve.named-by-twin",
+            f"this line has no label of its own; it {how} the {_words(twin.quantity)} line"
+            f' "{twin.label}" in panel {twin.panel.name} and took its name',
+            remedy=f"a [[curve]] note with {_at(line.trace)} and diameter or speed settles it",
+        )
+    )
+
+
+def of_family(group: Sequence[Line]) -> None:
+    """Warn of lines of a family without a name, and of two with the same."""
+    if len(group) < 2:
+        return
+    named = [x for x in group if _mark(x) is not None]
+    for line in group:
+        if _mark(line) is not None:
+            continue
+        line.findings.append(
+            Finding(
+                "warning",
+                "curve.unlabelled",
+                f"{len(group)} {_words(line.quantity)} lines stand in panel {line.panel.name},"
+                f" {len(named)} have a readable label; this one has none",
+                remedy=f"a [[curve]] note with {_at(line.trace)} and diameter or speed names it",
+            )
+        )
+    marks = [_mark(x) for x in named]
+    for line, mark in zip(named, marks, strict=True):
+        if marks.count(mark) > 1:
+            line.findings.append(
+                Finding(
+                    "warning",
+                    "curve.duplicate-diameter",
+                    f"{marks.count(mark)} {_words(line.quantity)} lines have the label"
+                    f' "{line.label}"',
+                    remedy=f"a [[curve]] note with {_at(line.trace)} and diameter corrects it",
+                )
+            )
+
+
+def _mark(line: Line) -> object:
+    marks = (line.diameter, line.speed, line.speed_ratio, line.stages)
+    if any(m is not None for m in marks):
+        return marks
+    return line.label if line.label and quantity_named(line.label) is None else None
+
+
+def of_page(
+    lines: Sequence[Line],
+    panels: Sequence[Panel],
+    labels: Sequence[Sequence[Label]],
+    used: set[int],
+) -> list[Finding]:
+    """Labels inside a box that name a diameter or level of which no line is known."""
+    found = []
+    for panel, words in zip(panels, labels, strict=True):
+        own = [x for x in lines if x.panel.name == panel.name]
+        width, height = panel.warp.size
+        for label in words:
+            inside = 0 < label.centre[0] < width and 0 < label.centre[1] < height
+            if id(label.word) in used or not inside or label.masked or not own:
+                continue
+            if not _names_a_line(label, own):
+                continue
+            found.append(
+                Finding(
+                    "warning",
+                    "label.unmatched",
+                    f'the label "{label.text}" belongs to no line that was found:'
+                    " one may be missing",
+                    Location(panel=panel.name, box_px=_box(label)),
+                    "draw the missing line in the notes (path), or leave it so if there is none",
+                )
+            )
+    return found
+
+
+def _names_a_line(label: Label, lines: Sequence[Line]) -> bool:
+    """Whether a label says of a line what no line near it says already."""
+    sure = [
+        m for m in label.meanings if m.plain and m.cost < 0.3 and m.kind in ("diameter", "percent")
+    ]
+    if not sure:
+        return False
+    isos = any(x.iso for x in lines)
+    for m in sure:
+        if m.kind == "percent" and not isos:
+            return False
+        near = [x for x in lines if spot(label, x.trace).gap < 2.5]
+        if any(m.value in (x.diameter, x.level, x.speed_ratio) for x in near):
+            return False
+        if m.kind == "diameter" and not any(x.diameter is not None for x in lines):
+            return False
+    return True
+
+
+def _box(label: Label) -> tuple[float, float, float, float]:
+    low, high = label.word.box.min(0), label.word.box.max(0)
+    x0, y0, x1, y1 = (float(v) for v in np.r_[low, high])
+    return x0, y0, x1, y1

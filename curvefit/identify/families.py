@@ -1,0 +1,254 @@
+"""Which label belongs to which line of a family: impeller diameters, speeds, stages, letters.
+
+The lines of a family are ordered (a larger impeller gives more head and reaches a larger flow),
+and so are their labels. All labels are dealt out at once: nearness, what the text had to be bent
+to, the order and the affinity laws (H ~ D², H ~ n²) are costs, and the cheapest dealing wins.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from curvefit.identify.placing import Label, Spot, spot
+from curvefit.identify.wording import Meaning
+from curvefit.records import Trace
+
+__all__ = ["Deal", "Member", "Settings", "deal", "order"]
+
+Array = NDArray[np.float64]
+
+# Exponents that the law and real trims leave between the ratio of heads and of what is printed
+_HEAD_EXPONENTS = {"diameter": (1.3, 4.0), "speed": (1.6, 2.4), "percent": (1.6, 2.4),
+                   "stages": (0.8, 1.2)}  # fmt: skip
+_KINDS = ("diameter", "speed", "percent", "stages", "letter")
+
+
+@dataclass(frozen=True, slots=True)
+class Settings:
+    """Costs of dealing labels to lines; distances in heights of the text.
+
+    missing : a line gets no label; reach : a label further from its line is not its label;
+    far : per height of distance; law : per factor e by which an exponent is out of its range;
+    side : the label stands on the other side of its line than most.
+    """
+
+    missing: float = 2.2
+    reach: float = 6.0
+    far: float = 0.35
+    law: float = 2.0
+    side: float = 0.5
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Member:
+    """One line of a family: where it ends and how high it lies (SI, both only compared)."""
+
+    trace: Trace
+    flow: Array
+    value: Array
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Deal:
+    """What each line got: (label, meaning) or None, in the order of the members; total cost."""
+
+    kind: str
+    given: tuple[tuple[Label, Meaning] | None, ...]
+    cost: float
+
+
+def order(members: Sequence[Member], quantity: str) -> list[int]:
+    """Members from the largest impeller (or speed) to the smallest.
+
+    Notes
+    -----
+    Heads and powers at the flow that all share, in the lower half of it, where the lines of a
+    family do not cross. Efficiency and NPSH lines cross or run together there: by the flow at
+    which they end and, where they all end alike, by what lies right there (a larger impeller has
+    the higher efficiency and the lower NPSH at high flow).
+    """
+    if len(members) < 2:
+        return list(range(len(members)))
+    low = max(float(m.flow[0]) for m in members)
+    high = min(float(m.flow[-1]) for m in members)
+    ends = np.array([m.flow[-1] for m in members])
+    apart = float(np.ptp(ends)) > 0.03 * float(ends.max())
+    if quantity in ("efficiency", "overall_efficiency", "npsh_required"):
+        if apart or high <= low:
+            return list(np.argsort(-ends, kind="stable"))
+        sign = -1.0 if quantity == "npsh_required" else 1.0
+        last = np.array([np.interp(high, m.flow, m.value) for m in members])
+        return list(np.argsort(-sign * last, kind="stable"))
+    if high <= low:
+        return list(np.argsort([-float(m.value.max()) for m in members], kind="stable"))
+    q = np.linspace(low, low + 0.6 * (high - low), 9)
+    level = [float(np.mean(np.interp(q, m.flow, m.value))) for m in members]
+    return list(np.argsort(-np.array(level), kind="stable"))
+
+
+def deal(
+    members: Sequence[Member],
+    quantity: str,
+    labels: Sequence[Label],
+    others: Sequence[Trace] = (),
+    settings: Settings | None = None,
+) -> Deal | None:
+    """The best dealing of labels to the lines of one family; None where no label fits any.
+
+    Parameters
+    ----------
+    members : the lines; quantity : of all of them.
+    labels : free labels of the panel.
+    others : lines of the panel outside the family: a label much nearer to one of them is not
+        dealt here.
+    """
+    settings = settings or Settings()
+    ranks = order(members, quantity)
+    ranked = [members[i] for i in ranks]
+    spots = {
+        (i, j): spot(label, m.trace) for i, m in enumerate(ranked) for j, label in enumerate(labels)
+    }
+    elsewhere = [min((spot(label, t).gap for t in others), default=np.inf) for label in labels]
+    best: Deal | None = None
+    for kind in _KINDS:
+        holding = [j for j, label in enumerate(labels) if label.means(kind)]
+        if not holding:
+            continue
+        for stand in ("any", "above", "below"):
+            found = _chain(
+                ranked, quantity, labels, holding, spots, elsewhere, kind, stand, settings
+            )
+            if found is not None and (best is None or found.cost < best.cost - 1e-9):
+                best = found
+    if best is None:
+        return None
+    given: list[tuple[Label, Meaning] | None] = [None] * len(members)
+    for i, got in zip(ranks, best.given, strict=True):
+        given[i] = got
+    return Deal(best.kind, tuple(given), best.cost)
+
+
+def _chain(
+    ranked: Sequence[Member],
+    quantity: str,
+    labels: Sequence[Label],
+    holding: Sequence[int],
+    spots: dict[tuple[int, int], Spot],
+    elsewhere: Sequence[float],
+    kind: str,
+    stand: str,
+    settings: Settings,
+) -> Deal | None:
+    """Cheapest chain of labels down the ordered lines: each value smaller than the one before."""
+    signed = any(m.plain for j in holding for m in labels[j].means(kind))
+    steps: list[list[tuple[int, Meaning, float]]] = []
+    for i in range(len(ranked)):
+        row = []
+        for j in holding:
+            near = _placing(spots[i, j], stand, elsewhere[j], settings)
+            if near is None:
+                continue
+            for m in labels[j].means(kind):
+                bent = m.cost * (0.5 if signed and kind == "diameter" and m.cost >= 0.5 else 1.0)
+                row.append((j, m, near + bent))
+        steps.append(row)
+    # state: the last label dealt (None at first); cost and the whole dealing so far
+    states: dict[tuple[int, float] | None, tuple[float, tuple[tuple[int, Meaning] | None, ...]]]
+    states = {None: (0.0, ())}
+    for i, row in enumerate(steps):
+        following: dict[
+            tuple[int, float] | None, tuple[float, tuple[tuple[int, Meaning] | None, ...]]
+        ] = {}
+
+        def keep(
+            key: tuple[int, float] | None,
+            cost: float,
+            dealt: tuple[tuple[int, Meaning] | None, ...],
+            into: dict[
+                tuple[int, float] | None, tuple[float, tuple[tuple[int, Meaning] | None, ...]]
+            ] = following,
+        ) -> None:
+            if key not in into or cost < into[key][0] - 1e-12:
+                into[key] = cost, dealt
+
+        for key, (cost, dealt) in states.items():
+            keep(key, cost + settings.missing, (*dealt, None))
+            used = {d[0] for d in dealt if d is not None}
+            last = max((k for k, d in enumerate(dealt) if d is not None), default=None)
+            for j, m, near in row:
+                if j in used:
+                    continue
+                step = near
+                if last is not None:
+                    before = dealt[last]
+                    assert before is not None
+                    law = _law(ranked[last], before[1], ranked[i], m, kind, quantity, settings)
+                    if law is None:
+                        continue
+                    step += law
+                keep((j, m.value or 0.0), cost + step, (*dealt, (j, m)))
+        states = following
+    cost, dealt = min(states.values(), key=lambda s: s[0])
+    if all(d is None for d in dealt):
+        return None
+    cost += 0.3 * (kind == "letter") + 0.4 * (kind == "percent")
+    cost += 0.15 * (stand != "any")
+    got = tuple(None if d is None else (labels[d[0]], d[1]) for d in dealt)
+    return Deal(kind, got, cost)
+
+
+def _placing(seen: Spot, stand: str, elsewhere: float, settings: Settings) -> float | None:
+    """Cost of a label for a line by where it stands; None where it is out of reach."""
+    near = min(seen.gap, seen.start, seen.end)
+    if near > settings.reach or elsewhere < near - 1.0 or (elsewhere < 0.3 and near > 1.0):
+        return None
+    cost = settings.far * max(near - 0.3, 0.0)
+    at_end = min(seen.start, seen.end) < 1.5
+    if not at_end and stand == "above" and seen.above < 0:
+        cost += settings.side
+    if not at_end and stand == "below" and seen.above > 0:
+        cost += settings.side
+    if stand == "any":
+        cost += 0.1 * (not at_end)
+    return cost
+
+
+def _law(
+    upper: Member,
+    more: Meaning,
+    lower: Member,
+    less: Meaning,
+    kind: str,
+    quantity: str,
+    settings: Settings,
+) -> float | None:
+    """Cost of two neighbours' labels by order and affinity; None where the order is wrong."""
+    if kind == "letter":
+        return 0.0
+    if more.value is None or less.value is None:
+        return 0.0
+    if more.value <= less.value * 1.001:
+        return None
+    printed = float(np.log(more.value / less.value))
+    if quantity == "head":
+        low = max(float(upper.flow[0]), float(lower.flow[0]))
+        high = min(float(upper.flow[-1]), float(lower.flow[-1]))
+        if high <= low:
+            return 0.0
+        q = np.linspace(low, low + 0.2 * (high - low), 5)
+        a, b = (np.interp(q, m.flow, m.value).mean() for m in (upper, lower))
+        if a <= 0 or b <= 0:
+            return 0.0
+        exponent = float(np.log(a / b)) / printed
+        least, most = _HEAD_EXPONENTS[kind]
+    else:
+        ratio = float(upper.flow[-1] / max(float(lower.flow[-1]), 1e-12))
+        if kind == "stages" or ratio <= 1.02:
+            return 0.0
+        exponent, least, most = float(np.log(ratio)) / printed, 0.4, 3.0
+    exponent = max(exponent, 1e-3)
+    return settings.law * max(float(np.log(least / exponent)), float(np.log(exponent / most)), 0.0)

@@ -1,0 +1,310 @@
+"""Lines of equal efficiency, power or NPSH: which traces they are, and the level of each."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from curvefit.identify.ink import same_ink
+from curvefit.identify.placing import Label, spot
+from curvefit.identify.wording import Meaning
+from curvefit.records import Panel, Trace
+
+__all__ = ["Level", "Settings", "iso_lines", "levels", "unimodal"]
+
+Array = NDArray[np.float64]
+
+_QUANTITY = {"percent": "iso_efficiency", "power": "iso_shaft_power", "length": "iso_npsh_required"}
+
+
+@dataclass(frozen=True, slots=True)
+class Settings:
+    """reach : a label further from a line (heights of its text) is not its label."""
+
+    reach: float = 2.5
+    missing: float = 3.0
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Level:
+    """What an iso line is: its quantity, level (SI) and label; level None where unreadable.
+
+    bent : the text was corrected by the levels of its neighbours.
+    """
+
+    quantity: str
+    value: float | None
+    unit: str
+    label: Label | None
+    bent: bool = False
+
+
+def iso_lines(panel: Panel, traces: Sequence[Trace], labels: Sequence[Label]) -> list[Trace]:
+    """The traces of a panel that are lines of an equal quantity, not functions of flow.
+
+    Notes
+    -----
+    A trace that is not single-valued in flow is one. Lines of a family do not cross each other,
+    and neither do lines of equal efficiency: where lines cross, they part into two sets, and the
+    set that falls like heads over more of the box is the family. The other is taken as iso lines
+    if a level ("70 %", "15 kW") is printed at one of them. None of it holds where the panel has
+    no axis for the head, and lines of a panel with two quantities cross for other reasons.
+    """
+    quantities = {a.quantity for a in panel.axes if not a.along_flow}
+    if quantities and not quantities & {"head", "differential_pressure", None}:
+        return []
+    marked = [w for w in labels if any(m.plain and m.kind in _QUANTITY for m in w.meanings)]
+    found = [t for t in traces if t.path]
+    if len(quantities) == 1 and marked:
+        for one, other in _parted([t for t in traces if not t.path], found):
+            iso = one if _head_like(one) < _head_like(other) else other
+            if any(_near(w, t) < Settings().reach for w in marked for t in iso):
+                found += iso
+        found += _lone_levels(traces, found, labels)
+    return [t for t in traces if any(t is f for f in found)]
+
+
+def _lone_levels(
+    traces: Sequence[Trace], isos: Sequence[Trace], labels: Sequence[Label]
+) -> list[Trace]:
+    """Lines that cross no other, yet have a level at an end and another look than most lines."""
+    rest = [t for t in traces if not any(t is i for i in isos)]
+    wide = float(np.median([np.ptp(t.flat[:, 0]) for t in rest])) if rest else 0.0
+    found = []
+    for trace in rest:
+        others = [t for t in rest if t is not trace]
+        if not others:
+            continue
+        kin = bool(isos) and not any(_other_style(trace, i) for i in isos)
+        unlike = sum(_other_style(trace, t) for t in others) > 0.6 * len(others)
+        short = float(np.ptp(trace.flat[:, 0])) < 0.5 * wide
+        marked = any(
+            _near(w, trace) < 1.2
+            for w in labels
+            if any(m.plain and m.kind in _QUANTITY for m in w.meanings)
+        )
+        if (kin and unlike) or (marked and (unlike or short)):
+            found.append(trace)
+    return found
+
+
+def _parted(
+    traces: Sequence[Trace], paths: Sequence[Trace]
+) -> list[tuple[list[Trace], list[Trace]]]:
+    """Lines that cross, parted so that (as far as can be) only lines of different sets cross."""
+    crossing = [[a is not b and _cross(a, b) for b in traces] for a in traces]
+    side: dict[int, int] = {}
+    parts = []
+    for start in range(len(traces)):
+        if start in side or not any(crossing[start]):
+            continue
+        side[start] = 0
+        queue, group = [start], [start]
+        while queue:
+            i = queue.pop(0)
+            for j, meets in enumerate(crossing[i]):
+                if meets and j not in side:
+                    side[j] = 1 - side[i]
+                    queue.append(j)
+                    group.append(j)
+        parts.append(tuple([traces[i] for i in group if side[i] == s] for s in (0, 1)))
+    return [(a, b) for a, b in parts]
+
+
+def _head_like(traces: Sequence[Trace]) -> float:
+    """How much of the width the lines of a set cover, less where they rise."""
+    across = [float(np.ptp(t.flat[:, 0])) / t.panel.warp.size[0] for t in traces]
+    falls = [float(t.flat[-1, 1] > t.flat[0, 1]) for t in traces]
+    level = [1.0 - min(float(np.ptp(t.flat[:, 1]) / t.panel.warp.size[1]), 1.0) for t in traces]
+    return float(np.mean(across) + 0.5 * np.mean(falls) + 0.2 * np.mean(level))
+
+
+def _cross(a: Trace, b: Trace) -> bool:
+    """Whether two lines pass through each other, by more than a touch at an end."""
+    low, high = max(a.flat[0, 0], b.flat[0, 0]), min(a.flat[-1, 0], b.flat[-1, 0])
+    if high <= low:
+        return False
+    x = np.linspace(low, high, 80)
+    apart = np.interp(x, *a.flat.T) - np.interp(x, *b.flat.T)
+    return bool(apart.max() > 2.0 and apart.min() < -2.0)
+
+
+def _other_style(a: Trace, b: Trace) -> bool:
+    wide = max(a.width, b.width) > 1.35 * max(min(a.width, b.width), 1e-6)
+    return a.dash != b.dash or wide or not same_ink(a.colour, b.colour)
+
+
+def levels(
+    lines: Sequence[Trace],
+    labels: Sequence[Label],
+    heads: Sequence[Trace],
+    settings: Settings | None = None,
+) -> list[Level]:
+    """The level of every iso line of a panel.
+
+    Parameters
+    ----------
+    lines : the iso lines; labels : free labels of the panel; heads : the lines that they cross.
+
+    Notes
+    -----
+    Labels are dealt to lines by the least sum of distances; a line may have one at each end. A
+    label that breaks the order of the levels along a head line (rising to the best efficiency,
+    falling behind it) is mended where one level of the printed series fits its text and place,
+    and else taken back.
+    """
+    settings = settings or Settings()
+    kind = _kind(lines, labels, settings)
+    quantity = _QUANTITY[kind]
+    dealt = _dealt(lines, labels, kind, settings)
+    values = [None if d is None else d[1].value for d in dealt]
+    rows = _sequences(lines, heads)
+    mended = _mend(values, [d[0].text if d else "" for d in dealt], rows, kind)
+    found = []
+    for d, before, after in zip(dealt, values, mended, strict=True):
+        unit = d[1].unit if d is not None else {"percent": "%", "power": "kW"}.get(kind, "m")
+        bent = d is not None and before != after
+        found.append(Level(quantity, after, unit, d[0] if d else None, bent))
+    return found
+
+
+def _kind(lines: Sequence[Trace], labels: Sequence[Label], settings: Settings) -> str:
+    """The kind of level that most labels at the lines print."""
+    votes = dict.fromkeys(_QUANTITY, 0.0)
+    votes["percent"] = 0.01
+    for label in labels:
+        for m in label.meanings:
+            if m.kind in votes and any(_near(label, t) < settings.reach for t in lines):
+                votes[m.kind] += 1.0 if m.plain else 0.1
+    return max(votes, key=lambda k: votes[k])
+
+
+def _near(label: Label, trace: Trace) -> float:
+    """Distance of a label, its ends first: levels stand at the ends of their lines."""
+    seen = spot(label, trace)
+    return min(seen.start, seen.end, seen.gap + 0.5)
+
+
+def _dealt(
+    lines: Sequence[Trace], labels: Sequence[Label], kind: str, settings: Settings
+) -> list[tuple[Label, Meaning] | None]:
+    from scipy.optimize import linear_sum_assignment
+
+    holding = [w for w in labels if w.means(kind)]
+    dealt: list[tuple[Label, Meaning] | None] = [None] * len(lines)
+    if not holding or not lines:
+        return dealt
+    n, k = len(lines), len(holding)
+    cost = np.full((n, k + n), settings.missing)
+    for i, trace in enumerate(lines):
+        for j, label in enumerate(holding):
+            near = _near(label, trace)
+            bent = min(m.cost for m in label.means(kind))
+            cost[i, j] = near + 0.5 * bent if near <= settings.reach else 1e3
+    for i, j in zip(*linear_sum_assignment(cost), strict=True):
+        if j < k and cost[i, j] < 1e2:
+            dealt[i] = holding[j], holding[j].means(kind)[0]
+    return dealt
+
+
+def _sequences(lines: Sequence[Trace], heads: Sequence[Trace]) -> list[list[int]]:
+    """Along each head line, from left to right: the iso lines that meet it."""
+    rows = []
+    for head in heads:
+        x_head, y_head = head.flat.T
+        met: list[tuple[float, int]] = []
+        for i, line in enumerate(lines):
+            x, y = line.flat.T
+            inside = (x >= x_head[0] - 3) & (x <= x_head[-1] + 3)
+            apart = np.where(inside, y - np.interp(x, x_head, y_head), np.nan)
+            change = np.flatnonzero(apart[:-1] * apart[1:] <= 0)
+            places = [float(x[k]) for k in change]
+            for end in (0, -1):  # ends that stop at the line rather than cross it
+                if not places and abs(apart[end]) < 4.0:
+                    places.append(float(x[end]))
+            met += [(p, i) for p in places[:2]]
+        met.sort()
+        row = [i for k, (_, i) in enumerate(met) if k == 0 or met[k - 1][1] != i]
+        if len(row) > 1:
+            rows.append(row)
+    return rows
+
+
+def unimodal(values: Sequence[float | None]) -> bool:
+    """Whether known values rise strictly to a peak and fall strictly behind it.
+
+    The two values next to the peak may be equal: the two branches of one level.
+    """
+    known = [v for v in values if v is not None]
+    steps = np.sign(np.diff(known))
+    flat = np.flatnonzero(steps == 0)
+    if len(flat) > 1:
+        return False
+    if len(flat) == 1:
+        k = int(flat[0])
+        return bool((steps[:k] > 0).all() and (steps[k + 1 :] < 0).all())
+    falls = np.flatnonzero(steps < 0)
+    return bool(not len(falls) or (steps[falls[0] :] < 0).all())
+
+
+def _mend(
+    values: Sequence[float | None], texts: Sequence[str], rows: Sequence[Sequence[int]], kind: str
+) -> list[float | None]:
+    """Levels with those that break the order mended or, where no level fits, taken back."""
+    mended = list(values)
+    if kind != "percent" or sum(v is not None for v in values) < 3:
+        return mended
+
+    def broken(trial: Sequence[float | None]) -> int:
+        return sum(not unimodal([trial[i] for i in row]) for row in rows)
+
+    series = _series([v for v in values if v is not None])
+    for _ in range(2):
+        faults = broken(mended)
+        if not faults:
+            break
+        without = {
+            i: broken([None if k == i else v for k, v in enumerate(mended)])
+            for i, v in enumerate(mended)
+            if v is not None
+        }
+        worst = min(without, key=lambda i: (without[i], -_doubt(texts[i])))
+        if without[worst] >= faults:
+            break
+        fitting = [
+            s
+            for s in series
+            if _misread(texts[worst], s)
+            and broken([s if k == worst else v for k, v in enumerate(mended)]) <= without[worst]
+        ]
+        mended[worst] = fitting[0] if len(fitting) == 1 else None
+    return mended
+
+
+def _doubt(text: str) -> float:
+    return 0.0 if text.endswith("%") else 1.0
+
+
+def _series(known: Sequence[float]) -> list[float]:
+    """The levels that a chart with these could print: multiples of their step, 10–95 %."""
+    whole = np.unique(np.rint(np.asarray(known) * 1000).astype(int))
+    common = sorted(np.diff(whole))
+    step = int(common[len(common) // 2]) if len(common) else 50
+    step = next((s for s in (5, 10, 20, 25, 50, 100) if s >= step), 100)
+    while step > 5 and sum(v % step for v in whole) and (whole % step == 0).mean() < 0.6:
+        step = {100: 50, 50: 25, 25: 20, 20: 10, 10: 5}[step]
+    return [k / 1000 for k in range(step, 960, step)]
+
+
+def _misread(text: str, level: float) -> bool:
+    """Whether a text could be this level with one character misread or lost."""
+    digits = "".join(c for c in text if c.isdigit())
+    right = f"{100 * level:g}".replace(".", "")
+    if len(digits) > len(right):
+        digits = digits[: len(right)]
+    if len(digits) == len(right):
+        return sum(a != b for a, b in zip(digits, right, strict=True)) <= 1
+    return len(digits) + 1 == len(right) and (right.startswith(digits) or right.endswith(digits))

@@ -1,0 +1,122 @@
+"""Where a label stands with respect to the lines of its panel, in heights of its text."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from curvefit.geometry import project
+from curvefit.identify.wording import Meaning, meanings
+from curvefit.records import Panel, Trace, Word
+from curvefit.units import fold
+
+__all__ = ["Label", "Spot", "labels_of", "spot"]
+
+Array = NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Label:
+    """One word of a panel in straightened box pixels, with what it can mean.
+
+    centre, half : (2,) centre and half size of its upright box; height : of the text.
+    masked : it stands in an area without curves (a legend).
+    """
+
+    word: Word
+    centre: Array
+    half: Array
+    height: float
+    meanings: tuple[Meaning, ...]
+    masked: bool = False
+
+    @property
+    def text(self) -> str:
+        return self.word.text.strip()
+
+    def means(self, kind: str) -> tuple[Meaning, ...]:
+        return tuple(m for m in self.meanings if m.kind == kind)
+
+
+@dataclass(frozen=True, slots=True)
+class Spot:
+    """A label as seen from one line: distances in heights of the text.
+
+    gap : box to nearest point of the line; start, end : box to the line's left and right end.
+    above : how far the label's centre stands above the line (negative: below), at its own x.
+    near : one distance for all, in which a label in line with an end beats one beside it.
+    """
+
+    gap: float
+    start: float
+    end: float
+    above: float
+    near: float
+
+
+def labels_of(panel: Panel) -> tuple[Label, ...]:
+    """The words in and near the box that are no title of an axis."""
+    titles = {fold(a.title) for a in panel.axes if a.title}
+    width, height = panel.warp.size
+    found = []
+    for word in panel.words:
+        box = project(panel.warp.matrix, word.box)
+        low, high = box.min(0), box.max(0)
+        centre, half = (low + high) / 2, (high - low) / 2
+        size = min(word.height, word.width) * _scale(panel)
+        inside = 0 < centre[0] < width and 0 < centre[1] < height
+        beside = (
+            -0.2 * width < centre[0] < 1.25 * width and -0.15 * height < centre[1] < 1.15 * height
+        )
+        if not beside or (not inside and _is_title(word, titles)):
+            continue
+        found.append(
+            Label(word, centre, half, max(size, 1.0), meanings(word.text), _masked(panel, word))
+        )
+    return tuple(found)
+
+
+def spot(label: Label, trace: Trace) -> Spot:
+    """The label as seen from a line."""
+    far = np.maximum(np.abs(trace.flat - label.centre) - label.half, 0.0)
+    gaps = np.hypot(far[:, 0], far[:, 1]) / label.height
+    nearest = int(np.argmin(gaps))
+    if trace.path:
+        y = float(trace.flat[nearest, 1])
+    else:
+        y = float(np.interp(label.centre[0], trace.flat[:, 0], trace.flat[:, 1]))
+    above = (y - float(label.centre[1])) / label.height
+    aside = np.minimum(np.abs(trace.flat[[0, -1], 1] - label.centre[1]) / label.height, 3.0)
+    near = min(
+        float(gaps[nearest]) + 0.3 * min(abs(above), 3.0),
+        float(gaps[0] + 0.4 * aside[0]),
+        float(gaps[-1] + 0.4 * aside[1]),
+    )
+    return Spot(float(gaps[nearest]), float(gaps[0]), float(gaps[-1]), above, near)
+
+
+def _scale(panel: Panel) -> float:
+    """Box pixels to a page pixel, about."""
+    sides = np.hypot(*np.diff(panel.corners[[0, 1, 2]], axis=0).T)
+    width, height = panel.warp.size
+    return float(np.sqrt(width * height / max(sides[0] * sides[1], 1e-9)))
+
+
+def _is_title(word: Word, titles: set[str]) -> bool:
+    text = fold(word.text)
+    return any(text == title or (len(text) > 3 and text in title) for title in titles)
+
+
+def _masked(panel: Panel, word: Word) -> bool:
+    return any(_holds(polygon, word.centre) for polygon in panel.masks)
+
+
+def _holds(polygon: Array, point: Array) -> bool:
+    """Whether a polygon holds a point (crossings of a ray to the right)."""
+    a, b = polygon, np.roll(polygon, -1, axis=0)
+    straddles = (a[:, 1] > point[1]) != (b[:, 1] > point[1])
+    rise = np.where(b[:, 1] == a[:, 1], 1e-12, b[:, 1] - a[:, 1])
+    x = a[:, 0] + (point[1] - a[:, 1]) / rise * (b[:, 0] - a[:, 0])
+    return bool((straddles & (x > point[0])).sum() % 2)
