@@ -9,6 +9,7 @@ from curvefit.notes.given import (
     PanelNotes,
     PumpNotes,
 )
+from curvefit.notes.merge import merge, merge_given
 from curvefit.notes.reader import given_entries, notes_from, read_notes
 
 __all__ = [
@@ -20,6 +21,8 @@ __all__ = [
     "PanelNotes",
     "PumpNotes",
     "given_entries",
+    "merge",
+    "merge_given",
     "notes_from",
     "read_notes",
 ]

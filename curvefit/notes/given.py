@@ -7,6 +7,7 @@ page px (the page as shown); the TOML file holds stored px and is converted wher
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from typing import Any
 
 __all__ = ["AxisNotes", "CurveNotes", "GivenMark", "Notes", "PageNotes", "PanelNotes", "PumpNotes"]
 
@@ -125,4 +126,4 @@ class Notes:
     pumps: tuple[PumpNotes, ...] = ()
     file: str | None = None
     sha256: str | None = None
-    given: dict[str, object] = field(default_factory=dict)
+    given: dict[str, list[dict[str, Any]]] = field(default_factory=dict)
