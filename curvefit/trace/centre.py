@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from curvefit.geometry import arc_length, resample
 from curvefit.trace.spline import smooth
 
-__all__ = ["Line", "Profile", "centred", "normals", "profile", "width_along"]
+__all__ = ["Line", "Profile", "centred", "normals", "profile", "trimmed", "width_along"]
 
 Array = NDArray[np.float64]
 Image = NDArray[np.float32]
@@ -181,3 +181,18 @@ def _cleanness(seen: Profile, width: float, strict: bool) -> Array:
 
 def _held(value: Array, weight: Array, reach: float) -> Array:
     return np.asarray(np.clip(value, -2.0 * reach, 2.0 * reach))
+
+
+def trimmed(line: Line, first: int, last: int) -> Line:
+    """The line between two of its points, both kept."""
+    part = slice(first, last + 1)
+    return Line(
+        line.xy[part],
+        line.sigma[part],
+        line.good[part],
+        line.ink[part],
+        line.known[part],
+        line.side[part],
+        line.width,
+        line.scatter,
+    )

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from curvefit.records import Panel
 
-__all__ = ["MARGIN", "Flat", "hues", "straightened", "stroke_width"]
+__all__ = ["MARGIN", "Flat", "Layer", "hues", "straightened", "stroke_width"]
 
 Image = NDArray[np.float32]
 
@@ -26,6 +26,15 @@ class Flat:
 
     channels: Image
     dark: Image
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Layer:
+    """One ink of the drawing, (rows, cols) each: all, all but letters, and what is visible."""
+
+    ink: Image
+    lines: Image
+    known: Image
 
 
 def straightened(panel: Panel) -> Flat:

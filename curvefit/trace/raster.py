@@ -9,10 +9,11 @@ from numpy.typing import NDArray
 
 from curvefit.geometry import resample
 from curvefit.records import Panel
-from curvefit.trace.centre import Line, centred, width_along
+from curvefit.trace.centre import Line, centred, trimmed, width_along
 from curvefit.trace.ends import extended, supported
 from curvefit.trace.grid import Inked, without_lines
-from curvefit.trace.ink import MARGIN, Flat, hues, straightened, stroke_width
+from curvefit.trace.ink import MARGIN, Flat, Layer, hues, straightened, stroke_width
+from curvefit.trace.linked import linked_lines
 from curvefit.trace.sift import is_frame, without_doubles
 from curvefit.trace.text import lettering
 from curvefit.trace.track import Track, Tracking, across, best_track, peel
@@ -28,24 +29,18 @@ class Settings:
 
     tracking: Tracking = field(default_factory=Tracking)
     shortest: float = 0.05  #: ink that a line must show
+    loose: float = 0.035  #: ink that a line in any direction must show
     at_most: int = 40  #: lines of one ink
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class Layer:
-    """One ink of the drawing, (rows, cols) each: all of it, without letters, and what is visible."""
-
-    ink: Image
-    lines: Image
-    known: Image
-
-
-@dataclass(frozen=True, slots=True, eq=False)
 class Found:
-    """A line with the ink that it was seen in."""
+    """A line with the ink that it was seen in; loose: found by linking, in any direction."""
 
     line: Line
     colour: tuple[float, float, float]
+    loose: bool = False
+    closed: bool = False
 
 
 def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
@@ -55,10 +50,24 @@ def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
     inked = without_lines(flat.dark, MARGIN)
     width = stroke_width(inked.ink, 0.02 * panel.warp.size[0])
     letters = lettering(panel, inked.ink, width)
+    least = 0.6 * tolerances.shortest * panel.warp.size[0]
+
+    def frame(line: Line) -> bool:
+        return is_frame(line, inked.rows, inked.cols, flat.dark.shape, MARGIN)
+
     found: list[Found] = []
     for member, colour in hues(flat, inked.ink, width):
         layer = _layer(flat, inked, member, letters)
-        found += [Found(line, colour) for line in _follow(layer, width, tolerances)]
+        lines = [x for x in _follow(layer, width, tolerances) if not frame(x)]
+        lines = [lines[i] for i in without_doubles(lines, least)]
+        found += [Found(line, colour) for line in lines]
+        shortest = tolerances.loose * panel.warp.size[0]
+        around = [f.line for f in found]
+        found += [
+            Found(x.line, colour, True, x.closed)
+            for x in linked_lines(panel, layer, around, width, shortest)
+            if not frame(x.line)
+        ]
     found = [
         f for f in found if not is_frame(f.line, inked.rows, inked.cols, flat.dark.shape, MARGIN)
     ]
@@ -119,18 +128,3 @@ def _refined(
     if last - first < 12:
         return None, own
     return trimmed(longer, first, last), own
-
-
-def trimmed(line: Line, first: int, last: int) -> Line:
-    """The line between two of its points, both kept."""
-    part = slice(first, last + 1)
-    return Line(
-        line.xy[part],
-        line.sigma[part],
-        line.good[part],
-        line.ink[part],
-        line.known[part],
-        line.side[part],
-        line.width,
-        line.scatter,
-    )

@@ -29,9 +29,9 @@ def _trace(panel: Panel, found: Found, name: str) -> Trace:
     flat = line.xy - MARGIN
     if flat[0, 0] > flat[-1, 0]:
         flat, sigma, flags = flat[::-1], sigma[::-1], flags[::-1]
-    keep = _increasing(flat[:, 0])
-    step = max(int(np.ceil(keep.sum() / 1500)), 1)
-    index = np.nonzero(keep)[0]
+    path = found.closed or (found.loose and not _single_valued(flat))
+    index = np.arange(len(flat)) if path else np.nonzero(_increasing(flat[:, 0]))[0]
+    step = max(int(np.ceil(len(index) / 1500)), 1)
     index = np.unique(np.r_[index[::step], index[-1]])
     return Trace(
         name,
@@ -42,7 +42,16 @@ def _trace(panel: Panel, found: Found, name: str) -> Trace:
         correlation=max(14.0, 3.0 * line.width),
         width=line.width,
         colour=found.colour,
+        path=path,
+        closed=found.closed,
     )
+
+
+def _single_valued(flat: Array) -> bool:
+    """Whether a line runs from left to right rather than up and down or back."""
+    x, y = flat[:, 0], flat[:, 1]
+    back = np.clip(-np.diff(x), 0, None).sum()
+    return bool(back < 1.5 and np.abs(np.diff(y)).sum() < 1.2 * np.ptp(x))
 
 
 def _increasing(x: Array) -> NDArray[np.bool_]:
