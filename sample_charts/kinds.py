@@ -281,7 +281,7 @@ def hill(w: _Writer, n: int = 4) -> tuple[PanelSpec, ...]:
     flow = np.linspace(0.5, 1.4, 400) * w.pump.flow_best
     best = float(w.pump.efficiency(flow).max())
     levels = [np.floor(best * 50 - 0.3) / 50]
-    levels += [float(np.floor(levels[0] * 20 - 0.01 - k) / 20) for k in range(3)]
+    levels += [float(np.floor(levels[0] * 20 - 0.4 - k) / 20) for k in range(3)]
     for level in dict.fromkeys(round(float(v), 3) for v in levels):
         for q, h in iso_efficiency(w.pump, level, (sizes[-1], sizes[0]), (0.15, 1.34)):
             lines.append(
