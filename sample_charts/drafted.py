@@ -22,7 +22,7 @@ class Style:
     font: str
     size: float
     tick: float  # length of a tick [pt], negative inwards, 0 none
-    grid: str  # "none", "fine", "dotted", "heavy", "minor"
+    grid: str  # "none", "fine", "dotted", "heavy", "minor", "graph" (ten lines a division)
     grid_colour: Colour
     colours: tuple[Colour, ...]
     dashes: tuple[tuple[float, ...], ...]
@@ -31,6 +31,7 @@ class Style:
     title: str  # "along", "end", "above"
     label: str  # "end", "start", "on" (in a gap of the line), "leader", "legend"
     thousands: str = ""
+    open: bool = False  # only the sides that carry a scale are drawn, no frame
 
 
 def style(rng: np.random.Generator, mono: bool | None = None, hand: bool = False) -> Style:
@@ -94,9 +95,8 @@ def _written(text: str, look: Style) -> str:
     """Text as that hand writes it: a draughtsman letters words in capitals, units as they are."""
     if look.font != "hand":
         return text
-    small = ("m", "kW", "mm", "n", "l/s", "L/s", "m3/h", "m³/h", "ft", "gpm", "hp")
-    keep = [w if w in small or set(w) & set("[]=0123456789") else w.upper() for w in text.split()]
-    return " ".join(keep)
+    units = {"m", "kW", "mm", "n", "l/s", "L/s", "m3/h", "m³/h", "1/min"}
+    return " ".join(w if w.strip("[](),") in units else w.upper() for w in text.split())
 
 
 def _margin(scene: Scene, look: Style, side: str) -> float:
@@ -119,7 +119,7 @@ def _panel(drawing: Drawing, panel: PanelSpec, box: Box, look: Style, scene: Sce
         a, b = x0 + panel.axis("bottom").fraction(np.array(panel.shaded)) * (x1 - x0)
         drawing.area([(a, y0), (b, y0), (b, y1), (a, y1)], (0.88, 0.92, 0.88))
     _grid(drawing, panel, box, look)
-    drawing.line([(x0, y0), (x1, y0), (x1, y1), (x0, y1), (x0, y0)], look.frame)
+    _frame(drawing, panel, box, look)
     lift = 3.2 * look.size if any(a.side == "top" for a in panel.axes) else 0.0
     for axis in panel.axes:
         _axis(drawing, axis, box, look, scene, lift)
@@ -132,6 +132,17 @@ def _panel(drawing: Drawing, panel: PanelSpec, box: Box, look: Style, scene: Sce
         if line.points is not None:
             _markers(drawing, place(panel, _points(line), box), colour, look)
     _labels(drawing, panel, box, look)
+
+
+def _frame(drawing: Drawing, panel: PanelSpec, box: Box, look: Style) -> None:
+    x0, y0, x1, y1 = box
+    sides = {"left": [(x0, y0), (x0, y1)], "bottom": [(x0, y1), (x1, y1)],
+             "right": [(x1, y0), (x1, y1)], "top": [(x0, y0), (x1, y0)]}  # fmt: skip
+    if not look.open:
+        drawing.line([(x0, y0), (x1, y0), (x1, y1), (x0, y1), (x0, y0)], look.frame)
+        return
+    for side in dict.fromkeys(a.side.partition(".")[0] for a in panel.axes):
+        drawing.line(sides[side], look.frame)
 
 
 def _points(line: LineSpec) -> LineSpec:
@@ -153,10 +164,11 @@ def _grid(drawing: Drawing, panel: PanelSpec, box: Box, look: Style) -> None:
     x0, y0, x1, y1 = box
     width, dash = {
         "fine": (0.35, ()), "dotted": (0.5, (0.8, 2.2)), "heavy": (0.9, ()), "minor": (0.6, ()),
+        "graph": (1.1, ()),
     }[look.grid]  # fmt: skip
     for side in ("bottom", "left"):
         axis = panel.axis(side)
-        for value, major in _ticks(axis, look.grid == "minor"):
+        for value, major in _ticks(axis, look):
             f = float(axis.fraction(np.array(value)))
             if not 0.002 < f < 0.998:
                 continue
@@ -169,12 +181,13 @@ def _grid(drawing: Drawing, panel: PanelSpec, box: Box, look: Style) -> None:
                 drawing.line([(x0, y), (x1, y)], w, look.grid_colour, dash)
 
 
-def _ticks(axis: AxisSpec, minors: bool) -> list[tuple[float, bool]]:
+def _ticks(axis: AxisSpec, look: Style) -> list[tuple[float, bool]]:
     """(value, numbered) of every tick."""
     ticks = [(t, True) for t in axis.ticks]
-    if minors and axis.scale == "linear" and axis.minor > 1:
-        for a, b in zip(axis.ticks, axis.ticks[1:], strict=False):
-            ticks += [(a + (b - a) * k / axis.minor, False) for k in range(1, axis.minor)]
+    parts = {"minor": axis.minor, "graph": 10}.get(look.grid, 1)
+    if axis.scale == "linear":
+        for a, b in itertools.pairwise(axis.ticks):
+            ticks += [(a + (b - a) * k / parts, False) for k in range(1, parts)]
     return sorted(ticks)
 
 
@@ -204,7 +217,7 @@ def _axis(
         drawing.line([(edge, y0), (edge, y1)], look.frame)
     thousands = "" if scene.comma and look.thousands == "," else look.thousands
     reach = 0.0
-    for value, major in _ticks(axis, look.grid == "minor"):
+    for value, major in _ticks(axis, look):
         f = float(axis.fraction(np.array(value)))
         t = look.tick * (1.0 if major else 0.5) * sign
         x, y = x0 + f * (x1 - x0), y1 - f * (y1 - y0)
