@@ -23,6 +23,7 @@ __all__ = [
     "of_family",
     "of_label",
     "of_level",
+    "of_odd",
     "of_page",
     "of_twin",
 ]
@@ -147,13 +148,29 @@ def of_twin(line: Line, twin: Line, sure: bool) -> None:
     """Say that a line was named after its twin in another panel."""
     line.doubts |= {"diameter"} if twin.diameter is not None else {"speed"}
     how = "ends at the same flow as" if sure else "has the same place in its family as"
+    own = f'its own label reads "{line.label}"' if line.label else "it has no label of its own"
+    line.findings = [f for f in line.findings if f.code != "label.mended"]
     line.findings.append(
         Finding(
             "info" if sure else "warning",
             "curve.named-by-twin",
-            f"this line has no label of its own; it {how} the {_words(twin.quantity)} line"
+            f"{own}; it {how} the {_words(twin.quantity)} line"
             f' "{twin.label}" in panel {twin.panel.name} and took its name',
             remedy=f"a [[curve]] note with {_at(line.trace)} and diameter or speed settles it",
+        )
+    )
+
+
+def of_odd(line: Line) -> None:
+    """Warn of a diameter that does not fit the heads of its family."""
+    line.doubts.add("diameter")
+    line.findings.append(
+        Finding(
+            "warning",
+            "label.odd",
+            f'the label "{line.label}" does not lie where the heads of its family put it:'
+            " a digit may be misread",
+            remedy=f"a [[curve]] note with {_at(line.trace)} and diameter settles it",
         )
     )
 
@@ -190,9 +207,8 @@ def of_family(group: Sequence[Line]) -> None:
 
 
 def _mark(line: Line) -> object:
-    marks = (line.diameter, line.speed, line.speed_ratio, line.stages)
-    if any(m is not None for m in marks):
-        return marks
+    if line.marked:
+        return line.mark
     return line.label if line.label and quantity_named(line.label) is None else None
 
 

@@ -7,15 +7,14 @@ from collections.abc import Sequence
 import numpy as np
 
 from curvefit.identify import doubts
-from curvefit.identify.families import Member, deal, order
+from curvefit.identify.families import deal
+from curvefit.identify.impellers import agree, member
 from curvefit.identify.ink import line_sample, same_ink
 from curvefit.identify.line import Line
 from curvefit.identify.placing import Label, spot
 from curvefit.identify.wording import Meaning
 
 __all__ = ["name_families"]
-
-_FLOW_MATCH = 0.015  #: flow ends of one impeller's lines agree this well between panels (of span)
 
 
 def name_families(
@@ -38,7 +37,7 @@ def name_families(
         others = [x for x in lines if x.panel.name == panel and x not in group]
         taken |= _label_group(group, quantity, free, others)
         taken |= _quantity_words(group, free)
-    _hand_on(groups)
+    agree(list(groups.values()))
     for group in groups.values():
         doubts.of_family(group)
     return taken
@@ -50,7 +49,7 @@ def _label_group(
     legend = _from_legend(group, free)
     if legend is not None:
         return legend
-    found = deal([_member(x) for x in group], quantity, free, [x.trace for x in others])
+    found = deal([member(x) for x in group], quantity, free, [x.trace for x in others])
     if found is None:
         return set()
     taken = set()
@@ -63,10 +62,6 @@ def _label_group(
     return taken
 
 
-def _member(line: Line) -> Member:
-    return Member(line.trace, line.values.flow, line.values.value)
-
-
 def _stands_alone(line: Line, label: Label, meaning: Meaning) -> bool:
     """Whether a label says enough to name a line that has no family: a sign or unit, close by."""
     seen = spot(label, line.trace)
@@ -74,7 +69,7 @@ def _stands_alone(line: Line, label: Label, meaning: Meaning) -> bool:
 
 
 def _set(line: Line, label: Label, meaning: Meaning) -> None:
-    line.label = label.text
+    line.label, line.label_cost = label.text, meaning.cost
     value = meaning.value
     if meaning.kind == "diameter":
         line.diameter, line.diameter_unit = value, meaning.unit
@@ -132,82 +127,3 @@ def _quantity_words(group: Sequence[Line], free: Sequence[Label]) -> set[int]:
                     if "3" in label.text and line.quantity == "npsh_required":
                         line.npsh_basis = "NPSH3"
     return taken
-
-
-def _marked(line: Line) -> tuple[float | None, float | None, float | None, int | None]:
-    return line.diameter, line.speed, line.speed_ratio, line.stages
-
-
-def _known(line: Line) -> bool:
-    return any(m is not None for m in _marked(line))
-
-
-def _hand_on(groups: dict[tuple[str, str], list[Line]]) -> None:
-    """Families without labels of their own take them from the family of heads, flow end by end."""
-    sources = [
-        g
-        for (_, q), g in groups.items()
-        if q in ("head", "differential_pressure") and len(g) > 1 and all(_known(x) for x in g)
-    ]
-    sources += [
-        g
-        for (_, q), g in groups.items()
-        if q not in ("head", "differential_pressure") and len(g) > 1 and all(_known(x) for x in g)
-    ]
-    for (_, quantity), group in groups.items():
-        if len(group) < 2 or all(_known(x) for x in group):
-            continue
-        for source in sources:
-            if source is not group and len(source) >= len(group):
-                _match(source, group, quantity)
-                break
-
-
-def _match(source: Sequence[Line], group: Sequence[Line], quantity: str) -> None:
-    """Pair the lines of two families by the flows at which they end, by look, or by order."""
-    from scipy.optimize import linear_sum_assignment
-
-    span = max(float(x.values.flow[-1]) for x in (*source, *group))
-    ends = np.array([[_end_gap(a, b, span) for a in source] for b in group])
-    looks = {(x.trace.dash, tuple(np.round(x.trace.colour, 1))) for x in source}
-    by_look = len(looks) == len(source)
-    if by_look:
-        ends += [[0.05 * (not _same_look(a, b)) for a in source] for b in group]
-    rows, columns = linear_sum_assignment(ends)
-    sure = bool((ends[rows, columns] < _FLOW_MATCH).all()) and _telling(source, span)
-    if not sure and len(source) == len(group):
-        ranks = order([_member(x) for x in group], quantity)
-        first = order([_member(x) for x in source], source[0].quantity)
-        pairs = [(group[i], source[k]) for i, k in zip(ranks, first, strict=True)]
-        if by_look:
-            pairs = [(group[i], source[k]) for i, k in zip(rows, columns, strict=True)]
-    elif sure:
-        pairs = [(group[i], source[k]) for i, k in zip(rows, columns, strict=True)]
-    else:
-        return
-    own_agree = all(not _known(b) or _marked(a) == _marked(b) for b, a in pairs)
-    if not own_agree and not sure:
-        return
-    for line, twin in pairs:
-        if _marked(line) == _marked(twin):
-            continue
-        line.diameter, line.diameter_unit = twin.diameter, twin.diameter_unit
-        line.speed, line.speed_unit = twin.speed, twin.speed_unit
-        line.speed_ratio, line.stages = twin.speed_ratio, twin.stages
-        doubts.of_twin(line, twin, sure)
-
-
-def _end_gap(a: Line, b: Line, span: float) -> float:
-    first = abs(float(a.values.flow[0] - b.values.flow[0]))
-    last = abs(float(a.values.flow[-1] - b.values.flow[-1]))
-    return (0.5 * first + last) / span
-
-
-def _telling(source: Sequence[Line], span: float) -> bool:
-    """Whether the flow ends of a family are far enough apart to tell its members."""
-    ends = sorted(float(x.values.flow[-1]) for x in source)
-    return bool(min(np.diff(ends)) > 2 * _FLOW_MATCH * span)
-
-
-def _same_look(a: Line, b: Line) -> bool:
-    return a.trace.dash == b.trace.dash and same_ink(a.trace.colour, b.trace.colour)
