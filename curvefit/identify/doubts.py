@@ -102,12 +102,15 @@ def of_level(line: Line, level: Level) -> None:
         )
     elif level.bent:
         line.doubts.add("level")
+        shown = f"{from_si(level.value, level.unit):g} %"
         line.findings.append(
             Finding(
-                "info",
+                "info" if text else "warning",
                 "curve.level-mended",
-                f"the label{text} was taken as {from_si(level.value, level.unit):g} %,"
-                " the level that fits between its neighbours",
+                f"the label{text} was taken as {shown}, the level that fits between its neighbours"
+                if text
+                else f"no label could be read; {shown} is the only level of the series that fits"
+                " between its neighbours",
                 remedy=f"a [[curve]] note with {_at(line.trace)} and level settles it",
             )
         )

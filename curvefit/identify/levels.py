@@ -10,13 +10,15 @@ from numpy.typing import NDArray
 
 from curvefit.identify.ink import same_ink
 from curvefit.identify.placing import Label, spot
+from curvefit.identify.series import settle
 from curvefit.identify.wording import Meaning
 from curvefit.records import Panel, Trace
 
-__all__ = ["Level", "Settings", "iso_lines", "levels", "unimodal"]
+__all__ = ["Level", "Settings", "iso_lines", "levels"]
 
 Array = NDArray[np.float64]
 
+_UNIT = {"percent": "%", "power": "kW", "length": "m"}
 _QUANTITY = {"percent": "iso_efficiency", "power": "iso_shaft_power", "length": "iso_npsh_required"}
 
 
@@ -32,7 +34,7 @@ class Settings:
 class Level:
     """What an iso line is: its quantity, level (SI) and label; level None where unreadable.
 
-    bent : the text was corrected by the levels of its neighbours.
+    bent : the level is not what the text says, but what fits between its neighbours.
     """
 
     quantity: str
@@ -162,12 +164,13 @@ def levels(
     dealt = _dealt(lines, labels, kind, settings)
     values = [None if d is None else d[1].value for d in dealt]
     rows = _sequences(lines, heads)
-    mended = _mend(values, [d[0].text if d else "" for d in dealt], rows, kind)
+    texts = [d[0].text if d else "" for d in dealt]
+    mended = settle(values, texts, rows) if kind == "percent" else values
+    usual = next((d[1].unit for d in dealt if d is not None), _UNIT[kind])
     found = []
     for d, before, after in zip(dealt, values, mended, strict=True):
-        unit = d[1].unit if d is not None else {"percent": "%", "power": "kW"}.get(kind, "m")
-        bent = d is not None and before != after
-        found.append(Level(quantity, after, unit, d[0] if d else None, bent))
+        unit = d[1].unit if d is not None else usual
+        found.append(Level(quantity, after, unit, d[0] if d else None, before != after))
     return found
 
 
@@ -231,80 +234,3 @@ def _sequences(lines: Sequence[Trace], heads: Sequence[Trace]) -> list[list[int]
         if len(row) > 1:
             rows.append(row)
     return rows
-
-
-def unimodal(values: Sequence[float | None]) -> bool:
-    """Whether known values rise strictly to a peak and fall strictly behind it.
-
-    The two values next to the peak may be equal: the two branches of one level.
-    """
-    known = [v for v in values if v is not None]
-    steps = np.sign(np.diff(known))
-    flat = np.flatnonzero(steps == 0)
-    if len(flat) > 1:
-        return False
-    if len(flat) == 1:
-        k = int(flat[0])
-        return bool((steps[:k] > 0).all() and (steps[k + 1 :] < 0).all())
-    falls = np.flatnonzero(steps < 0)
-    return bool(not len(falls) or (steps[falls[0] :] < 0).all())
-
-
-def _mend(
-    values: Sequence[float | None], texts: Sequence[str], rows: Sequence[Sequence[int]], kind: str
-) -> list[float | None]:
-    """Levels with those that break the order mended or, where no level fits, taken back."""
-    mended = list(values)
-    if kind != "percent" or sum(v is not None for v in values) < 3:
-        return mended
-
-    def broken(trial: Sequence[float | None]) -> int:
-        return sum(not unimodal([trial[i] for i in row]) for row in rows)
-
-    series = _series([v for v in values if v is not None])
-    for _ in range(2):
-        faults = broken(mended)
-        if not faults:
-            break
-        without = {
-            i: broken([None if k == i else v for k, v in enumerate(mended)])
-            for i, v in enumerate(mended)
-            if v is not None
-        }
-        worst = min(without, key=lambda i: (without[i], -_doubt(texts[i])))
-        if without[worst] >= faults:
-            break
-        fitting = [
-            s
-            for s in series
-            if _misread(texts[worst], s)
-            and broken([s if k == worst else v for k, v in enumerate(mended)]) <= without[worst]
-        ]
-        mended[worst] = fitting[0] if len(fitting) == 1 else None
-    return mended
-
-
-def _doubt(text: str) -> float:
-    return 0.0 if text.endswith("%") else 1.0
-
-
-def _series(known: Sequence[float]) -> list[float]:
-    """The levels that a chart with these could print: multiples of their step, 10–95 %."""
-    whole = np.unique(np.rint(np.asarray(known) * 1000).astype(int))
-    common = sorted(np.diff(whole))
-    step = int(common[len(common) // 2]) if len(common) else 50
-    step = next((s for s in (5, 10, 20, 25, 50, 100) if s >= step), 100)
-    while step > 5 and sum(v % step for v in whole) and (whole % step == 0).mean() < 0.6:
-        step = {100: 50, 50: 25, 25: 20, 20: 10, 10: 5}[step]
-    return [k / 1000 for k in range(step, 960, step)]
-
-
-def _misread(text: str, level: float) -> bool:
-    """Whether a text could be this level with one character misread or lost."""
-    digits = "".join(c for c in text if c.isdigit())
-    right = f"{100 * level:g}".replace(".", "")
-    if len(digits) > len(right):
-        digits = digits[: len(right)]
-    if len(digits) == len(right):
-        return sum(a != b for a, b in zip(digits, right, strict=True)) <= 1
-    return len(digits) + 1 == len(right) and (right.startswith(digits) or right.endswith(digits))

@@ -1,0 +1,169 @@
+"""The printed series of efficiency levels: what is off it, out of order or missing is mended."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+__all__ = ["Settings", "series_step", "settle", "unimodal"]
+
+
+@dataclass(frozen=True, slots=True)
+class Settings:
+    """Costs: a level off the series, one character misread, no level, one that no text says.
+
+    disorder : a head line along which the levels do not rise to one peak and fall behind it.
+    """
+
+    off_series: float = 0.4
+    misread: float = 1.2
+    unknown: float = 2.0
+    silent: float = 1.6
+    disorder: float = 3.0
+
+
+def unimodal(values: Sequence[float | None]) -> bool:
+    """Whether known values rise strictly to a peak and fall strictly behind it.
+
+    The two values next to the peak may be equal: the two branches of one level.
+
+    Examples
+    --------
+    >>> unimodal([0.6, 0.7, None, 0.75, 0.75, 0.7]), unimodal([0.6, 0.1, 0.7])
+    (True, False)
+    """
+    known = [v for v in values if v is not None]
+    steps = np.sign(np.diff(known))
+    flat = np.flatnonzero(steps == 0)
+    if len(flat) > 1:
+        return False
+    if len(flat) == 1:
+        k = int(flat[0])
+        return bool((steps[:k] > 0).all() and (steps[k + 1 :] < 0).all())
+    falls = np.flatnonzero(steps < 0)
+    return bool(not len(falls) or (steps[falls[0] :] < 0).all())
+
+
+def series_step(known: Sequence[float]) -> float | None:
+    """The step of the series that most levels are multiples of; None where there is none.
+
+    Examples
+    --------
+    >>> series_step([0.7, 0.75, 0.8, 0.83])
+    0.05
+    """
+    per_mille = np.rint(np.unique(np.asarray(known, float)) * 1000).astype(int)
+    if len(per_mille) < 3:
+        return None
+    for step in (100, 50, 25, 20, 10):
+        on = int((per_mille % step == 0).sum())
+        if on >= max(len(per_mille) - max(1, len(per_mille) // 3), 2):
+            return step / 1000
+    return None
+
+
+def settle(
+    values: Sequence[float | None],
+    texts: Sequence[str],
+    rows: Sequence[Sequence[int]],
+    settings: Settings | None = None,
+) -> list[float | None]:
+    """The levels of iso lines such that they are in order along every head line.
+
+    Parameters
+    ----------
+    values : levels as read, fractions; texts : their labels, "" where there is none.
+    rows : for each head line the lines that meet it, from left to right.
+
+    Returns
+    -------
+    list : a level that contradicts the others replaced by the one of the series that fits its
+        place and differs from its text by a single character; a missing one filled in where only
+        one fits; None where several would.
+
+    Notes
+    -----
+    The least total cost is sought line by line until nothing changes (iterated conditional
+    modes); ties count as not known.
+    """
+    settings = settings or Settings()
+    known = [v for v in values if v is not None]
+    step = series_step(known)
+    if len(known) < 3 or not rows:
+        return list(values)
+    low, high = min(known), max(known)
+    series = [] if step is None else [k * step for k in range(1, int(1 / step)) if k * step < 0.96]
+    options: list[dict[float | None, float]] = []
+    for value, text in zip(values, texts, strict=True):
+        costs: dict[float | None, float] = {None: settings.unknown}
+        for level in series:
+            level = round(level, 6)
+            if text and _misread(text, level):
+                costs[level] = settings.misread
+            elif not text and low <= level <= high:
+                costs[level] = settings.silent
+        if value is not None:
+            off = step is not None and not _on(value, step)
+            costs[value] = settings.off_series * off
+        options.append(costs)
+    chosen = list(values)
+    for _ in range(5):
+        before = list(chosen)
+        for i in _most_doubtful_first(chosen, texts, rows):
+            chosen[i] = _best(i, chosen, options[i], rows, settings)
+        if chosen == before:
+            break
+    return chosen
+
+
+def _on(value: float, step: float) -> bool:
+    return abs(value / step - round(value / step)) < 1e-6
+
+
+def _disorder(values: Sequence[float | None], rows: Sequence[Sequence[int]]) -> int:
+    return sum(not unimodal([values[i] for i in row]) for row in rows)
+
+
+def _most_doubtful_first(
+    values: Sequence[float | None], texts: Sequence[str], rows: Sequence[Sequence[int]]
+) -> list[int]:
+    """Lines in the order in which doing without them mends most."""
+
+    def without(i: int) -> int:
+        return _disorder([None if k == i else v for k, v in enumerate(values)], rows)
+
+    return sorted(
+        range(len(values)), key=lambda i: (values[i] is not None, without(i), texts[i][-1:] == "%")
+    )
+
+
+def _best(
+    i: int,
+    values: Sequence[float | None],
+    costs: dict[float | None, float],
+    rows: Sequence[Sequence[int]],
+    settings: Settings,
+) -> float | None:
+    """The cheapest level of one line while the others stand; None if two are equally cheap."""
+
+    def total(level: float | None) -> float:
+        trial = [level if k == i else v for k, v in enumerate(values)]
+        return costs[level] + settings.disorder * _disorder(trial, rows)
+
+    ranked = sorted(costs, key=total)
+    if len(ranked) > 1 and abs(total(ranked[0]) - total(ranked[1])) < 1e-9:
+        return None
+    return ranked[0]
+
+
+def _misread(text: str, level: float) -> bool:
+    """Whether a text could be this level with one character misread or lost."""
+    digits = "".join(c for c in text if c.isdigit())
+    right = f"{100 * level:g}".replace(".", "")
+    if len(digits) > len(right):
+        digits = digits[: len(right)]
+    if len(digits) == len(right):
+        return sum(a != b for a, b in zip(digits, right, strict=True)) <= 1
+    return len(digits) + 1 == len(right) and (right.startswith(digits) or right.endswith(digits))
