@@ -9,7 +9,7 @@ from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
-from curvefit.errors import Location, NotesError, OpenError
+from curvefit.errors import Location, NotesError
 from curvefit.notes.entry import Entry
 from curvefit.notes.given import (
     AxisNotes,
@@ -56,18 +56,16 @@ def read_notes(path: str | Path | None, page: Page | None = None, *, named: bool
 
     Raises
     ------
-    OpenError
-        If the file cannot be read.
     NotesError
-        If an entry cannot be used (file, line and key are named), or the file gives places on
-        another picture than this one.
+        If the file cannot be read, an entry cannot be used (file, line and key are named), or it
+        gives places on another picture than this one.
     """
     if path is None:
         return Notes()
     try:
         text = Path(path).read_text(encoding="utf-8")
     except (OSError, UnicodeDecodeError) as error:
-        raise OpenError(
+        raise NotesError(
             f"the notes file cannot be read: {error}",
             Location(file=str(path)),
             "Give the path of a UTF-8 text file in TOML.",

@@ -1,0 +1,52 @@
+"""The app: every command registered, and the way out with its exit code."""
+
+from __future__ import annotations
+
+import sys
+
+import typer
+from curvefit_cli.demo import demo
+from curvefit_cli.read import read
+from curvefit_cli.show import ended
+
+__all__ = ["app", "main"]
+
+app = typer.Typer(
+    add_completion=False,
+    rich_markup_mode=None,
+    pretty_exceptions_enable=False,
+    context_settings={"help_option_names": ["--help", "-h"], "max_content_width": 100},
+)
+
+
+@app.callback(invoke_without_command=True)
+def begin(
+    context: typer.Context,
+    version: bool = typer.Option(False, "--version", help="Print the version."),
+) -> None:
+    """Turn the printed performance chart of a pump into numbers with a known error.
+
+    Example: curvefit read chart.png
+    """
+    from curvefit import __version__
+
+    if version:
+        typer.echo(f"curvefit {__version__}")
+        raise typer.Exit
+    if context.invoked_subcommand is None:
+        typer.echo(context.get_help())
+        raise typer.Exit
+
+
+app.command()(read)
+app.command()(demo)
+
+
+def main(arguments: list[str] | None = None) -> None:
+    """Runs the command line and exits with the code that its documentation promises."""
+    given = sys.argv[1:] if arguments is None else arguments
+    sys.exit(ended(lambda: app(args=given, standalone_mode=False), debug="--debug" in given))
+
+
+if __name__ == "__main__":
+    main()
