@@ -7,12 +7,14 @@ from collections.abc import Sequence
 import numpy as np
 
 from curvefit.identify import doubts
-from curvefit.identify.families import deal
+from curvefit.identify.families import Deal, deal
 from curvefit.identify.impellers import agree, member
 from curvefit.identify.ink import line_sample, same_ink
 from curvefit.identify.line import Line
+from curvefit.identify.look import again, missing
 from curvefit.identify.placing import Label, spot
 from curvefit.identify.wording import Meaning
+from curvefit.records import Trace
 
 __all__ = ["name_families"]
 
@@ -49,7 +51,7 @@ def _label_group(
     legend = _from_legend(group, free)
     if legend is not None:
         return legend
-    found = deal([member(x) for x in group], quantity, free, [x.trace for x in others])
+    found = _dealt(group, quantity, free, [x.trace for x in others])
     if found is None:
         return set()
     taken = set()
@@ -60,6 +62,25 @@ def _label_group(
         doubts.of_label(line, *got)
         taken.add(id(got[0].word))
     return taken
+
+
+def _dealt(
+    group: Sequence[Line], quantity: str, free: Sequence[Label], others: Sequence[Trace]
+) -> Deal | None:
+    """Labels dealt to a family; where some line got none or a bent one, after a second look."""
+    members = [member(x) for x in group]
+    first = deal(members, quantity, free, others)
+    if first is None or first.kind == "letter" or len(group) < 2:
+        return first
+    named = [(x.trace, g[0]) for x, g in zip(group, first.given, strict=True) if g is not None]
+    unnamed = [x.trace for x, g in zip(group, first.given, strict=True) if g is None]
+    bent = [g[0] for g in first.given if g is not None and g[1].cost >= 0.3]
+    panel = group[0].panel
+    extra = (*missing(panel, named, unnamed), *(again(panel, bent) if bent else ()))
+    if not extra:
+        return first
+    second = deal(members, quantity, (*free, *extra), others)
+    return second if second is not None and second.kind == first.kind else first
 
 
 def _stands_alone(line: Line, label: Label, meaning: Meaning) -> bool:

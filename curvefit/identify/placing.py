@@ -12,7 +12,7 @@ from curvefit.identify.wording import Meaning, meanings
 from curvefit.records import Panel, Trace, Word
 from curvefit.units import fold
 
-__all__ = ["Label", "Spot", "labels_of", "spot"]
+__all__ = ["Label", "Spot", "label_of", "labels_of", "spot"]
 
 Array = NDArray[np.float64]
 
@@ -62,20 +62,28 @@ def labels_of(panel: Panel) -> tuple[Label, ...]:
     width, height = panel.warp.size
     found = []
     for word in panel.words:
-        box = project(panel.warp.matrix, word.box)
-        low, high = box.min(0), box.max(0)
-        centre, half = (low + high) / 2, (high - low) / 2
-        size = min(word.height, word.width) * _scale(panel)
-        inside = 0 < centre[0] < width and 0 < centre[1] < height
-        beside = (
-            -0.2 * width < centre[0] < 1.25 * width and -0.15 * height < centre[1] < 1.15 * height
-        )
-        if not beside or (not inside and _is_title(word, titles)):
-            continue
-        found.append(
-            Label(word, centre, half, max(size, 1.0), meanings(word.text), _masked(panel, word))
-        )
+        label = label_of(panel, word)
+        x, y = label.centre
+        inside = 0 < x < width and 0 < y < height
+        near = -0.2 * width < x < 1.25 * width and -0.15 * height < y < 1.15 * height
+        if near and (inside or not _is_title(word, titles)):
+            found.append(label)
     return tuple(found)
+
+
+def label_of(panel: Panel, word: Word) -> Label:
+    """One word of a panel with its place in the straightened box and its meanings."""
+    box = project(panel.warp.matrix, word.box)
+    low, high = box.min(0), box.max(0)
+    size = min(word.height, word.width) * _scale(panel)
+    return Label(
+        word,
+        (low + high) / 2,
+        (high - low) / 2,
+        max(size, 1.0),
+        meanings(word.text),
+        _masked(panel, word),
+    )
 
 
 def spot(label: Label, trace: Trace) -> Spot:
