@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import numpy as np
 from numpy.typing import NDArray
 
 from curvefit.geometry import arc_length
 from curvefit.trace.centre import Line
 
-__all__ = ["extended", "supported"]
+__all__ = ["extended", "smoothest", "supported"]
 
 Array = NDArray[np.float64]
 
@@ -65,3 +67,30 @@ def supported(line: Line) -> tuple[int, int]:
     if not len(shown):
         return first, max(last - 1, first)
     return first + int(shown[0]), first + int(shown[-1])
+
+
+def smoothest(line: Line, sharp: float = 0.4) -> tuple[int, int]:
+    """First and last index of the longest stretch without a kink.
+
+    Where the direction of some strokes' length before a place and after it differ by more than
+    `sharp` [rad], two lines were taken for one.
+    """
+    n, reach = len(line.xy), int(max(4 * line.width, 14))
+    if n < 4 * reach:
+        return 0, n - 1
+    before = line.xy[reach:-reach] - line.xy[: -2 * reach]
+    after = line.xy[2 * reach :] - line.xy[reach:-reach]
+    cross = before[:, 0] * after[:, 1] - before[:, 1] * after[:, 0]
+    turn = np.abs(np.arctan2(cross, (before * after).sum(1)))
+    kinks, bound = [0], turn.copy()
+    while bound.max() > sharp:
+        k = int(bound.argmax())
+        kinks.append(k + reach)
+        bound[max(k - 2 * reach, 0) : k + 2 * reach] = 0
+    cuts = [*sorted(kinks), n - 1]
+    ink = [float(line.good[a:b].sum()) for a, b in pairwise(cuts)]
+    best = int(np.argmax(ink))
+    pad = reach // 2
+    first = cuts[best] + (pad if best else 0)
+    last = cuts[best + 1] - (pad if best + 2 < len(cuts) else 0)
+    return first, last

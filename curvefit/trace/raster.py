@@ -10,10 +10,10 @@ from numpy.typing import NDArray
 from curvefit.geometry import resample
 from curvefit.records import Panel
 from curvefit.trace.centre import Line, centred, trimmed, width_along
-from curvefit.trace.ends import extended, supported
+from curvefit.trace.ends import extended, smoothest, supported
 from curvefit.trace.grid import Inked, without_lines
 from curvefit.trace.ink import MARGIN, Flat, Layer, hues, straightened, stroke_width
-from curvefit.trace.linked import linked_lines
+from curvefit.trace.linked import linked_lines, without
 from curvefit.trace.sift import is_frame, without_doubles
 from curvefit.trace.text import lettering
 from curvefit.trace.track import Track, Tracking, across, best_track, peel
@@ -90,7 +90,9 @@ def _follow(layer: Layer, width: float, settings: Settings) -> list[Line]:
     import cv2
 
     rows, cols = layer.ink.shape
-    k = float(np.clip(settings.tracking.stroke / width, 0.15, 1.6))
+    k = float(np.clip(settings.tracking.stroke / max(width, 1.0), 0.15, 1.0))
+    if width < 1.3:
+        k = 1.5
     size = (max(round(cols * k), 16), max(round(rows * k), 16))
     how = cv2.INTER_AREA if k < 1 else cv2.INTER_LINEAR
     seen = 0.3 * layer.ink + 0.7 * layer.lines
@@ -103,12 +105,13 @@ def _follow(layer: Layer, width: float, settings: Settings) -> list[Line]:
         track = best_track(reward, settings.tracking)
         if track is None or track.score < settings.shortest * size[0]:
             break
-        line, own = _refined(layer, track, scale, width)
-        peel(reward, track.x, track.y, 0.5 * own * k + 0.3)
-        if line is not None:
-            x, y = ((line.xy + 0.5) / scale - 0.5).T
-            peel(reward, x, y, 0.5 * own * k + 0.3)
-            lines.append(line)
+        line, own = _refined(without(layer, lines), track, scale, width)
+        if line is None:
+            peel(reward, track.x, track.y, 0.5 * own * k + 0.3)
+            continue
+        x, y = ((line.xy + 0.5) / scale - 0.5).T
+        peel(reward, x, y, 0.5 * own * k + 0.3)
+        lines.append(line)
     return lines
 
 
@@ -124,6 +127,7 @@ def _refined(
     line = centred(layer.lines, layer.known, rough, own)
     reach = 24.0 + 3 * own
     longer = centred(layer.lines, layer.known, extended(line.xy, reach, 60.0), own, slack=1.5)
+    longer = trimmed(longer, *smoothest(longer))
     first, last = supported(longer)
     if last - first < 12:
         return None, own

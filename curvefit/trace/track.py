@@ -20,7 +20,13 @@ class Tracking:
 
     stroke: float = 2.4
     steepest: int = 36  #: rows a step of 16 columns
-    bend: tuple[float, ...] = (0.0, 0.4, 1.6, 3.6, 6.4)  #: cost of a change of slope by 0, 1 … rows
+    bend: tuple[float, ...] = (
+        0.0,
+        0.8,
+        3.2,
+        7.2,
+        12.8,
+    )  #: cost of a change of slope by 0, 1 … rows
     blank: float = 0.2  #: cost of a pixel without ink
     beside: float = 0.35  #: cost of ink beside the stroke (letters, blots)
 
@@ -54,12 +60,12 @@ def _segments(reward: Image, slopes: NDArray[np.int64]) -> Image:
     reach = int(slopes.max())
     padded = np.full((rows + 2 * reach, steps * STEP), -0.5, np.float32)
     padded[reach : reach + rows] = reward[:, : steps * STEP]
-    columns = padded.reshape(rows + 2 * reach, steps, STEP)
+    columns = np.ascontiguousarray(padded.reshape(rows + 2 * reach, steps, STEP).transpose(2, 0, 1))
     out = np.zeros((len(slopes), rows, steps), np.float32)
     for i, slope in enumerate(slopes):
         for j in range(STEP):
             drop = reach + round(slope * (j + 0.5) / STEP)
-            out[i] += columns[drop : drop + rows, :, j]
+            out[i] += columns[j, drop : drop + rows]
     return out
 
 
@@ -75,45 +81,46 @@ def best_track(reward: Image, tracking: Tracking) -> Track | None:
     slopes = np.arange(-tracking.steepest, tracking.steepest + 1)
     segments = _segments(reward, slopes)
     n, rows, steps = segments.shape
-    turns = [t for k in range(len(tracking.bend)) for t in ({k, -k})]
-    value = np.full((n, rows), -1e6, np.float32)
-    source = np.empty((steps, n, rows), np.int8)
-    ends = np.empty(steps, np.float32)
-    ends_at = np.empty(steps, np.int64)
+    values = np.full((steps + 1, n, rows), -1e6, np.float32)
     for step in range(steps):
-        best = np.zeros((n, rows), np.float32)
-        turn_of = np.full((n, rows), 127, np.int8)
-        for t in turns:
-            low, high = max(0, -t), n - max(0, t)
-            candidate = value[low + t : high + t] - np.float32(tracking.bend[abs(t)])
-            better = candidate > best[low:high]
-            np.copyto(best[low:high], candidate, where=better)
-            np.copyto(turn_of[low:high], np.int8(t), where=better)
-        value = np.full((n, rows), -1e6, np.float32)
-        best += segments[:, :, step]
+        best = _before(values[step], tracking) + segments[:, :, step]
         for i, slope in enumerate(slopes):  # the value stands where the step ends
             if slope >= 0:
-                value[i, slope:] = best[i, : rows - slope]
-                source[step, i, slope:] = turn_of[i, : rows - slope]
+                values[step + 1, i, slope:] = best[i, : rows - slope]
             else:
-                value[i, :slope] = best[i, -slope:]
-                source[step, i, :slope] = turn_of[i, -slope:]
-        ends_at[step] = int(value.argmax())
-        ends[step] = value.flat[ends_at[step]]
-    last = int(ends.argmax())
-    if ends[last] <= 0:
+                values[step + 1, i, :slope] = best[i, -slope:]
+    last = int(values.reshape(steps + 1, -1).max(1).argmax())
+    i, row = divmod(int(values[last].argmax()), rows)
+    score = float(values[last, i, row])
+    if score <= 0:
         return None
-    i, row = divmod(int(ends_at[last]), rows)
-    xs, ys = [(last + 1) * STEP - 0.5], [float(row)]
-    for step in range(last, -1, -1):
-        turn = int(source[step, i, row])
+    xs, ys = [last * STEP - 0.5], [float(row)]
+    for step in range(last - 1, -1, -1):
         row -= int(slopes[i])
         xs.append(step * STEP - 0.5)
         ys.append(float(row))
-        if turn == 127:
+        worth, i = _came_from(values[step, :, row], i, tracking)
+        if worth <= 0:
             break
-        i += turn
-    return Track(np.array(xs[::-1]), np.array(ys[::-1]), float(ends[last]))
+    return Track(np.array(xs[::-1]), np.array(ys[::-1]), score)
+
+
+def _before(value: Image, tracking: Tracking) -> Image:
+    """The best value to come from, for every slope and row: 0 where the line is born here."""
+    n = len(value)
+    best = np.maximum(value, 0)
+    room = np.empty_like(value)
+    for k, cost in enumerate(tracking.bend[1:], 1):
+        cheaper = np.subtract(value, np.float32(cost), out=room)
+        np.maximum(best[: n - k], cheaper[k:], out=best[: n - k])
+        np.maximum(best[k:], cheaper[: n - k], out=best[k:])
+    return best
+
+
+def _came_from(value: Image, i: int, tracking: Tracking) -> tuple[float, int]:
+    """The value and slope that a step with slope number i came from."""
+    near = range(max(i - len(tracking.bend) + 1, 0), min(i + len(tracking.bend), len(value)))
+    return max((float(value[j]) - tracking.bend[abs(j - i)], j) for j in near)
 
 
 def peel(reward: Image, xs: Array, ys: Array, half: float, worth: float = 0.0) -> None:
