@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
@@ -15,7 +15,7 @@ from curvefit.errors import ChartError, InputError, LimitError, Location, NoChar
 from curvefit.load.guard import Guard
 from curvefit.load.limits import Limits
 from curvefit.load.turning import rgb, stored_from_shown, turned
-from curvefit.records import Page
+from curvefit.records import Page, Stroke
 
 __all__ = ["pages_of"]
 
@@ -127,10 +127,6 @@ def _sha256(path: Path) -> str:
 
 
 def _page(header: dict[str, Any], arrays: list[bytes], source: Source, number: int) -> Page:
-    if header["kind"] == "drawn":
-        from curvefit.load.drawing import drawn_page
-
-        return drawn_page(header, arrays, source.file, source.sha256, number, source.pages)
     width, height = header["size"]
     pixels = rgb(arrays[0], header["mode"], (width, height), header["full"])
     orientation = header["orientation"]
@@ -143,16 +139,31 @@ def _page(header: dict[str, Any], arrays: list[bytes], source: Source, number: i
         across, down = dpi[::-1] if swapped else dpi
         shown, stretch = _squared(shown, across, down)
         matrix = matrix @ stretch
-    return Page(
+    page = Page(
         source.file,
         source.sha256,
         number,
         shown,
         stored,
         matrix,
-        float(max(dpi)) if dpi is not None else None,
+        round(float(max(dpi)), 2) if dpi is not None else None,
         pages=source.pages,
     )
+    return _with_drawing(page, header, arrays) if len(arrays) > 1 else page
+
+
+def _with_drawing(page: Page, header: dict[str, Any], arrays: list[bytes]) -> Page:
+    """The page with the words of its text layer and, where lines are drawn on it, its strokes."""
+    from curvefit.load.drawing import strokes_of
+    from curvefit.load.words import words_of
+
+    points = np.vstack([header["from_points"], [0.0, 0.0, 1.0]])
+    to_page = np.linalg.inv(page.stored_from_page) @ points
+    words, findings = words_of(arrays[1], to_page)
+    strokes: tuple[Stroke, ...] = ()
+    if header["kind"] == "drawn":
+        strokes = strokes_of(header["paths"], arrays[2], arrays[3], to_page, page.size)
+    return replace(page, words=words, strokes=strokes, findings=findings)
 
 
 def _squared(

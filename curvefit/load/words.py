@@ -1,0 +1,215 @@
+"""The characters of a text layer → Word records: lines of text as they are printed."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import numpy as np
+from numpy.typing import NDArray
+
+from curvefit.geometry import project
+from curvefit.records import Finding, Word
+
+__all__ = ["words_of"]
+
+Array = NDArray[np.float64]
+UNKNOWN = "�"
+RAISED = str.maketrans("0123456789-−+n", "⁰¹²³⁴⁵⁶⁷⁸⁹⁻⁻⁺ⁿ")
+LIGATURES = str.maketrans({"ﬀ": "ff", "ﬁ": "fi", "ﬂ": "fl", "ﬃ": "ffi", "ﬄ": "ffl"})
+NOTHING = "\u00ad\u200b\u200c\u200d\ufeff"
+
+# lengths in em (the size of the type)
+BLANK = 0.15  #: a gap that stands for a blank
+APART = 0.9  #: a gap that no one text has
+NUMBERS = 0.4  #: the same between two digits set apart
+BASELINE = 0.12  #: how far apart two characters of one line may stand
+SMALL = 0.86  #: a raised or lowered character is at most this large
+CAPITAL = 0.7  #: height that is taken for a line without tall letters
+
+
+class _Line:
+    """Characters of one direction in that direction's own frame: u along, v up, all (n,) px."""
+
+    def __init__(self, codes: Array, u: Array, v: Array, em: Array, extent: Array, piece: Array):
+        self.text = [chr(int(c)) for c in codes]
+        self.u, self.v, self.em, self.piece = u, v, em, piece
+        self.end, self.low, self.high, self.start = extent.T
+
+
+def words_of(data: bytes, to_page: Array) -> tuple[tuple[Word, ...], tuple[Finding, ...]]:
+    """The lines of text of a page, and what is to be said of its text layer.
+
+    Parameters
+    ----------
+    data : rows of float64, a character each: code point; x, y of its origin, its direction of
+        writing × em, left, right, bottom, top of its ink, width and height of the upright box of
+        its advance, number of its text object; page points
+    to_page : array of shape (3, 3), page points → page px
+    """
+    rows = np.frombuffer(data, float).reshape(-1, 12)
+    rows = rows[np.hypot(rows[:, 3], rows[:, 4]) > 0.5]
+    if not len(rows):
+        return (), ()
+    origin = project(to_page, rows[:, 1:3])
+    along = rows[:, 3:5] @ to_page[:2, :2].T
+    em = np.hypot(*along.T)
+    angle = np.degrees(np.arctan2(-along[:, 1], along[:, 0]))
+    rows, keep = rows, _first_of_each(rows, em, origin)
+    words: list[Word] = []
+    unknown = 0
+    for degrees in np.unique(np.round(angle[keep]) % 360):
+        near = keep[np.abs((angle[keep] - degrees + 180) % 360 - 180) <= 0.5]
+        turn = float(np.median(angle[near]))
+        for word in _lines(rows[near], origin[near], em[near], turn, to_page):
+            unknown += UNKNOWN in word.text
+            if UNKNOWN not in word.text:
+                words.append(word)
+    return tuple(words), _said(unknown, len(words))
+
+
+def _said(unknown: int, known: int) -> tuple[Finding, ...]:
+    if not unknown:
+        return ()
+    return (
+        Finding(
+            "info",
+            "page.text-codes",
+            f"{unknown} of {unknown + known} texts of the PDF use a font that does not tell its "
+            "letters; they are read from their picture or not at all.",
+        ),
+    )
+
+
+def _first_of_each(rows: Array, em: Array, origin: Array) -> NDArray[np.intp]:
+    """Characters without those printed again at the same place (a halo, a false bold)."""
+    place = np.round(origin / (0.2 * em[:, None]))
+    _, first = np.unique(np.c_[rows[:, 0], place], axis=0, return_index=True)
+    return np.sort(first)
+
+
+def _lines(rows: Array, origin: Array, em: Array, degrees: float, to_page: Array) -> Iterator[Word]:
+    """Words of the characters that are written in one direction."""
+    cos, sin = np.cos(np.radians(degrees)), np.sin(np.radians(degrees))
+    frame = np.array([[cos, -sin], [-sin, -cos]])  # page px → (along, up)
+    place = origin @ frame.T
+    extent = _extent(rows, place, em, degrees, frame, to_page)
+    line = _Line(rows[:, 0], place[:, 0], place[:, 1], em, extent, rows[:, 11])
+    for group in _joined(line):
+        text = _text(line, group)
+        if text:
+            yield Word(text, _box(line, group) @ np.linalg.inv(frame).T)
+
+
+def _extent(
+    rows: Array, place: Array, em: Array, degrees: float, frame: Array, to_page: Array
+) -> Array:
+    """(n, 4) end of the advance, lowest and highest ink, begin of the ink, in the line's frame."""
+    scale = float(np.sqrt(abs(np.linalg.det(to_page[:2, :2]))))
+    if abs((degrees + 45) % 90 - 45) > 2:  # not along an edge of the page: boxes say little
+        c, s = abs(np.cos(np.radians(degrees))), abs(np.sin(np.radians(degrees)))
+        wide, high = rows[:, 9] * scale, rows[:, 10] * scale
+        lean = c * c - s * s
+        advance = (wide * c - high * s) / lean if abs(lean) > 0.2 else np.full(len(rows), np.nan)
+        fits = (advance > 0.1 * em) & (advance < 1.3 * em)
+        advance = np.where(fits, advance, 0.55 * em)
+        u, v = place.T
+        return np.c_[u + advance, v - 0.02 * em, v + CAPITAL * em, u]
+    corners = [project(to_page, rows[:, [i, j]]) @ frame.T for i in (5, 6) for j in (7, 8)]
+    ink = np.stack(corners)
+    sideways = round(degrees / 90) % 2 == 1
+    advance = rows[:, 10 if sideways else 9] * scale
+    return np.c_[place[:, 0] + advance, ink[:, :, 1].min(0), ink[:, :, 1].max(0), ink[:, :, 0].min(0)]
+
+
+def _joined(line: _Line) -> list[list[int]]:
+    """Characters of each printed text, in the order of reading."""
+    groups = [g for level in _levels(line) for g in _split(line, level)]
+    blank = [all(line.text[i].isspace() for i in g) for g in groups]
+    groups = [g for g, b in zip(groups, blank, strict=True) if not b]
+    return _with_raised(line, groups)
+
+
+def _levels(line: _Line) -> Iterator[list[int]]:
+    """Characters of like size on one base line."""
+    order = np.lexsort((line.v, np.round(np.log(line.em) / 0.05)))
+    level = [int(order[0])]
+    for i in order[1:]:
+        last = level[-1]
+        alike = abs(line.em[i] / line.em[last] - 1) < 0.06
+        if alike and abs(line.v[i] - line.v[last]) < BASELINE * line.em[i]:
+            level.append(int(i))
+        else:
+            yield level
+            level = [int(i)]
+    yield level
+
+
+def _split(line: _Line, level: list[int]) -> Iterator[list[int]]:
+    """A level cut where wide blanks stand."""
+    level = sorted(level, key=lambda i: line.u[i])
+    group = level[:1]
+    for i in level[1:]:
+        if line.text[i].isspace():  # counts where it stands between two letters only
+            group.append(i)
+            continue
+        letters = [j for j in group if not line.text[j].isspace()]
+        if letters and _apart(line, letters[-1], i):
+            yield group
+            group = []
+        group.append(i)
+    yield group
+
+
+def _apart(line: _Line, left: int, right: int) -> bool:
+    gap = (line.u[right] - line.end[left]) / line.em[left]
+    if line.piece[left] == line.piece[right]:
+        return bool(gap > 2 * APART)
+    digits = line.text[left].isdigit() and line.text[right].isdigit()
+    return bool(gap > (NUMBERS if digits else APART) or gap < -0.5)
+
+
+def _with_raised(line: _Line, groups: list[list[int]]) -> list[list[int]]:
+    """Groups of small characters joined to the text that they stand above or below of."""
+    em = np.array([np.median(line.em[g]) for g in groups])
+    v = np.array([np.median(line.v[g]) for g in groups])
+    start = np.array([line.u[g].min() for g in groups])
+    stop = np.array([max(line.end[i] for i in g if not line.text[i].isspace()) for g in groups])
+    gone: set[int] = set()
+    for k in np.argsort(em):
+        lift = (v[k] - v) / em
+        gap = np.maximum(start[k] - stop, start - stop[k]) / em
+        fits = (em[k] < SMALL * em) & (em[k] > 0.4 * em) & (np.abs(lift - 0.15) < 0.6)
+        fits &= (gap < 0.2) & (stop[k] - start[k] < 2.5 * em) & (start[k] > start)
+        if fits.any():
+            best = int(np.nonzero(fits)[0][np.argmin(gap[fits])])
+            groups[best] = sorted(groups[best] + groups[k], key=lambda i: line.u[i])
+            stop[best] = max(stop[best], stop[k])
+            gone.add(int(k))
+    return [g for k, g in enumerate(groups) if k not in gone]
+
+
+def _text(line: _Line, group: list[int]) -> str:
+    em = max(line.em[i] for i in group)
+    base = float(np.median([line.v[i] for i in group if line.em[i] > SMALL * em]))
+    text, end = "", None
+    for i in group:
+        letter = line.text[i]
+        if line.em[i] < SMALL * em and line.v[i] - base > 0.15 * em:
+            letter = letter.translate(RAISED)
+        wide = end is not None and line.u[i] - end > BLANK * line.em[i]
+        if not letter.isspace():
+            text += " " + letter if wide and not text.endswith(" ") else letter
+            end = line.end[i]
+        elif text and not text.endswith(" "):
+            text += " "
+    return "".join(c for c in text if c not in NOTHING).translate(LIGATURES).strip()
+
+
+def _box(line: _Line, group: list[int]) -> Array:
+    """(4, 2) clockwise from the top left, in the line's frame."""
+    inked = [i for i in group if not line.text[i].isspace()]
+    tall = max(inked, key=lambda i: line.em[i])
+    low = min(line.v[tall], *(line.low[i] for i in inked))
+    high = max(line.v[tall] + CAPITAL * line.em[tall], *(line.high[i] for i in inked))
+    left, right = min(line.start[i] for i in inked), max(line.end[i] for i in inked)
+    return np.array([[left, high], [right, high], [right, low], [left, low]])
