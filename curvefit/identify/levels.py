@@ -82,12 +82,15 @@ def _lone_levels(
             continue
         kin = bool(isos) and not any(_other_style(trace, i) for i in isos)
         unlike = sum(_other_style(trace, t) for t in others) > 0.6 * len(others)
-        short = float(np.ptp(trace.flat[:, 0])) < 0.5 * wide
+        short = float(np.ptp(trace.flat[:, 0])) < 0.6 * wide
         marked = any(
             _near(w, trace) < 1.2
             for w in labels
             if any(m.plain and m.kind in _QUANTITY for m in w.meanings)
         )
+        falls = trace.flat[-1, 1] > trace.flat[0, 1]
+        if falls and not short:  # as heads do
+            continue
         if (kin and unlike) or (marked and (unlike or short)):
             found.append(trace)
     return found
