@@ -50,6 +50,7 @@ def write(
     from curvefit.write.curves_json import curves_document, json_text
     from curvefit.write.notes_toml import notes_toml
     from curvefit.write.outgoing import outgoing
+    from curvefit.write.overlay import overlay, png
 
     out = outgoing(reading, units, points)
     files = {f"{stem}.curves.json": json_text(curves_document(out)).encode()}
@@ -58,6 +59,8 @@ def write(
         standing = _text_of(Path(folder) / notes)
         files[table] = curves_csv(out).encode()
         files[f"{table}-metadata.json"] = csv_metadata(table, out).encode()
+        picture = overlay(reading)
+        files[f"{stem}.overlay.png"] = png(picture)
         files[notes] = notes_toml(reading, standing, str(Path(folder) / notes)).encode()
     return put_files(folder, files, inputs)
 
