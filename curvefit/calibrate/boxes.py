@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from curvefit.calibrate.lines import Line
 
@@ -31,6 +32,18 @@ class Box:
     @property
     def area(self) -> float:
         return (self.right - self.left) * (self.bottom - self.top)
+
+    @property
+    def corners(self) -> NDArray[np.float64]:
+        """(4, 2), clockwise from the top left."""
+        x0, y0, x1, y1 = self.left, self.top, self.right, self.bottom
+        return np.array([[x0, y0], [x1, y0], [x1, y1], [x0, y1]], float)
+
+    def distance(self, x: float, y: float) -> float:
+        """How far a point lies outside the box [px], 0 inside."""
+        dx = max(self.left - x, x - self.right, 0.0)
+        dy = max(self.top - y, y - self.bottom, 0.0)
+        return float(np.hypot(dx, dy))
 
 
 def find_boxes(across: list[Line], upright: list[Line], reach: float) -> list[Box]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -9,28 +10,47 @@ from numpy.typing import NDArray
 
 from curvefit.calibrate.boxes import Box, find_boxes
 from curvefit.calibrate.evidence import Evidence
+from curvefit.calibrate.glyphs import TextLine
 from curvefit.calibrate.ink import ink_of
-from curvefit.calibrate.lines import long_lines
+from curvefit.calibrate.lines import Line, long_lines
 from curvefit.calibrate.rectify import rectification, segments
-from curvefit.calibrate.sides import on_page, side_lines, warp_of
+from curvefit.calibrate.sides import side_lines, warp_of
+from curvefit.calibrate.ticks import Side, flatten, tick_rows
+from curvefit.calibrate.upright import quarter_turns
+from curvefit.calibrate.words import Lettering, find_text, read_lines
+from curvefit.geometry import Warp, project
 from curvefit.notes import PageNotes, PanelNotes
-from curvefit.records import Page
+from curvefit.records import Page, Word
 
 __all__ = ["Settings", "gather"]
 
 Array = NDArray[np.float64]
+Image = NDArray[np.uint8]
 
 
 @dataclass(frozen=True, slots=True)
 class Settings:
     """work : long side [px] of the copy on which lines are looked for; shortest : the shortest
     line of interest, as a share of that side; smallest : the smallest plot box, as a share of the
-    page's area.
+    page's area; most_lines : of text read on a page, the nearest to the boxes first.
     """
 
     work: int = 2000
     shortest: float = 0.04
     smallest: float = 0.008
+    most_lines: int = 420
+    most_pixels: int = 60_000_000
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Sheet:
+    """The ink of a page, and the same made straight; matrix : page px → straightened px."""
+
+    ink: Image
+    flat: Image
+    matrix: Array
+    across: list[Line]
+    upright: list[Line]
 
 
 def gather(
@@ -39,38 +59,150 @@ def gather(
     panel_notes: tuple[PanelNotes, ...],
     settings: Settings | None = None,
 ) -> tuple[Evidence, ...]:
-    """What the pixels show of each plot box on the page, from top to bottom."""
+    """What the pixels show of each plot box on the page, from top to bottom.
+
+    Parameters
+    ----------
+    page_notes, panel_notes : what is given is taken as given: the page's turn, the corners of a
+        panel (which make a box even where none is seen).
+
+    Returns
+    -------
+    tuple of Evidence
+        Boxes of tables and pictures may be among them: they get no scales later.
+    """
     s = settings or Settings()
-    ink = ink_of(page.pixels)
-    evidence = []
-    for corners, _box in _boxes(ink, s):
-        warp = warp_of(corners)
-        evidence.append(Evidence(corners, warp, 0, (), ()))
-    return tuple(evidence)
+    sheet = _straighten(ink_of(page.pixels), s)
+    boxes = _boxes(sheet, s)
+    if not boxes:
+        return ()
+    lettering = find_text(sheet.flat, *_zones(sheet, boxes))
+    turn = page_notes.turn if page_notes.turn is not None else quarter_turns(lettering)
+    words = read_lines(lettering, _wanted(lettering, boxes, s), sheet.matrix, turn)
+    return tuple(_evidence(sheet, c, b, turn, words, boxes) for c, b in boxes)
 
 
-def _boxes(ink: NDArray[np.uint8], s: Settings) -> list[tuple[Array, Box]]:
-    """Corners on the page (sub-pixel) of each plot box, from top to bottom."""
+def _straighten(ink: Image, s: Settings) -> Sheet:
     import cv2
 
     scale = min(1.0, s.work / max(ink.shape))
-    small = ink
-    if scale < 1:
-        small = cv2.resize(ink, None, fx=scale, fy=scale, interpolation=cv2.INTER_AREA)
+    small = _resized(ink, scale)
+    shortest = s.shortest * max(small.shape)
     size = (small.shape[1], small.shape[0])
-    shortest = s.shortest * max(size)
-    matrix = rectification(segments(small, 0.5 * shortest), size)
-    flat = cv2.warpPerspective(small, matrix, size)
-    across = long_lines(flat, True, int(shortest))
-    upright = long_lines(flat, False, int(shortest))
+    rough = rectification(segments(small, 0.5 * shortest), size)
     to_small = np.array([[scale, 0, scale / 2 - 0.5], [0, scale, scale / 2 - 0.5], [0, 0, 1]])
+    matrix = np.linalg.inv(to_small) @ rough @ to_small
+    h, w = ink.shape
+    corners = np.array([[0, 0], [w - 1, 0], [w - 1, h - 1], [0, h - 1]], float)
+    moved = project(matrix, corners)
+    if np.abs(moved - corners).max() < 0.4:
+        matrix, moved = np.eye(3), corners
+    low = np.floor(moved.min(0))
+    matrix = np.array([[1, 0, -low[0]], [0, 1, -low[1]], [0, 0, 1]]) @ matrix
+    wide, tall = (int(v) for v in np.ceil(moved.max(0) - low) + 1)
+    flat = ink
+    if not np.array_equal(matrix, np.eye(3)) and wide * tall <= s.most_pixels:
+        flat = cv2.warpPerspective(ink, matrix, (wide, tall))
+    elif wide * tall > s.most_pixels:  # the directions found are no page's
+        matrix = np.eye(3)
+    small = _resized(flat, scale)
+    back = 1 / scale
+    across = [_scaled(x, back) for x in long_lines(small, True, int(shortest))]
+    upright = [_scaled(x, back) for x in long_lines(small, False, int(shortest))]
+    return Sheet(ink, flat, matrix, across, upright)
+
+
+def _resized(image: Image, scale: float) -> Image:
+    import cv2
+
+    if scale >= 1:
+        return image
+    return np.asarray(
+        cv2.resize(image, None, fx=scale, fy=scale, interpolation=cv2.INTER_AREA), np.uint8
+    )
+
+
+def _scaled(line: Line, k: float) -> Line:
+    at, lo, hi = ((v + 0.5) * k - 0.5 for v in (line.at, line.lo, line.hi))
+    return Line(at, lo, hi, line.weight)
+
+
+def _boxes(sheet: Sheet, s: Settings) -> list[tuple[Array, Box]]:
+    """Corners on the page (sub-pixel) of each plot box, from top to bottom."""
+    long_side = max(sheet.flat.shape)
+    scale = max(1.0, long_side / s.work)
     found = []
-    for box in find_boxes(across, upright, 0.3 * shortest):
-        if box.area < s.smallest * size[0] * size[1]:
+    for box in find_boxes(sheet.across, sheet.upright, 0.3 * s.shortest * long_side):
+        if box.area < s.smallest * sheet.flat.size:
             continue
-        rough = on_page(matrix @ to_small, (box.left, box.top, box.right, box.bottom))
-        corners, _ = side_lines(ink, rough, box.seen, 4.0 / scale + 1)
+        rough = project(np.linalg.inv(sheet.matrix), box.corners)
+        corners, _ = side_lines(sheet.ink, rough, box.seen, 4.0 * scale + 1)
         found.append((corners, box))
     return sorted(found, key=lambda f: (round(f[0][:, 1].mean() / 20), f[0][:, 0].mean()))
 
 
+def _zones(
+    sheet: Sheet, boxes: list[tuple[Array, Box]]
+) -> tuple[NDArray[np.int16], NDArray[np.bool_]]:
+    """Which box each straightened pixel lies in, and the frames with what touches them."""
+    zone = np.zeros(sheet.flat.shape, np.int16)
+    frame = np.zeros(sheet.flat.shape, bool)
+    for i, (_, box) in enumerate(boxes):
+        x0, x1 = round(box.left), round(box.right)
+        y0, y1 = round(box.top), round(box.bottom)
+        zone[max(y0, 0) : y1 + 1, max(x0, 0) : x1 + 1] = i + 1
+        for x in (x0, x1):
+            frame[max(y0 - 3, 0) : y1 + 4, max(x - 3, 0) : x + 4] = True
+        for y in (y0, y1):
+            frame[max(y - 3, 0) : y + 4, max(x0 - 3, 0) : x1 + 4] = True
+    return zone, frame
+
+
+def _wanted(lettering: Lettering, boxes: list[tuple[Array, Box]], s: Settings) -> list[TextLine]:
+    """The lines of text worth reading: those nearest to a plot box."""
+
+    def distance(line: TextLine) -> float:
+        x, y = (line.box[0] + line.box[2]) / 2, (line.box[1] + line.box[3]) / 2
+        return min(b.distance(x, y) for _, b in boxes)
+
+    near = sorted(lettering.lines, key=distance)
+    return near[: s.most_lines]
+
+
+def _evidence(
+    sheet: Sheet,
+    corners: Array,
+    box: Box,
+    turn: int,
+    words: tuple[Word, ...],
+    boxes: list[tuple[Array, Box]],
+) -> Evidence:
+    upright = np.roll(corners, turn, axis=0)
+    seen = tuple(np.roll(box.seen, turn))
+    warp = warp_of(upright)
+    margin = int(min(0.3 * max(warp.size), 600))
+    flat = flatten(sheet.ink, warp, margin)
+    rows = tick_rows(flat, seen, {})  # type: ignore[arg-type]
+    return Evidence(upright, warp, turn, rows, words, _look(sheet, turn))
+
+
+def _look(sheet: Sheet, turn: int) -> Callable[[Sequence[Array]], list[tuple[str, float]]]:
+    def look(boxes: Sequence[Array]) -> list[tuple[str, float]]:
+        """Reads the numbers in boxes (4, 2), page px, clockwise from the text's top left."""
+        from curvefit.ocr import NUMERIC, recognise
+
+        return recognise([_cut(sheet.ink, np.asarray(b, float)) for b in boxes], NUMERIC)
+
+    return look
+
+
+def _cut(ink: Image, box: Array) -> Image:
+    import cv2
+
+    w = max(float(np.hypot(*(box[1] - box[0]))), 2.0)
+    h = max(float(np.hypot(*(box[3] - box[0]))), 2.0)
+    target = np.array([[0, 0], [w, 0], [w, h], [0, h]], np.float32)
+    matrix = cv2.getPerspectiveTransform(box.astype(np.float32), target)
+    return np.asarray(
+        255 - cv2.warpPerspective(ink, matrix, (round(w) + 1, round(h) + 1)), np.uint8
+    )
