@@ -11,14 +11,21 @@ from curvefit.load.refusal import Refusal
 __all__ = ["FIELDS", "Text"]
 
 #: what is said of each character: code point; origin, direction of writing × em, box of its ink,
-#: size of the upright box around its advance and line height [pt]; number of its text object
+#: size of the upright box around its advance and line height [pt]; number of its text object;
+#: 1 where the font tells its letters, 0 where they follow from the customary code
 FIELDS = (
     *("code", "x", "y", "across", "up", "left", "right", "bottom", "top"),
-    *("wide", "high", "piece"),
+    *("wide", "high", "piece", "sure"),
 )
+# codes of the ligatures in the TeX text encodings OT1 and T1, where a font has no map of its own
+UNMAPPED = {
+    **{11: 0xFB00, 12: 0xFB01, 13: 0xFB02, 14: 0xFB03, 15: 0xFB04},
+    **{27: 0xFB00, 28: 0xFB01, 29: 0xFB02, 30: 0xFB03, 31: 0xFB04},
+}
 Box = tuple[float, float, float, float]
 HIDDEN = 3, 7  # render modes: neither filled nor stroked
-UNKNOWN = 0xFFFD  # the font does not tell which letter this shape is
+UNKNOWN = 0xFFFD  # nothing tells which letter this shape is
+PRIVATE = range(0xE000, 0xF900)  # code points that mean what a font likes
 
 
 class Text:
@@ -50,6 +57,8 @@ class Text:
         import pypdfium2.raw as raw
 
         code = raw.FPDFText_GetUnicode(text, i)
+        sure = raw.FPDFText_HasUnicodeMapError(text, i) != 1
+        code = code if sure else UNMAPPED.get(code, code)
         if code < 32 or raw.FPDFText_IsGenerated(text, i) == 1:
             return
         piece = raw.FPDFText_GetTextObject(text, i)
@@ -72,8 +81,8 @@ class Text:
         loose = raw.FS_RECTF()
         raw.FPDFText_GetLooseCharBox(text, i, loose)
         advance = abs(loose.right - loose.left), abs(loose.top - loose.bottom)
-        if raw.FPDFText_HasUnicodeMapError(text, i) == 1:
+        if code in PRIVATE:
             code = UNKNOWN
         direction = m.a * size, m.b * size
         piece_number = float(at % (1 << 50))
-        self._values.extend((code, x.value, y.value, *direction, *edges, *advance, piece_number))
+        self._values.extend((code, x.value, y.value, *direction, *edges, *advance, piece_number, sure))

@@ -13,14 +13,16 @@ from curvefit.records import Finding, Word
 __all__ = ["words_of"]
 
 Array = NDArray[np.float64]
-UNKNOWN = "�"
+UNKNOWN = "\ufffd"
+UNSURE = 0.9  #: score of letters that follow from the customary code of a font that tells none
 RAISED = str.maketrans("0123456789-−+n", "⁰¹²³⁴⁵⁶⁷⁸⁹⁻⁻⁺ⁿ")
 LIGATURES = str.maketrans({"ﬀ": "ff", "ﬁ": "fi", "ﬂ": "fl", "ﬃ": "ffi", "ﬄ": "ffl"})
 NOTHING = "\u00ad\u200b\u200c\u200d\ufeff"
 
 # lengths in em (the size of the type)
 BLANK = 0.15  #: a gap that stands for a blank
-APART = 0.9  #: a gap that no one text has
+APART = 0.55  #: a gap between texts that are set one by one
+WIDE = 1.8  #: a gap that no one text has
 NUMBERS = 0.4  #: the same between two digits set apart
 BASELINE = 0.12  #: how far apart two characters of one line may stand
 SMALL = 0.86  #: a raised or lowered character is at most this large
@@ -30,9 +32,10 @@ CAPITAL = 0.7  #: height that is taken for a line without tall letters
 class _Line:
     """Characters of one direction in that direction's own frame: u along, v up, all (n,) px."""
 
-    def __init__(self, codes: Array, u: Array, v: Array, em: Array, extent: Array, piece: Array):
-        self.text = [chr(int(c)) for c in codes]
-        self.u, self.v, self.em, self.piece = u, v, em, piece
+    def __init__(self, rows: Array, place: Array, em: Array, extent: Array) -> None:
+        self.text = [chr(int(c)) for c in rows[:, 0]]
+        self.u, self.v = place.T
+        self.em, self.piece, self.sure = em, rows[:, 11], rows[:, 12] > 0
         self.end, self.low, self.high, self.start = extent.T
 
 
@@ -43,10 +46,10 @@ def words_of(data: bytes, to_page: Array) -> tuple[tuple[Word, ...], tuple[Findi
     ----------
     data : rows of float64, a character each: code point; x, y of its origin, its direction of
         writing × em, left, right, bottom, top of its ink, width and height of the upright box of
-        its advance, number of its text object; page points
+        its advance, number of its text object, 1 where the font tells its letters; page points
     to_page : array of shape (3, 3), page points → page px
     """
-    rows = np.frombuffer(data, float).reshape(-1, 12)
+    rows = np.frombuffer(data, float).reshape(-1, 13)
     rows = rows[np.hypot(rows[:, 3], rows[:, 4]) > 0.5]
     if not len(rows):
         return (), ()
@@ -54,7 +57,7 @@ def words_of(data: bytes, to_page: Array) -> tuple[tuple[Word, ...], tuple[Findi
     along = rows[:, 3:5] @ to_page[:2, :2].T
     em = np.hypot(*along.T)
     angle = np.degrees(np.arctan2(-along[:, 1], along[:, 0]))
-    rows, keep = rows, _first_of_each(rows, em, origin)
+    keep = _first_of_each(rows, em, origin)
     words: list[Word] = []
     unknown = 0
     for degrees in np.unique(np.round(angle[keep]) % 360):
@@ -81,10 +84,18 @@ def _said(unknown: int, known: int) -> tuple[Finding, ...]:
 
 
 def _first_of_each(rows: Array, em: Array, origin: Array) -> NDArray[np.intp]:
-    """Characters without those printed again at the same place (a halo, a false bold)."""
+    """Characters without those printed again at the same place (a halo, a false bold).
+
+    Letters of one text object may share a place: a ligature comes as its letters.
+    """
     place = np.round(origin / (0.2 * em[:, None]))
-    _, first = np.unique(np.c_[rows[:, 0], place], axis=0, return_index=True)
-    return np.sort(first)
+    seen: dict[tuple[float, ...], float] = {}
+    keep = [
+        i
+        for i, (code, x, y, piece) in enumerate(np.c_[rows[:, 0], place, rows[:, 11]])
+        if seen.setdefault((code, x, y), piece) == piece
+    ]
+    return np.array(keep, np.intp)
 
 
 def _lines(rows: Array, origin: Array, em: Array, degrees: float, to_page: Array) -> Iterator[Word]:
@@ -93,11 +104,12 @@ def _lines(rows: Array, origin: Array, em: Array, degrees: float, to_page: Array
     frame = np.array([[cos, -sin], [-sin, -cos]])  # page px → (along, up)
     place = origin @ frame.T
     extent = _extent(rows, place, em, degrees, frame, to_page)
-    line = _Line(rows[:, 0], place[:, 0], place[:, 1], em, extent, rows[:, 11])
+    line = _Line(rows, place, em, extent)
     for group in _joined(line):
         text = _text(line, group)
         if text:
-            yield Word(text, _box(line, group) @ np.linalg.inv(frame).T)
+            score = 1.0 if line.sure[group].all() else UNSURE
+            yield Word(text, _box(line, group) @ np.linalg.inv(frame).T, score)
 
 
 def _extent(
@@ -144,28 +156,40 @@ def _levels(line: _Line) -> Iterator[list[int]]:
     yield level
 
 
-def _split(line: _Line, level: list[int]) -> Iterator[list[int]]:
-    """A level cut where wide blanks stand."""
-    level = sorted(level, key=lambda i: line.u[i])
-    group = level[:1]
-    for i in level[1:]:
-        if line.text[i].isspace():  # counts where it stands between two letters only
-            group.append(i)
-            continue
-        letters = [j for j in group if not line.text[j].isspace()]
-        if letters and _apart(line, letters[-1], i):
-            yield group
-            group = []
-        group.append(i)
-    yield group
+def _split(line: _Line, level: list[int]) -> list[list[int]]:
+    """A level cut where wide blanks stand, and into texts that lie over each other.
+
+    Characters that follow each other in the file belong together before any others do.
+    """
+    runs: list[list[int]] = []
+    for i in sorted(level):
+        if runs and _misfit(line, runs[-1], i) < np.inf:
+            runs[-1].append(i)
+        else:
+            runs.append([i])
+    groups: list[list[int]] = []
+    for run in sorted(runs, key=lambda r: line.u[r[0]]):
+        fits = [(_misfit(line, g, run[0]), k) for k, g in enumerate(groups[-8:])]
+        misfit, k = min(fits, default=(np.inf, 0))
+        if misfit < np.inf:
+            groups[-8:][k] += run
+        else:
+            groups.append(run)
+    return groups
 
 
-def _apart(line: _Line, left: int, right: int) -> bool:
-    gap = (line.u[right] - line.end[left]) / line.em[left]
-    if line.piece[left] == line.piece[right]:
-        return bool(gap > 2 * APART)
-    digits = line.text[left].isdigit() and line.text[right].isdigit()
-    return bool(gap > (NUMBERS if digits else APART) or gap < -0.5)
+def _misfit(line: _Line, group: list[int], i: int) -> float:
+    """How badly a character continues a text, em; inf where it does not."""
+    last = group[-1]
+    gap = (line.u[i] - line.end[last]) / line.em[last]
+    same = line.piece[last] == line.piece[i]
+    if same and line.u[i] == line.u[last] and line.v[i] == line.v[last]:
+        return 0.0  # the letters of a ligature
+    digits = line.text[last].isdigit() and line.text[i].isdigit()
+    most = WIDE if same else NUMBERS if digits else APART
+    if gap > most or gap < -0.3:
+        return float(np.inf)
+    return float(abs(gap) + (0.0 if same else 0.1))
 
 
 def _with_raised(line: _Line, groups: list[list[int]]) -> list[list[int]]:
