@@ -8,14 +8,50 @@ import numpy as np
 from numpy.typing import NDArray
 
 from curvefit.geometry import arc_length
-from curvefit.trace.centre import Line
+from curvefit.trace.centre import Line, centred, trimmed
+from curvefit.trace.ink import Layer
 
-__all__ = ["extended", "smoothest", "supported"]
+__all__ = ["settled"]
 
 Array = NDArray[np.float64]
 
 
-def extended(xy: Array, by: float, memory: float) -> Array:
+def settled(layer: Layer, line: Line, longest: float, kinked: bool = False) -> Line | None:
+    """The line between its true ends: carried on as long as there is ink of its kind.
+
+    Parameters
+    ----------
+    longest : how far the line may be carried on over one gap [px].
+    kinked : whether sharp turns are allowed.
+    """
+    for _ in range(4):
+        gap = _usual_gap(line)
+        reach = min(max(24.0 + 3 * line.width, 1.7 * gap + 8), longest)
+        memory = max(60.0, 3.0 * gap)
+        rough = _extended(line.xy, reach, memory)
+        longer = centred(layer.lines, layer.known, rough, line.width, slack=1.5)
+        if not kinked:
+            longer = trimmed(longer, *_smoothest(longer))
+        first, last = _supported(longer)
+        if last - first < 12:
+            return None
+        start, stop = line.xy[0], line.xy[-1]
+        line = trimmed(longer, first, last)
+        grown = np.hypot(*(line.xy[0] - start)), np.hypot(*(line.xy[-1] - stop))
+        if max(grown) < 0.4 * reach:
+            break
+    return line
+
+
+def _usual_gap(line: Line) -> float:
+    """A long but not unusual gap between stretches of clean ink [px]."""
+    edges = np.flatnonzero(np.diff(np.r_[0, line.good.astype(int), 0]))
+    gaps = edges[2::2] - edges[1:-1:2]
+    gaps = gaps[gaps > 2]
+    return float(np.quantile(gaps, 0.8)) if len(gaps) > 2 else 0.0
+
+
+def _extended(xy: Array, by: float, memory: float) -> Array:
     """The polyline carried on at both ends by a circle of its last `memory` px, `by` px far."""
     return np.concatenate([_carry(xy[::-1], by, memory)[::-1], xy, _carry(xy, by, memory)])
 
@@ -38,7 +74,7 @@ def _carry(xy: Array, by: float, memory: float) -> Array:
     return out
 
 
-def supported(line: Line) -> tuple[int, int]:
+def _supported(line: Line) -> tuple[int, int]:
     """First and last index of the stretch that carries the line.
 
     Notes
@@ -69,7 +105,7 @@ def supported(line: Line) -> tuple[int, int]:
     return first + int(shown[0]), first + int(shown[-1])
 
 
-def smoothest(line: Line, sharp: float = 0.4) -> tuple[int, int]:
+def _smoothest(line: Line, sharp: float = 0.4) -> tuple[int, int]:
     """First and last index of the longest stretch without a kink.
 
     Where the direction of some strokes' length before a place and after it differ by more than

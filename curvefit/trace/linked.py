@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from curvefit.geometry import arc_length, resample
 from curvefit.records import Panel
 from curvefit.trace.centre import Line, centred, trimmed, width_along
-from curvefit.trace.ends import extended, supported
+from curvefit.trace.ends import settled
 from curvefit.trace.fragments import pieces
 from curvefit.trace.ink import Layer
 from curvefit.trace.links import Chain, chains
@@ -78,13 +78,8 @@ def _refined(layer: Layer, chain: Chain, width: float) -> Loose | None:
     line = centred(layer.lines, layer.known, chain.xy, own)
     if not _smooth(line):
         return None
-    longer = centred(
-        layer.lines, layer.known, extended(line.xy, 30 + 3 * own, 50.0), own, slack=1.5
-    )
-    first, last = supported(longer)
-    if last - first < 12:
-        return None
-    return Loose(trimmed(longer, first, last), False)
+    ended = settled(layer, line, 0.06 * max(layer.ink.shape), kinked=True)
+    return None if ended is None else Loose(ended, False)
 
 
 def _refined_loop(layer: Layer, chain: Chain, own: float) -> Loose | None:

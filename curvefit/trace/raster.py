@@ -9,18 +9,19 @@ from numpy.typing import NDArray
 
 from curvefit.geometry import resample
 from curvefit.records import Panel
-from curvefit.trace.centre import Line, centred, trimmed, width_along
-from curvefit.trace.ends import extended, smoothest, supported
+from curvefit.trace.centre import Line, centred, width_along
+from curvefit.trace.ends import settled
 from curvefit.trace.grid import Inked, without_lines
 from curvefit.trace.ink import MARGIN, Flat, Layer, hues, straightened, stroke_width
 from curvefit.trace.linked import linked_lines, without
 from curvefit.trace.sift import is_frame, without_doubles
-from curvefit.trace.text import lettering
+from curvefit.trace.text import lettering, markers, spread
 from curvefit.trace.track import Track, Tracking, across, best_track, peel
 
 __all__ = ["Found", "Settings", "lines_of"]
 
 Image = NDArray[np.float32]
+Mask = NDArray[np.bool_]
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,6 +51,7 @@ def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
     inked = without_lines(flat.dark, MARGIN)
     width = stroke_width(inked.ink, 0.02 * panel.warp.size[0])
     letters = lettering(panel, inked.ink, width)
+    blots = markers(inked.ink, width)
     least = 0.6 * tolerances.shortest * panel.warp.size[0]
 
     def frame(line: Line) -> bool:
@@ -57,8 +59,10 @@ def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
 
     found: list[Found] = []
     for member, colour in hues(flat, inked.ink, width):
-        layer = _layer(flat, inked, member, letters)
-        lines = [x for x in _follow(layer, width, tolerances) if not frame(x)]
+        layer = _layer(flat, inked, member, letters, blots)
+        lines = [
+            x for x in _follow(layer, width, tolerances) if not frame(x) and _convincing(x, least)
+        ]
         lines = [lines[i] for i in without_doubles(lines, least)]
         found += [Found(line, colour) for line in lines]
         shortest = tolerances.loose * panel.warp.size[0]
@@ -76,13 +80,14 @@ def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
     return [found[i] for i in kept]
 
 
-def _layer(flat: Flat, inked: Inked, member: Image, letters: NDArray[np.bool_]) -> Layer:
-    """One ink alone: the others are neither ink nor blank, and nor are letters."""
+def _layer(flat: Flat, inked: Inked, member: Image, letters: Mask, blots: Mask) -> Layer:
+    """One ink alone: the others are neither ink nor blank, nor are letters and markers."""
     own = inked.ink * member
     other = inked.ink * (1.0 - member)
     known = inked.known * np.clip(1.0 - 1.5 * other, 0, 1)
-    known = np.where(letters, 0.3 * known, known).astype(np.float32)
-    lines = np.where(letters, 0.0, own).astype(np.float32)
+    known = np.where(spread(letters), 0.3 * known, known)
+    known = np.where(blots, 0.0, known).astype(np.float32)
+    lines = np.where(letters | blots, 0.0, own).astype(np.float32)
     return Layer(own.astype(np.float32), lines, known)
 
 
@@ -125,10 +130,9 @@ def _refined(
         own = width
     own = float(np.clip(own, 0.4 * width, 2.5 * width))
     line = centred(layer.lines, layer.known, rough, own)
-    reach = 24.0 + 3 * own
-    longer = centred(layer.lines, layer.known, extended(line.xy, reach, 60.0), own, slack=1.5)
-    longer = trimmed(longer, *smoothest(longer))
-    first, last = supported(longer)
-    if last - first < 12:
-        return None, own
-    return trimmed(longer, first, last), own
+    return settled(layer, line, 0.08 * layer.ink.shape[1]), own
+
+
+def _convincing(line: Line, least: float) -> bool:
+    """Whether there is enough clean ink, on a smooth line: letters in a row show neither."""
+    return bool(line.good.sum() >= least and line.scatter < 0.15 * line.width + 0.25)

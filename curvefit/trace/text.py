@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 from curvefit.records import Panel
 from curvefit.trace.ink import MARGIN
 
-__all__ = ["lettering"]
+__all__ = ["lettering", "markers", "spread"]
 
 Image = NDArray[np.float32]
 
@@ -68,3 +68,55 @@ def _within(mask: NDArray[np.uint8], labels: NDArray[np.int32], count: int) -> N
     area = np.bincount(labels.ravel(), minlength=count)
     inside = np.bincount(labels.ravel(), weights=mask.ravel(), minlength=count)
     return np.asarray(inside / np.maximum(area, 1))
+
+
+def spread(letters: NDArray[np.bool_]) -> NDArray[np.bool_]:
+    """The letters with the space between them: the area of each word."""
+    import cv2
+
+    mask = letters.astype(np.uint8)
+    count, _, stats, _ = cv2.connectedComponentsWithStats(mask, connectivity=8)
+    if count < 2:
+        return letters
+    height = float(np.quantile(stats[1:, cv2.CC_STAT_HEIGHT], 0.7))
+    size = (max(int(1.1 * height), 3), max(int(0.5 * height), 3))
+    return np.asarray(cv2.morphologyEx(mask, cv2.MORPH_CLOSE, np.ones(size[::-1])) > 0)
+
+
+def markers(ink: Image, width: float) -> NDArray[np.bool_]:
+    """(rows, cols) mask of test points on the lines: filled or hollow, thicker than strokes.
+
+    Notes
+    -----
+    Small round holes are filled; what survives an opening by a disc 2.2 strokes wide and is as
+    tall as it is broad is a marker. Where lines run together the blot is long, and stays.
+    """
+    import cv2
+
+    mask = (ink > 0.4).astype(np.uint8)
+    mask = _holes_filled(mask, width)
+    size = round(2.2 * width + 1) | 1
+    disc = cv2.getStructuringElement(cv2.MORPH_ELLIPSE, (size, size))
+    blots = cv2.morphologyEx(mask, cv2.MORPH_OPEN, disc)
+    _, labels, stats, _ = cv2.connectedComponentsWithStats(blots, connectivity=8)
+    w, h = stats[:, cv2.CC_STAT_WIDTH], stats[:, cv2.CC_STAT_HEIGHT]
+    area = stats[:, cv2.CC_STAT_AREA]
+    long, short = np.maximum(w, h), np.minimum(w, h)
+    round_ones = (long < 1.5 * short) & (long < 9 * width + 6) & (area > 0.6 * w * h)
+    round_ones[0] = False
+    if not round_ones.any():
+        return np.zeros(ink.shape, bool)
+    grown = cv2.dilate(round_ones[labels].astype(np.uint8), np.ones((5, 5)))
+    return np.asarray(grown > 0)
+
+
+def _holes_filled(mask: NDArray[np.uint8], width: float) -> NDArray[np.uint8]:
+    import cv2
+
+    _, labels, stats, _ = cv2.connectedComponentsWithStats(1 - mask, connectivity=4)
+    w, h = stats[:, cv2.CC_STAT_WIDTH], stats[:, cv2.CC_STAT_HEIGHT]
+    area = stats[:, cv2.CC_STAT_AREA]
+    long, short = np.maximum(w, h), np.minimum(w, h)
+    small = (long < 6 * width + 6) & (long < 1.7 * short + 2) & (area > 0.55 * w * h)
+    small[labels[0, 0]] = False
+    return np.asarray(mask | small[labels].astype(np.uint8))
