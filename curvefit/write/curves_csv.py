@@ -132,10 +132,7 @@ def _fitted(out: Outgoing, curve: CurveOut, fit: FitOut) -> Iterator[list[str]]:
 
 def _between(fit: FitOut, grid: Any, column: Any) -> Any:
     """A band column on another flow grid: the equation itself, the band's edges by their offset."""
-    if fit.coefficients is None:
-        return np.interp(grid, fit.flow, column)
-    centre = np.polynomial.polynomial.polyval(grid, fit.coefficients)
-    return centre + np.interp(grid, fit.flow, column - fit.value)
+    return fit.at(grid) + np.interp(grid, fit.flow, column - fit.value)
 
 
 def _sigmas(confidence: float) -> float:

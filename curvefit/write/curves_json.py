@@ -52,6 +52,12 @@ def equation(fit: FitOut) -> str:
         terms = ["c0", "c1 Q"]
         terms += [f"c{k} Q{str(k).translate(_POWERS)}" for k in range(2, len(fit.coefficients))]
         return f"{symbol} = " + " + ".join(terms[: len(fit.coefficients)])
+    if "H0" in fit.parameters:
+        return f"{symbol} = H0 − a Qⁿ"
+    if "n" in fit.parameters:
+        return f"{symbol} = c0 + c1 Qⁿ"
+    if fit.knots is not None:
+        return f"{symbol} = monotone cubic through the knots (Q, {symbol})"
     return ""
 
 
@@ -226,6 +232,7 @@ def _fit(out: FitOut) -> dict[str, Any]:
         "covariance": None
         if out.covariance is None
         else [[float(v) for v in row] for row in out.covariance],
+        "knots": None if out.knots is None else [_numbers(r, 12) for r in out.knots],
         "confidence": _number(fit.band.confidence),
         "residual_rms": _number(out.residual_rms, _U_DIGITS),
         "effective_points": _number(fit.effective_points, _U_DIGITS),

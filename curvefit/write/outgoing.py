@@ -11,9 +11,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from curvefit.models import evaluate, monotone_cubic, power, rescale, rescale_covariance
 from curvefit.records import Curve, Finding, Fit, Pump, Reading, flag_names
 from curvefit.units import Unit
 from curvefit.write.out_units import OutUnits, choose_units, density_finding, out_units
+from curvefit.write.rescaled import rescaled_parameters
 
 __all__ = ["CurveOut", "FitOut", "Outgoing", "outgoing"]
 
@@ -66,8 +68,21 @@ class FitOut:
     coefficients: Array | None
     covariance: Array | None
     parameters: dict[str, float]
+    knots: Array | None
     flow_range: tuple[float, float]
     residual_rms: float
+
+    def at(self, flow: Array) -> Array:
+        """Values of the equation at flows in its range; the band's centre where it has none."""
+        if self.coefficients is not None:
+            return evaluate(self.coefficients, flow)
+        if self.fit.family == "power" and len(self.parameters) == 3:
+            constant, factor, n = self.parameters.values()
+            sign = -1.0 if "H0" in self.parameters else 1.0
+            return power(flow, constant, sign * factor, n)
+        if self.knots is not None:
+            return monotone_cubic(self.knots[:, 0], self.knots[:, 1], flow)
+        return np.interp(flow, self.flow, self.value)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -175,12 +190,18 @@ def _fit_out(fit: Fit, chosen: Mapping[str, Unit], pumps: Mapping[str, Pump]) ->
     band = fit.band
     nothing = np.full(len(band.flow_si), np.nan)
     low, high = (nothing if a is None else units.values(a) for a in (band.low_si, band.high_si))
-    coefficients, covariance = fit.coefficients, fit.covariance
+    coefficients, covariance, parameters = fit.coefficients, fit.covariance, fit.parameters
     if coefficients is not None:
-        scale = units.flow_si ** np.arange(len(coefficients)) / units.value_si
-        coefficients = coefficients * scale
-        if covariance is not None and covariance.shape == (len(scale), len(scale)):
-            covariance = covariance * np.outer(scale, scale)
+        coefficients = rescale(coefficients, units.flow_si, units.value_si)
+        if covariance is not None:
+            covariance = rescale_covariance(covariance, units.flow_si, units.value_si)
+    else:
+        parameters, covariance = rescaled_parameters(
+            parameters, covariance, units.flow_si, units.value_si
+        )
+    knots = fit.knots_si
+    if knots is not None:
+        knots = np.c_[units.flows(knots[:, 0]), units.values(knots[:, 1])]
     low_flow, high_flow = fit.flow_range_si
     return FitOut(
         fit,
@@ -191,7 +212,8 @@ def _fit_out(fit: Fit, chosen: Mapping[str, Unit], pumps: Mapping[str, Pump]) ->
         high,
         coefficients,
         covariance,
-        dict(fit.parameters),
+        dict(parameters),
+        knots,
         (low_flow / units.flow_si, high_flow / units.flow_si),
         fit.residual_rms_si / units.value_si,
     )

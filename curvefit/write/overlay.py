@@ -390,7 +390,8 @@ def _with_key(image: Any, reading: Reading, writing: _Writing) -> Any:
         "name with ?: see the findings",
     )
     size, font = writing.size, writing.small
-    rows, row = [], ""
+    rows: list[str] = []
+    row = ""
     for text in texts:
         longer = f"{row}   ·   {text}" if row else text
         if row and writing.draw.textlength(longer, font=font) > image.width - 2 * size:
