@@ -6,7 +6,7 @@ from collections.abc import Iterable
 from typing import TYPE_CHECKING
 
 from curvefit.fit.choice import Choice, Settings
-from curvefit.records import Curve, Fit
+from curvefit.records import Curve, Fit, Pump
 
 if TYPE_CHECKING:
     import numpy as np
@@ -19,13 +19,20 @@ def fit(
     choice: Choice | None = None,
     settings: Settings | None = None,
     rng: np.random.Generator | None = None,
+    pumps: Iterable[Pump] = (),
 ) -> tuple[Fit, ...]:
     """The fits of all curves that are functions of flow, in their order; iso lines are skipped.
+
+    `derived` holds best efficiency point, shut-off head and specific speeds where the curves and
+    `pumps` (speed, stages, suction sides) tell them.
 
     A curve with too few points for an equation gets its points back as a piecewise fit without a
     band and with a finding that says so.
     """
-    return tuple(fit_curve(c, choice, settings, rng) for c in curves if not c.iso)
+    from curvefit.fit.derived import derive
+
+    fits = tuple(fit_curve(c, choice, settings, rng) for c in curves if not c.iso)
+    return derive(fits, pumps)
 
 
 def fit_curve(

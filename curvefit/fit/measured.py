@@ -11,11 +11,12 @@ from curvefit.errors import ChartError, InputError
 from curvefit.fit.average import held_terms
 from curvefit.fit.bands import multiplier
 from curvefit.fit.choice import Choice, Settings
+from curvefit.fit.equations import power_names
 from curvefit.fit.power import fit_power
 from curvefit.fit.quantiles import normal_two_sided
 from curvefit.fit.said import finding, where
 from curvefit.fit.shape import breaks_shape
-from curvefit.fit.traced import band_grid, outside_finding, power_names
+from curvefit.fit.traced import band_grid, outside_finding
 from curvefit.models import (
     evaluate,
     legendre,
@@ -262,7 +263,7 @@ def _factors(rows: Array, variance: float | None, freedom: int) -> Array | None:
     if variance is None:
         return None
     widen = multiplier("pointwise", 0.95, 0, freedom) / normal_two_sided(0.95)
-    return np.sqrt(variance) * widen * rows
+    return np.asarray(np.sqrt(variance) * widen * rows)
 
 
 def _no_band(curve: Curve, points: int, terms: int) -> Finding:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -70,7 +71,9 @@ def fit_power(
     for _ in range(50):
         gradient = white(power_gradient(x, *p))
         step, *_ = np.linalg.lstsq(gradient, target - white(power(x, *p)), rcond=None)
-        p, squares, moved = _damped(p, step, squares, lambda q: target - white(power(x, *q)))
+        p, squares, moved = _damped(
+            p, np.asarray(step), squares, lambda q: target - white(power(x, *q))
+        )
         if moved < 1e-12:
             settled = True
             break
@@ -85,11 +88,16 @@ def fit_power(
     turn[1, 2] = -si * np.log(scale)
     inside = exponents[0] < exponent < exponents[1]
     return PowerFit(
-        np.array([constant, si, exponent]), turn @ cofactor @ turn.T, squares, settled and inside
+        np.array([constant, si, exponent]),
+        turn @ cofactor @ turn.T,
+        squares,
+        settled and bool(inside),
     )
 
 
-def _damped(p, step, squares, residual):  # type: ignore[no-untyped-def]
+def _damped(
+    p: Array, step: Array, squares: float, residual: Callable[[Array], Array]
+) -> tuple[Array, float, float]:
     """A Gauss–Newton step, halved until the sum of squares does not grow."""
     size = 1.0
     for _ in range(30):
