@@ -107,6 +107,9 @@ def _fit(curve, degree=3):
         residual_rms_si=float(np.std(y - np.polynomial.polynomial.polyval(x, c))),
         effective_points=30.0, candidates=(("polynomial 3", -310.2, ""),),
         reason="it predicts best",
+        derived={"bep": {"flow_si": float(grid[20]), "u_flow_si": 1e-5, "efficiency_si": 0.7,
+                         "u_efficiency_si": None},
+                 "specific_speed": {"nq": 31.0, "u_nq": 0.4}},
     )  # fmt: skip
 
 

@@ -51,6 +51,7 @@ def write(
     from curvefit.write.notes_toml import notes_toml
     from curvefit.write.outgoing import outgoing
     from curvefit.write.overlay import overlay, png
+    from curvefit.write.report import report
 
     out = outgoing(reading, units, points)
     files = {f"{stem}.curves.json": json_text(curves_document(out)).encode()}
@@ -61,6 +62,7 @@ def write(
         files[f"{table}-metadata.json"] = csv_metadata(table, out).encode()
         picture = overlay(reading)
         files[f"{stem}.overlay.png"] = png(picture)
+        files[f"{stem}.report.html"] = report(out, picture).encode()
         files[notes] = notes_toml(reading, standing, str(Path(folder) / notes)).encode()
     return put_files(folder, files, inputs)
 

@@ -250,7 +250,7 @@ def _fit(out: FitOut) -> dict[str, Any]:
             "factors": _rows(fit.factors, units.value_si),
             "calibration": _rows(fit.calibration, units.value_si),
         },
-        "derived": {k: _derived(v, out) for k, v in fit.derived.items()},
+        "derived": {k: _derived(v) for k, v in out.derived.items()},
     }
 
 
@@ -258,8 +258,15 @@ def _rows(matrix: Any, unit_si: float) -> list[list[float | None]] | None:
     return None if matrix is None else [_numbers(row / unit_si, 7) for row in matrix]
 
 
-def _derived(numbers: dict[str, float | None], out: FitOut) -> dict[str, Any]:
-    return {k: _number(v) for k, v in numbers.items()}
+def _derived(numbers: dict[str, dict[str, Any]]) -> dict[str, Any]:
+    return {
+        name: {
+            "value": _number(m["value"]),
+            "unit": m["unit"],
+            "standard_uncertainty": _number(m["standard_uncertainty"], _U_DIGITS),
+        }
+        for name, m in numbers.items()
+    }
 
 
 def _finding(reading: Reading, finding: Finding) -> dict[str, Any]:

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,6 +15,7 @@ from numpy.typing import NDArray
 from curvefit.models import evaluate, monotone_cubic, power, rescale, rescale_covariance
 from curvefit.records import Curve, Finding, Fit, Pump, Reading, flag_names
 from curvefit.units import Unit
+from curvefit.write.derived import derived_out
 from curvefit.write.out_units import OutUnits, choose_units, density_finding, out_units
 from curvefit.write.rescaled import rescaled_parameters
 
@@ -71,6 +73,7 @@ class FitOut:
     knots: Array | None
     flow_range: tuple[float, float]
     residual_rms: float
+    derived: dict[str, dict[str, dict[str, Any]]]
 
     def at(self, flow: Array) -> Array:
         """Values of the equation at flows in its range; the band's centre where it has none."""
@@ -216,4 +219,9 @@ def _fit_out(fit: Fit, chosen: Mapping[str, Unit], pumps: Mapping[str, Pump]) ->
         knots,
         (low_flow / units.flow_si, high_flow / units.flow_si),
         fit.residual_rms_si / units.value_si,
+        derived_out(
+            fit.derived,
+            chosen,
+            {"flow": fit.curve.flow_unit, fit.curve.quantity: fit.curve.unit},
+        ),
     )

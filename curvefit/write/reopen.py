@@ -15,6 +15,7 @@ from curvefit.errors import InputError, Location, OpenError
 from curvefit.models import rescale, rescale_covariance
 from curvefit.records import FLAGS, QUANTITIES, Band, Curve, Finding, Fit, Pump
 from curvefit.units import to_si, unit
+from curvefit.write.derived import derived_back
 from curvefit.write.rescaled import rescaled_parameters
 
 __all__ = ["CurveSet", "reopen", "reopen_text"]
@@ -237,6 +238,7 @@ def _fit(row: Mapping[str, Any], curves: Mapping[str, Curve]) -> Fit:
         ),
         reason=row.get("reason", ""),
         knots_si=knots,
+        derived=derived_back(row["derived"]),
     )
 
 
