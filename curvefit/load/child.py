@@ -6,6 +6,7 @@ that the file needs, so that it starts soon and little can go wrong in it.
 
 from __future__ import annotations
 
+import contextlib
 import json
 import os
 import sys
@@ -20,10 +21,8 @@ def _limit(memory_bytes: int) -> None:
     except ImportError:
         return
     for which, most in ((resource.RLIMIT_AS, memory_bytes), (resource.RLIMIT_CORE, 0)):
-        try:
+        with contextlib.suppress(OSError, ValueError):  # a tighter limit of the system's own holds
             resource.setrlimit(which, (most, most))
-        except (OSError, ValueError):
-            pass  # a tighter limit of the system's own already holds
 
 
 def _answer(out: BinaryIO, header: dict[str, Any], arrays: Sequence[bytes] = ()) -> None:

@@ -61,7 +61,7 @@ def _painted(
     if style["stroke"] is not None:
         width = style["width"] * scale or HAIRLINE
         dash = tuple(v * scale for v in style["dash"])
-        if not any(dash) or dash[1::2] and not any(dash[1::2]):
+        if not any(dash) or (dash[1::2] and not any(dash[1::2])):
             dash = ()
         yield Stroke(outline, width, tuple(style["stroke"]), dash, False, number)
 
@@ -82,7 +82,7 @@ def _subpaths(xy: Array, codes: NDArray[np.uint8]) -> Iterator[tuple[Array, bool
         part = codes[first:stop]
         line = xy[first:stop]
         if ((part & 3) == BEZIER).any():
-            line = _smooth(line, part & 3)
+            line = _smooth(line, part)
         yield line, bool((part & CLOSE).any())
 
 
@@ -91,7 +91,7 @@ def _smooth(points: Array, codes: NDArray[np.uint8]) -> Array:
     pieces = [points[:1]]
     i = 1
     while i < len(points):
-        if codes[i] == BEZIER and i + 2 < len(points):
+        if codes[i] & 3 == BEZIER and i + 2 < len(points):
             pieces.append(flattened(np.r_[pieces[-1][-1:], points[i : i + 3]])[1:])
             i += 3
         else:

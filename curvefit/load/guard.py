@@ -6,6 +6,7 @@ JSON and the raw arrays that it announces. Nothing that it sends is ever execute
 
 from __future__ import annotations
 
+import contextlib
 import json
 import subprocess
 import sys
@@ -58,10 +59,8 @@ class Guard:
         self._child.wait()
         for pipe in (self._child.stdin, self._child.stdout):
             if pipe is not None:
-                try:
+                with contextlib.suppress(OSError):  # bytes for a child that is gone
                     pipe.close()
-                except OSError:
-                    pass  # bytes for a child that is gone
 
     def open(self) -> dict[str, Any]:
         """What the child says of the file as a whole: its number of pages."""

@@ -189,9 +189,7 @@ def _stored(view: _View, image: Any) -> Answer | None:
     k = kx / reduced
     size = max(round(view.width * k), 1), max(round(view.height * k), 1)
     seen = Image.frombuffer("RGB", size, view.pixels(k, size), "raw", "BGR", 0, 1)
-    area = tuple(
-        round(v / reduced) for v in (cut[0] - x0, cut[1] - y0, cut[2] - x0, cut[3] - y0)
-    )
+    area = tuple(round(v / reduced) for v in (cut[0] - x0, cut[1] - y0, cut[2] - x0, cut[3] - y0))
     seen = seen.crop(area)
     small = part.convert("RGB").resize(seen.size, Image.Resampling.BOX)
     difference = ImageStat.Stat(ImageChops.difference(seen, small)).mean

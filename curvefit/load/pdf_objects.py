@@ -63,7 +63,7 @@ class Picture:
         """Samples to the inch, the finer direction."""
         a, b, c, d, _, _ = self.matrix
         across, up = (a * a + b * b) ** 0.5, (c * c + d * d) ** 0.5
-        return 72.0 * max(self.size[0] / max(across, 1e-3), self.size[1] / max(up, 1e-3))
+        return 72.0 * float(max(self.size[0] / max(across, 1e-3), self.size[1] / max(up, 1e-3)))
 
     def samples(self) -> Any:
         """The samples as a Pillow image in mode L or RGB; None where they are not plain."""

@@ -18,10 +18,7 @@ FIELDS = (
     *("wide", "high", "piece", "sure"),
 )
 # codes of the ligatures in the TeX text encodings OT1 and T1, where a font has no map of its own
-UNMAPPED = {
-    **{11: 0xFB00, 12: 0xFB01, 13: 0xFB02, 14: 0xFB03, 15: 0xFB04},
-    **{27: 0xFB00, 28: 0xFB01, 29: 0xFB02, 30: 0xFB03, 31: 0xFB04},
-}
+UNMAPPED = {first + k: 0xFB00 + k for first in (11, 27) for k in range(5)}
 Box = tuple[float, float, float, float]
 HIDDEN = 3, 7  # render modes: neither filled nor stroked
 UNKNOWN = 0xFFFD  # nothing tells which letter this shape is
@@ -85,4 +82,6 @@ class Text:
             code = UNKNOWN
         direction = m.a * size, m.b * size
         piece_number = float(at % (1 << 50))
-        self._values.extend((code, x.value, y.value, *direction, *edges, *advance, piece_number, sure))
+        self._values.extend(
+            (code, x.value, y.value, *direction, *edges, *advance, piece_number, sure)
+        )

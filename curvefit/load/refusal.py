@@ -5,7 +5,7 @@ from __future__ import annotations
 __all__ = ["Refusal"]
 
 
-class Refusal(Exception):  # noqa: N818 - not a defect: an answer
+class Refusal(Exception):
     """`kind` is "open" or "limit", then what was found and a remedy."""
 
     def __init__(self, kind: str, what: str, remedy: str) -> None:

@@ -88,7 +88,7 @@ def _first_of_each(rows: Array, em: Array, origin: Array) -> NDArray[np.intp]:
 
     Letters of one text object may share a place: a ligature comes as its letters.
     """
-    place = np.round(origin / (0.2 * em[:, None]))
+    place = np.round(origin / (0.04 * em[:, None]))
     seen: dict[tuple[float, ...], float] = {}
     keep = [
         i
@@ -117,20 +117,20 @@ def _extent(
 ) -> Array:
     """(n, 4) end of the advance, lowest and highest ink, begin of the ink, in the line's frame."""
     scale = float(np.sqrt(abs(np.linalg.det(to_page[:2, :2]))))
+    c, s = np.abs(np.median(rows[:, 3:5], 0)) / np.hypot(*np.median(rows[:, 3:5], 0))
     if abs((degrees + 45) % 90 - 45) > 2:  # not along an edge of the page: boxes say little
-        c, s = abs(np.cos(np.radians(degrees))), abs(np.sin(np.radians(degrees)))
         wide, high = rows[:, 9] * scale, rows[:, 10] * scale
         lean = c * c - s * s
         advance = (wide * c - high * s) / lean if abs(lean) > 0.2 else np.full(len(rows), np.nan)
         fits = (advance > 0.1 * em) & (advance < 1.3 * em)
         advance = np.where(fits, advance, 0.55 * em)
         u, v = place.T
-        return np.c_[u + advance, v - 0.02 * em, v + CAPITAL * em, u]
+        return np.column_stack([u + advance, v - 0.02 * em, v + CAPITAL * em, u])
     corners = [project(to_page, rows[:, [i, j]]) @ frame.T for i in (5, 6) for j in (7, 8)]
     ink = np.stack(corners)
-    sideways = round(degrees / 90) % 2 == 1
-    advance = rows[:, 10 if sideways else 9] * scale
-    return np.c_[place[:, 0] + advance, ink[:, :, 1].min(0), ink[:, :, 1].max(0), ink[:, :, 0].min(0)]
+    advance = place[:, 0] + rows[:, 10 if s > c else 9] * scale
+    low, high = ink[:, :, 1].min(0), ink[:, :, 1].max(0)
+    return np.column_stack([advance, low, high, ink[:, :, 0].min(0)])
 
 
 def _joined(line: _Line) -> list[list[int]]:
