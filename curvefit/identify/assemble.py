@@ -99,7 +99,7 @@ def _lines_of(
             made.append(_iso_line(trace, panel, flow, head, level))
             if level.label is not None:
                 used.add(id(level.label.word))
-    seen = {id(x.trace) for x in made}
+    seen = {id(x.trace) for x in made} | {id(c.trace) for c in choices}
     findings += [
         doubts.no_axis(t, panel) for t in traces if id(t) not in seen and (flow is None or not axes)
     ]

@@ -24,7 +24,7 @@ class Settings:
     """
 
     flow: float = 0.015
-    law: float = 0.015
+    law: float = 0.02
 
 
 def member(line: Line) -> Member:

@@ -67,7 +67,15 @@ def speed_in(text: str) -> float | None:
     if match is None:
         return None
     rpm = float(re.sub(r"\D", "", match[1]))
+    if re.search(r"\dl/min", text.replace(" ", "")) and not _of_a_motor(rpm):
+        return None  # litres
     return rpm / 60 if 100 <= rpm <= 30000 else None
+
+
+def _of_a_motor(rpm: float) -> bool:
+    """Whether an induction motor on 50 or 60 Hz runs at this speed: up to 8 % below synchronous."""
+    synchronous = [120 * f / p for f in (50, 60) for p in (2, 4, 6, 8, 10, 12)]
+    return any(0.92 * n <= rpm <= n for n in synchronous)
 
 
 def read_pump(words: Iterable[Word], on_curves: frozenset[int] = frozenset()) -> Pump:

@@ -85,8 +85,8 @@ def settle(
 
     Notes
     -----
-    The least total cost is sought line by line until nothing changes (iterated conditional
-    modes); ties count as not known.
+    The change of one level that saves most is made until none saves anything; a level that
+    another one could replace at no cost counts as not known.
     """
     settings = settings or Settings()
     known = [v for v in values if v is not None]
@@ -109,13 +109,15 @@ def settle(
             costs[value] = settings.off_series * off
         options.append(costs)
     chosen = list(values)
-    for _ in range(5):
-        before = list(chosen)
-        for i in _most_doubtful_first(chosen, texts, rows):
-            chosen[i] = _best(i, chosen, options[i], rows, settings)
-        if chosen == before:
+    for _ in range(2 * len(chosen)):
+        change = _best_change(chosen, options, rows, settings)
+        if change is None:
             break
-    return chosen
+        chosen[change[0]] = change[1]
+    return [
+        None if v is not None and _tied(i, chosen, options[i], rows, settings) else v
+        for i, v in enumerate(chosen)
+    ]
 
 
 def _on(value: float, step: float) -> bool:
@@ -126,36 +128,50 @@ def _disorder(values: Sequence[float | None], rows: Sequence[Sequence[int]]) -> 
     return sum(not unimodal([values[i] for i in row]) for row in rows)
 
 
-def _most_doubtful_first(
-    values: Sequence[float | None], texts: Sequence[str], rows: Sequence[Sequence[int]]
-) -> list[int]:
-    """Lines in the order in which doing without them mends most."""
+def _total(
+    i: int,
+    level: float | None,
+    values: Sequence[float | None],
+    costs: dict[float | None, float],
+    rows: Sequence[Sequence[int]],
+    settings: Settings,
+) -> float:
+    """Cost of one line having a level while the others stand."""
+    trial = [level if k == i else v for k, v in enumerate(values)]
+    return costs[level] + settings.disorder * _disorder(trial, rows)
 
-    def without(i: int) -> int:
-        return _disorder([None if k == i else v for k, v in enumerate(values)], rows)
 
-    return sorted(
-        range(len(values)), key=lambda i: (values[i] is not None, without(i), texts[i][-1:] == "%")
-    )
+def _best_change(
+    values: Sequence[float | None],
+    options: Sequence[dict[float | None, float]],
+    rows: Sequence[Sequence[int]],
+    settings: Settings,
+) -> tuple[int, float | None] | None:
+    """The one change of a level that saves most; None where none saves anything."""
+    best: tuple[float, int, float | None] | None = None
+    for i, costs in enumerate(options):
+        now = _total(i, values[i], values, costs, rows, settings)
+        for level in costs:
+            saved = now - _total(i, level, values, costs, rows, settings)
+            if saved > 1e-9 and (best is None or saved > best[0] + 1e-9):
+                best = saved, i, level
+    return None if best is None else (best[1], best[2])
 
 
-def _best(
+def _tied(
     i: int,
     values: Sequence[float | None],
     costs: dict[float | None, float],
     rows: Sequence[Sequence[int]],
     settings: Settings,
-) -> float | None:
-    """The cheapest level of one line while the others stand; None if two are equally cheap."""
-
-    def total(level: float | None) -> float:
-        trial = [level if k == i else v for k, v in enumerate(values)]
-        return costs[level] + settings.disorder * _disorder(trial, rows)
-
-    ranked = sorted(costs, key=total)
-    if len(ranked) > 1 and abs(total(ranked[0]) - total(ranked[1])) < 1e-9:
-        return None
-    return ranked[0]
+) -> bool:
+    """Whether another level would do for a line just as well."""
+    own = _total(i, values[i], values, costs, rows, settings)
+    return any(
+        abs(_total(i, level, values, costs, rows, settings) - own) < 1e-9
+        for level in costs
+        if level is not None and level != values[i]
+    )
 
 
 def _misread(text: str, level: float) -> bool:

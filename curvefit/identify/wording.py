@@ -226,24 +226,22 @@ def _diameters(clean: str, text: str) -> list[Meaning]:
         value = float(number[1].replace(",", "."))
         bare = 0.3 if value < 1000 else 0.9
         add(value, "mm", (0.0 if said else bare) + (0.6 if value < 60 else 0.0), said)
-    if not said:
-        found += _bent_diameters(clean, text)
+    found += _bent_diameters(body if said else clean, text, said)
     return found
 
 
-def _bent_diameters(clean: str, text: str) -> list[Meaning]:
+def _bent_diameters(clean: str, text: str, said: bool) -> list[Meaning]:
     """Readings of a diameter whose sign was taken for another character, or whose digits were."""
     found = []
     match = re.fullmatch(rf"{_LIKE_SIGN}\s?[=.:]?\s?(\d{{2,4}}(?:[.,]\d)?)(\s?mm)?", clean)
-    if match and not match[1].startswith("0"):
+    if match and not said and not match[1].startswith("0"):
         value = float(match[1].replace(",", "."))
         if 30 <= value <= 1500:
             found.append(Meaning("diameter", value / 1000, "mm", 0.5, False, text))
-    mended = re.sub(rf"^{_SIGN}", "", clean)[:8]
-    if re.search(r"\d", mended) and re.fullmatch(r"[\dOoQlI|SBZz]{2,5}", mended):
-        digits = mended.translate(_DIGITS)
-        if digits != mended:
-            for body, cost in ((digits, 0.7), (digits[1:], 0.8)):
+    if re.search(r"\d.*\d", clean) and re.fullmatch(r"[\dOoQlI|SBZz]{2,5}", clean):
+        digits = clean.translate(_DIGITS)
+        if digits != clean:
+            for body, cost in [(digits, 0.4)] if said else [(digits, 0.7), (digits[1:], 0.8)]:
                 if 2 <= len(body) <= 4 and not body.startswith("0") and 60 <= int(body) <= 1500:
                     found.append(Meaning("diameter", int(body) / 1000, "mm", cost, False, text))
     return found

@@ -1,0 +1,197 @@
+"""Impeller diameters, speeds and stages of the lines of a family, from labels good and bad."""
+
+import numpy as np
+import pytest
+from identify_scene import Scene, family
+
+from curvefit.identify.families import Member, order
+
+HEAD = ("head", "m", 0.0, 50.0)
+RATIOS = [1.0, 0.95, 0.9, 0.85]
+PRINTED = [210.0, 199.5, 189.0, 178.5]
+
+
+def heads(labels, ratios=RATIOS, **how):
+    scene = Scene()
+    family(scene.box(HEAD), labels, ratios, **how)
+    return scene.read()
+
+
+def diameters(curves):
+    return [None if c.diameter_si is None else round(c.diameter_si * 1000, 2) for c in curves]
+
+
+def warnings(findings):
+    return [f.code for f in findings if f.severity != "info"]
+
+
+@pytest.mark.parametrize("place", ["end", "start"])
+@pytest.mark.parametrize(
+    "labels",
+    [
+        ["Ø210", "Ø200", "Ø190", "Ø180"],
+        ["210 mm", "200 mm", "190 mm", "180 mm"],
+        ["D=210", "D=200", "D=190", "D=180"],
+        ["210", "200", "190", "180"],
+        ["⌀ 210", "⌀ 200", "⌀ 190", "⌀ 180"],
+        ["0210", "8200", "Ø190", "@180"],
+        ["0210", "0200", "0190", "0180"],
+        ["8210", "6200", "D190", "Q180"],
+        ["Ø21O", "Ø2OO", "ØI90", "Ø180"],
+    ],
+)
+def test_diameters_in_every_spelling(labels, place):
+    curves, _, findings = heads(labels, place=place)
+    assert diameters(curves) == [210, 200, 190, 180]
+    assert not warnings(findings)
+    assert curves[0].name == "head Ø210"
+
+
+def test_inches():
+    sizes = np.array([8.25, 7.875, 7.5, 7.0])
+    curves, _, findings = heads(['8 1/4"', '7 7/8"', '7 1/2"', '7"'], sizes / 8.25)
+    assert diameters(curves) == [209.55, 200.02, 190.5, 177.8]
+    assert {c.diameter_unit for c in curves} == {"[in_i]"}
+    assert not warnings(findings)
+
+
+@pytest.mark.parametrize(
+    ("labels", "values", "unit"),
+    [
+        (["2900 rpm", "2755 rpm", "2610 rpm", "2465 rpm"], [2900, 2755, 2610, 2465], "/min"),
+        (["50 Hz", "47.5 Hz", "45 Hz", "42.5 Hz"], [3000, 2850, 2700, 2550], "Hz"),
+        (["2900", "2755", "2610", "2465"], [2900, 2755, 2610, 2465], "/min"),
+    ],
+)
+def test_speeds(labels, values, unit):
+    curves, _, findings = heads(labels)
+    assert [round(c.speed_si * 60, 1) for c in curves] == values
+    assert {c.speed_unit for c in curves} == {unit}
+    assert diameters(curves) == [None] * 4
+    assert not warnings(findings)
+
+
+def test_shares_of_the_rated_speed():
+    scene = Scene()
+    box = scene.box(HEAD, title="n = 2900 rpm")
+    family(box, ["100 %", "95 %", "90 %", "85 %"], RATIOS)
+    curves, pumps, findings = scene.read()
+    assert [c.speed_ratio for c in curves] == pytest.approx([1.0, 0.95, 0.9, 0.85])
+    assert pumps[0].speed_si == pytest.approx(2900 / 60)
+    assert curves[1].speed_si == pytest.approx(0.95 * 2900 / 60)
+    assert not warnings(findings)
+
+
+def test_stages():
+    ratios = [1.0, np.sqrt(2 / 3), np.sqrt(1 / 3)]  # heads 3 : 2 : 1
+    scene = Scene()
+    box = scene.box(HEAD)
+    for label, r in zip(["3 stages", "2 stages", "1 stage"], ratios, strict=True):
+        box.line(lambda q, r=r: r**2 * (42 - 0.0009 * q**2), label=label)
+    curves, _, findings = scene.read()
+    assert [c.stages for c in curves] == [3, 2, 1]
+    assert not warnings(findings)
+
+
+def test_no_diameter_is_made_of_a_trim_letter():
+    curves, _, findings = heads(["A", "B", "C", "D"])
+    assert [c.label for c in curves] == ["A", "B", "C", "D"]
+    assert diameters(curves) == [None] * 4
+    assert curves[0].name == "head A"
+    assert not warnings(findings)
+
+
+def test_a_label_that_is_missing_leaves_its_line_without_a_name_and_says_so():
+    curves, _, findings = heads(["Ø210", "", "Ø190", "Ø180"])
+    assert diameters(curves) == [210, None, 190, 180]
+    assert warnings(findings) == ["curve.unlabelled"]
+
+
+def test_a_misread_digit_is_not_believed_in_silence():
+    for bad in ("Ø270", "Ø120", "Ø208"):
+        curves, _, findings = heads(["Ø210", bad, "Ø190", "Ø180"])
+        read = diameters(curves)
+        assert read[::2] == [210, 190]
+        assert read[1] != 200
+        assert warnings(findings)
+
+
+def test_two_lines_with_one_label_text_are_not_both_named():
+    curves, _, findings = heads(["Ø210", "Ø190", "Ø190", "Ø180"])
+    assert len({d for d in diameters(curves) if d}) == sum(d is not None for d in diameters(curves))
+    assert warnings(findings)
+
+
+def test_labels_in_order_beat_labels_nearest():
+    """Labels pushed half a line upwards, so that each is about as near to the line above."""
+    curves, _, _ = heads(["Ø210", "Ø200", "Ø190", "Ø180"], place="start", shift=(0, -18))
+    assert diameters(curves) == [210, 200, 190, 180]
+
+
+def test_bundles_take_crowded_labels_in_the_order_of_their_ends():
+    scene = Scene()
+    labels = ["Ø210", "Ø200", "Ø190"]
+    family(scene.box(HEAD), labels, RATIOS[:3])
+    family(
+        scene.box(("efficiency", "%", 0.0, 100.0)), labels, RATIOS[:3], "efficiency", place="start"
+    )
+    family(scene.box(("npsh_required", "m", 0.0, 10.0)), labels, RATIOS[:3], "npsh", place="start")
+    curves, _, findings = scene.read()
+    assert diameters(curves) == [210, 200, 190] * 3
+    assert not warnings(findings)
+
+
+def test_lines_without_labels_are_named_after_their_heads():
+    scene = Scene()
+    family(scene.box(HEAD), ["Ø210", "Ø200", "Ø190"], RATIOS[:3])
+    family(scene.box(("shaft_power", "kW", 0.0, 20.0)), ["", "", ""], RATIOS[2::-1], "power")
+    curves, _, findings = scene.read()
+    assert diameters(curves) == [210, 200, 190, 190, 200, 210]
+    assert all("diameter" in c.guessed for c in curves[3:])
+    assert {f.code for f in findings} == {"curve.named-by-twin"}
+    assert not warnings(findings)
+
+
+def test_one_bad_label_is_outvoted_by_the_other_panels():
+    scene = Scene()
+    family(scene.box(HEAD), ["Ø210", "Ø200", "Ø190"], RATIOS[:3])
+    family(
+        scene.box(("efficiency", "%", 0.0, 100.0)),
+        ["Ø210", "Ø200", "Ø190"],
+        RATIOS[:3],
+        "efficiency",
+    )
+    family(
+        scene.box(("npsh_required", "m", 0.0, 10.0)), ["Ø210", "Ø206", "Ø190"], RATIOS[:3], "npsh"
+    )
+    curves, _, findings = scene.read()
+    assert diameters(curves) == [210, 200, 190] * 3
+    assert not warnings(findings)
+
+
+def test_a_legend_names_lines_by_their_look():
+    scene = Scene()
+    inks = [(0.8, 0.1, 0.1), (0.1, 0.2, 0.8), (0.0, 0.5, 0.1)]
+    box = scene.box(HEAD)
+    for k, (ink, ratio) in enumerate(zip(inks, RATIOS[:3], strict=True)):
+        family(box, [""], [ratio], colour=ink)
+        row = 380 + 30 * k
+        scene.pixels[row + 99 : row + 102, 150:190] = np.rint(np.array(ink) * 255)
+        box.word(["Ø190", "Ø210", "Ø200"][k], 100, row)  # not in the order of the heads
+    curves, _, _ = scene.read()
+    assert diameters(curves) == [190, 210, 200]
+
+
+def test_a_lone_line_takes_a_diameter_only_from_a_label_that_says_so():
+    for label, expected in (("Ø210", 210), ("210 mm", 210), ("CM 210", None), ("210", None)):
+        curves, _, _ = heads([label], [1.0])
+        assert diameters(curves) == [expected]
+
+
+def test_order_of_lines_that_end_alike():
+    q = np.linspace(0, 1, 50)
+    big, small = 1.0 - 0.2 * q**2, 0.8 - 0.2 * q**2
+    members = [Member(None, q, small), Member(None, q, big)]
+    assert order(members, "head") == [1, 0]
+    rising = [Member(None, q, 1 + 2 * q**2), Member(None, q, 1 + q**2)]
+    assert order(rising, "npsh_required") == [1, 0]
