@@ -13,6 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from curvefit.models import evaluate, power
 from curvefit.records import Fit
 
 __all__ = ["Arrangement", "Line", "line_of_fit"]
@@ -89,7 +90,11 @@ def line_of_fit(fit: Fit) -> Line:
 
     def value(flow: Array) -> Array:
         if fit.coefficients is not None:
-            return np.asarray(np.polynomial.polynomial.polyval(flow, fit.coefficients))
+            return evaluate(fit.coefficients, flow)
+        if fit.family == "power":
+            constant, factor, exponent = fit.parameters.values()
+            sign = -1.0 if "a" in fit.parameters else 1.0
+            return power(flow, constant, sign * factor, exponent)
         return np.interp(flow, grid, fit.band.value_si)
 
     def on_grid(effect: Array) -> Callable[[Array], Array]:

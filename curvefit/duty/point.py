@@ -14,7 +14,7 @@ from curvefit.duty.machine import Arrangement, Line, line_of_fit
 from curvefit.duty.system import LossRow, System
 from curvefit.errors import InputError, Location
 from curvefit.records import DutyPoint, Finding, Fit, Interval
-from curvefit.units import G_N
+from curvefit.units import G_N, from_si, unit
 
 __all__ = ["Duty", "duty", "minimum_speed_ratio", "speed_for"]
 
@@ -31,6 +31,7 @@ class Duty:
     points : by rising flow; lines : by quantity, for the whole arrangement; table : losses part
     by part at the main duty; k_si : equivalent k of the losses there [m/(m³/s)²];
     shut_off_si : head at the smallest read flow [m], with that flow [m³/s].
+    minimum_speed_ratio : of this speed, below which nothing is lifted.
     """
 
     points: tuple[DutyPoint, ...]
@@ -40,6 +41,7 @@ class Duty:
     table: tuple[LossRow, ...] = ()
     k_si: float | None = None
     shut_off_si: tuple[float, float] | None = None
+    minimum_speed_ratio: float | None = None
     method: str = ""
     findings: tuple[Finding, ...] = ()
 
@@ -82,7 +84,8 @@ def duty(
     moved = {name: line.arranged(how) for name, line in single.items()}
     head = moved["head"]
     found = crossings(head.value, system.head, *head.range)
-    findings = [*_doubts(found, head, system, how)]
+    say = _Words(flow_unit, head_unit)
+    findings = [*_doubts(found, head, system, how, say)]
     bep = _bep_flow(moved)
     points, method = [], ""
     for crossing in found:
@@ -93,8 +96,16 @@ def duty(
     low = head.range[0]
     shut_off = (float(head.value(np.array([low]))[0]), low)
     if main is None:
-        return Duty((), system, how, moved, shut_off_si=shut_off, findings=tuple(findings))
-    findings += _range_findings(points[found.index(main)], moved, system, bep)
+        return Duty(
+            (),
+            system,
+            how,
+            moved,
+            shut_off_si=shut_off,
+            minimum_speed_ratio=minimum_speed_ratio(head, system),
+            findings=tuple(findings),
+        )
+    findings += _range_findings(points[found.index(main)], system, say)
     return Duty(
         tuple(points),
         system,
@@ -103,6 +114,7 @@ def duty(
         system.table(main.flow),
         (main.head - system.static_head) / main.flow**2 if main.flow > 0 else None,
         shut_off,
+        minimum_speed_ratio(head, system),
         method,
         tuple(findings),
     )
@@ -197,20 +209,34 @@ def _point(
     )
 
 
+@dataclass(frozen=True, slots=True)
+class _Words:
+    """Flows and heads in the units that the findings speak in."""
+
+    flow_unit: str
+    head_unit: str
+
+    def flow(self, value: float) -> str:
+        return f"{from_si(value, self.flow_unit):.4g} {unit(self.flow_unit).print}"
+
+    def head(self, value: float) -> str:
+        return f"{from_si(value, self.head_unit):.4g} {unit(self.head_unit).print}"
+
+
 def _doubts(
-    found: Sequence[Crossing], head: Line, system: System, how: Arrangement
+    found: Sequence[Crossing], head: Line, system: System, how: Arrangement, say: _Words
 ) -> list[Finding]:
     """What the crossings themselves give cause to say."""
     said = []
     if not found:
-        said.append(_no_crossing(head, system))
+        said.append(_no_crossing(head, system, say))
     for c in found:
         if not c.stable:
             said.append(
                 Finding(
                     "warning",
                     "duty.unstable",
-                    f"The crossing at {c.flow * 3600:.4g} m³/h is unstable: there the system's "
+                    f"The crossing at {say.flow(c.flow)} is unstable: there the system's "
                     "head falls below the pump's when the flow grows.",
                     remedy="The pump will not stay there; choose another pump or system.",
                 )
@@ -228,7 +254,7 @@ def _doubts(
     return said
 
 
-def _no_crossing(head: Line, system: System) -> Finding:
+def _no_crossing(head: Line, system: System, say: _Words) -> Finding:
     flow = np.linspace(*head.range, 1001)
     gap = head.value(flow) - system.head(flow)
     nearest = int(np.argmin(np.abs(gap)))
@@ -237,18 +263,16 @@ def _no_crossing(head: Line, system: System) -> Finding:
     return Finding(
         "error",
         "duty.no-crossing",
-        f"Pump and system do not meet between {flow[0] * 3600:.4g} and {flow[-1] * 3600:.4g} m³/h, "
-        f"the flows that were read. They come nearest at {q * 3600:.4g} m³/h, where the pump is "
-        f"{abs(short):.4g} m {side} the system.",
+        f"Pump and system do not meet between {say.flow(flow[0])} and {say.flow(flow[-1])}, "
+        f"the flows that were read. They come nearest at {say.flow(q)}, where the pump is "
+        f"{say.head(abs(short))} {side} the system.",
         remedy="The pump runs out beyond its charted flow: choose a smaller one or throttle it."
         if short > 0
         else "Choose a larger diameter, a higher speed or another pump.",
     )
 
 
-def _range_findings(
-    point: DutyPoint, lines: Mapping[str, Line], system: System, bep: float | None
-) -> list[Finding]:
+def _range_findings(point: DutyPoint, system: System, say: _Words) -> list[Finding]:
     """Whether the pump should run there: operating range, NPSH, power that disagrees."""
     said = []
     share, (low, high) = point.share_of_bep, system.operation.preferred
@@ -273,9 +297,11 @@ def _range_findings(
                 Finding(
                     "error" if short else "warning",
                     "duty.npsh",
-                    f"NPSH available is {have.value:.2f} m, NPSHr {need.value:.2f} m: "
+                    f"NPSH available is {say.head(have.value)}, NPSHr {say.head(need.value)}: "
                     + (
-                        "the pump will cavitate." if short else f"less than the {rule:.2f} m asked."
+                        "the pump will cavitate."
+                        if short
+                        else f"less than the {say.head(rule)} asked."
                     ),
                     remedy="Raise the suction level, cut suction losses, or choose a lower NPSHr.",
                 )

@@ -1,0 +1,290 @@
+"""curvefit duty: where a pump that was read runs in a system, how sure that is, and the doubts."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated, Any
+
+import typer
+from curvefit_cli.options import (
+    Debug,
+    FlowUnit,
+    HeadUnit,
+    NpshUnit,
+    Out,
+    PowerUnit,
+    Quiet,
+    Strict,
+    unit_options,
+)
+from curvefit_cli.selection import CurveName, PumpName, listing, same, select
+from curvefit_cli.show import UNTRUSTED, findings_text, say, table, written
+
+if TYPE_CHECKING:
+    from curvefit.duty import Duty
+    from curvefit.records import Fit, Interval
+    from curvefit.write.reopen import CurveSet
+
+__all__ = ["duty"]
+
+_ONE_OF_EACH = ("head", "differential_pressure", "efficiency", "shaft_power", "npsh_required")
+
+
+def duty(
+    curves: Annotated[Path, typer.Argument(metavar="CURVES", help="A .curves.json.")],
+    system: Annotated[Path, typer.Argument(metavar="SYSTEM.toml", help="The system.")],
+    pump: PumpName = None,
+    curve: CurveName = None,
+    diameter: Annotated[
+        str | None,
+        typer.Option("--diameter", metavar="D", help="Impeller, e.g. 210 mm.", show_default=False),
+    ] = None,
+    speed: Annotated[
+        str | None,
+        typer.Option("--speed", metavar="N", help="Run at, e.g. 2600 rpm.", show_default=False),
+    ] = None,
+    parallel: Annotated[
+        int, typer.Option("--parallel", min=1, metavar="N", help="Pumps side by side.")
+    ] = 1,
+    series: Annotated[
+        int, typer.Option("--series", min=1, metavar="N", help="Pumps one after another.")
+    ] = 1,
+    want_flow: Annotated[
+        str | None,
+        typer.Option("--want-flow", metavar="Q", help="Find the speed for it.", show_default=False),
+    ] = None,
+    want_head: Annotated[
+        str | None,
+        typer.Option("--want-head", metavar="H", help="Find the speed for it.", show_default=False),
+    ] = None,
+    draws: Annotated[
+        int, typer.Option("--draws", min=0, metavar="N", help="Monte Carlo draws; 0: none.")
+    ] = 100_000,
+    out: Out = None,
+    flow_unit: FlowUnit = None,
+    head_unit: HeadUnit = None,
+    power_unit: PowerUnit = None,
+    npsh_unit: NpshUnit = None,
+    strict: Strict = False,
+    quiet: Quiet = False,
+    debug: Debug = False,
+) -> None:
+    """Find the duty point of a pump in a system, with its 95 % intervals.
+
+    Prints the duty, the losses part by part and the findings; writes STEM.duty.json and a plot.
+
+    Example: curvefit duty pump.curves.json system.toml --diameter "210 mm" --parallel 2
+    """
+    from curvefit.duty import Arrangement, read_system
+    from curvefit.duty import duty as duty_of
+    from curvefit.errors import InputError
+    from curvefit.write.duty_files import write_duty
+    from curvefit.write.reopen import reopen
+
+    asked = unit_options(flow_unit, head_unit, power_unit, npsh_unit)
+    opened, plant = reopen(curves), read_system(system)
+    fits, ratio = _chosen(opened, pump, curve, diameter, speed)
+    if want_flow is not None and want_head is not None:
+        raise InputError("--want-flow and --want-head exclude each other", remedy="Keep one.")
+    if want_flow is not None or want_head is not None:
+        ratio = _wanted(fits, plant, want_flow, want_head, parallel, series)
+    units = _units(fits, asked)
+    how = Arrangement(parallel, series, ratio)
+    result = duty_of(
+        fits, plant, how, draws=draws, flow_unit=units["flow"], head_unit=units["head"]
+    )
+    about = _about(opened, fits, how)
+    folder = out or curves.parent
+    stem = curves.name.removesuffix(".json").removesuffix(".curves")
+    paths = write_duty(result, folder, stem, units, about, inputs=[curves, system])
+    say(_text(result, units), quiet)
+    if result.findings:
+        say(quiet=quiet)
+        say(findings_text(result.findings), quiet)
+    say(quiet=quiet)
+    say(_CAUTION, quiet)
+    say(written(paths), quiet)
+    alarmed = any(f.severity != "info" for f in result.findings)
+    raise typer.Exit(UNTRUSTED if not result.points or (strict and alarmed) else 0)
+
+
+_CAUTION = (
+    "Readings from a chart do not replace the manufacturer's data or a witnessed test. Check the\n"
+    "shut-off pressure, the NPSH margin and the minimum flow; local codes decide."
+)
+
+
+def _chosen(
+    opened: CurveSet, pump: str | None, curve: str | None, diameter: str | None, speed: str | None
+) -> tuple[list[Fit], float]:
+    """One fit of each quantity, of one impeller, and the speed ratio to run it at."""
+    from curvefit.errors import InputError
+    from curvefit.units import parse_quantity
+
+    curves = [f.curve for f in opened.fits if len(f.curves) == 1 and not f.curve.iso]
+    d = None if diameter is None else parse_quantity(diameter, "length", "mm")
+    n = None if speed is None else parse_quantity(speed, "speed", "/min")
+    charted = n is not None and any(same(c.speed_si, n) for c in curves)
+    kept = select(curves, pump, None, d, n if charted else None)
+    if curve is not None:
+        (head,) = select(kept, curve=curve)[:1]
+        kept = tuple(c for c in kept if c.quantity != head.quantity or c is head)
+    by_quantity = {q: [c for c in kept if c.quantity == q] for q in _ONE_OF_EACH}
+    for quantity in ("head", "differential_pressure"):
+        if len(by_quantity[quantity]) > 1:
+            raise InputError(
+                f"{len(by_quantity[quantity])} {quantity} curves fit the selection; one is needed",
+                remedy=listing(by_quantity[quantity]),
+            )
+    head = next((c for q in ("head", "differential_pressure") for c in by_quantity[q]), None)
+    names = {
+        c.name
+        for same_quantity in by_quantity.values()
+        for c in same_quantity
+        if len(same_quantity) == 1 or (head is not None and same(c.diameter_si, head.diameter_si))
+    }
+    fits = [f for f in opened.fits if len(f.curves) == 1 and f.curve.name in names]
+    if n is None or charted or head is None:
+        return fits, 1.0
+    of_chart = head.speed_si or getattr(opened.pump(head), "speed_si", None)
+    if of_chart is None:
+        raise InputError(
+            "the chart's own speed is not known, so no other speed can be reckoned",
+            remedy='Give it in the notes of the chart: [[pump]] speed = "2900 rpm".',
+        )
+    return fits, n / of_chart
+
+
+def _wanted(
+    fits: Sequence[Fit],
+    plant: Any,
+    want_flow: str | None,
+    want_head: str | None,
+    parallel: int,
+    series: int,
+) -> float:
+    """The speed ratio for a wanted flow or head."""
+    from curvefit.duty import Arrangement, line_of_fit, speed_for
+    from curvefit.errors import InputError
+    from curvefit.units import parse_quantity
+
+    heads = [line_of_fit(f) for f in fits if f.curve.quantity == "head"]
+    if not heads:
+        raise InputError("no head curve is among the chosen curves", remedy="Choose another pump.")
+    flow = None if want_flow is None else parse_quantity(want_flow, "flow")
+    head = None if want_head is None else parse_quantity(want_head, "length")
+    return speed_for(heads[0].arranged(Arrangement(parallel, series)), plant, flow, head)
+
+
+def _units(fits: Sequence[Fit], asked: dict[str, str]) -> dict[str, str]:
+    """UCUM codes for the output: those asked for, else those of the chart."""
+    from curvefit.units import parse, unit
+
+    found = {"flow": "m3/h", "head": "m", "npsh": "m", "power": "kW"}
+    for fit in fits:
+        found["flow"] = fit.curve.flow_unit
+        kind = {"head": "head", "npsh_required": "npsh", "shaft_power": "power"}
+        if fit.curve.quantity in kind:
+            found[kind[fit.curve.quantity]] = fit.curve.unit
+    found |= {name: parse(text).code for name, text in asked.items()}
+    for name in ("head", "npsh"):
+        if unit(found[name]).dimension != "length":
+            found[name] = "m"
+    return found
+
+
+def _about(opened: CurveSet, fits: Sequence[Fit], how: Any) -> dict[str, Any]:
+    """What the duty is for, ready for JSON."""
+    head = next((f.curve for f in fits if "head" in f.curve.quantity), fits[0].curve)
+    pump = opened.pump(head)
+    speed = head.speed_si or (pump.speed_si if pump else None)
+    diameter = head.diameter_si
+    return {
+        "name": head.pump,
+        "curves": [f.curve.name for f in fits],
+        "impeller_diameter": None
+        if diameter is None
+        else {"value": round(diameter * 1e3, 4), "unit": "mm"},
+        "speed": None
+        if speed is None
+        else {"value": round(speed * 60 * how.speed_ratio, 3), "unit": "/min"},
+        "speed_ratio": round(how.speed_ratio, 6),
+        "parallel": how.parallel,
+        "series": how.series,
+    }
+
+
+def _text(result: Duty, units: dict[str, str]) -> str:
+    """The duty, the losses and how they were reckoned, as tables."""
+    from curvefit.units import from_si, unit
+
+    rows = []
+    for number, point in enumerate(result.points, 1):
+        name = f"duty {number}" if len(result.points) > 1 else "duty"
+        rows.append([name, "stable" if point.stable else "UNSTABLE", ""])
+        for label, value, kind in (
+            ("flow", point.flow_si, units["flow"]),
+            ("head", point.head_si, units["head"]),
+            ("efficiency", point.efficiency_si, "%"),
+            ("shaft power", point.shaft_power_si, units["power"]),
+            ("shaft power from ρgQH/η", point.computed_power_si, units["power"]),
+            ("NPSHr", point.npsh_required_si, units["npsh"]),
+            ("NPSH available", point.npsh_available_si, units["npsh"]),
+        ):
+            if value is not None:
+                rows.append([f"  {label}", _value(value, kind), _interval(value, kind)])
+        need, have = point.npsh_required_si, point.npsh_available_si
+        if need is not None and have is not None:
+            margin = from_si(have.value - need.value, units["npsh"])
+            text = f"{margin:.3g} {unit(units['npsh']).print}"
+            rows.append(["  NPSH margin", text, f"ratio {have.value / need.value:.3g}"])
+        if point.share_of_bep is not None:
+            rows.append(["  share of BEP flow", f"{point.share_of_bep:.0%}", ""])
+        if point.energy_si is not None:
+            rows.append(["  energy at the shaft", f"{point.energy_si / 3.6e6:.4g} kWh/m³", ""])
+        if point.energy_year_si is not None:
+            rows.append(["  a year's energy", f"{point.energy_year_si / 3.6e9:.4g} MWh", ""])
+    parts = [table(["", "value", "95 % interval"], rows)] if rows else []
+    if result.table:
+        losses = [
+            [r.section, r.part, _plain(r.loss, units["head"]), r.method] for r in result.table
+        ]
+        losses.append(["static", "head", _plain(result.system.static_head, units["head"]), ""])
+        parts.append(table(["losses", "part", "at the duty", "method"], losses))
+    if result.k_si is not None:
+        k = result.k_si * unit(units["flow"]).factor ** 2 / unit(units["head"]).factor
+        per = f"{unit(units['head']).print}/({unit(units['flow']).print})²"
+        parts.append(f"Equivalent loss coefficient k = {k:.5g} {per}")
+    if result.minimum_speed_ratio is not None:
+        parts.append(
+            f"Slowest speed that still lifts: {result.minimum_speed_ratio:.1%} of this one"
+        )
+    if result.shut_off_si is not None:
+        head, flow = result.shut_off_si
+        weight = result.system.liquid.density * 9.80665
+        parts.append(
+            f"Head at the smallest flow read ({_plain(flow, units['flow'])}): "
+            f"{_plain(head, units['head'])}, {head * weight / 1e5:.3g} bar above the suction side"
+        )
+    if result.method:
+        parts.append(f"Intervals: {result.method}")
+    return "\n\n".join(parts)
+
+
+def _value(value: Interval, code: str) -> str:
+    return _plain(value.value, code)
+
+
+def _plain(value: float, code: str) -> str:
+    from curvefit.units import from_si, unit
+
+    return f"{from_si(value, code):.4g} {unit(code).print}"
+
+
+def _interval(value: Interval, code: str) -> str:
+    from curvefit.units import from_si
+
+    if value.low is None or value.high is None:
+        return ""
+    return f"{from_si(value.low, code):.4g} to {from_si(value.high, code):.4g}"
