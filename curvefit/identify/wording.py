@@ -238,7 +238,8 @@ def _bent_diameters(clean: str, text: str, said: bool) -> list[Meaning]:
         value = float(match[1].replace(",", "."))
         if 30 <= value <= 1500:
             found.append(Meaning("diameter", value / 1000, "mm", 0.5, False, text))
-    if re.search(r"\d.*\d", clean) and re.fullmatch(r"[\dOoQlI|SBZz]{2,5}", clean):
+    digits = r"\d" if said else r"\d.*\d"
+    if re.search(digits, clean) and re.fullmatch(r"[\dOoQlI|SBZz]{2,5}", clean):
         digits = clean.translate(_DIGITS)
         if digits != clean:
             for body, cost in [(digits, 0.4)] if said else [(digits, 0.7), (digits[1:], 0.8)]:
