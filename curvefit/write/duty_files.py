@@ -10,6 +10,7 @@ from curvefit.units import from_si
 from curvefit.write.atomic import put_files
 from curvefit.write.curves_json import json_text
 from curvefit.write.duty_json import duty_document
+from curvefit.write.duty_plot import duty_plot
 
 if TYPE_CHECKING:
     from curvefit.records import DutyPoint, Finding
@@ -44,6 +45,7 @@ def write_duty(
     findings: tuple[Finding, ...] = result.findings
     document = duty_document(points, _system(result, units), findings, units, pump)
     files = {f"{stem}.duty.json": json_text(document).encode()}
+    files[f"{stem}.duty.svg"] = duty_plot(result, units).encode()
     return put_files(folder, files, inputs)
 
 

@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from curvefit.write.outgoing import Z95, CurveOut, FitOut
 
-__all__ = ["curve_plot", "nice_ticks", "residual_plot"]
+__all__ = ["Frame", "curve_plot", "nice_ticks", "residual_plot"]
 
 Array = NDArray[np.float64]
 
@@ -29,7 +29,7 @@ def curve_plot(curve: CurveOut, fit: FitOut | None, flow: str, value: str) -> st
     """
     high = [curve.value, *([fit.value, _finite(fit.high)] if fit is not None else [])]
     low = [curve.value, *([fit.value, _finite(fit.low)] if fit is not None else [])]
-    frame = _Frame(_span([curve.flow]), _span([*low, *high], zero=True), 640, 330)
+    frame = Frame(_span([curve.flow]), _span([*low, *high], zero=True), 640, 330)
     parts = [frame.axes(flow, value)]
     if fit is not None:
         parts += [frame.band(fit.flow, fit.low, fit.high), frame.line(fit.flow, fit.value, "fit")]
@@ -50,7 +50,7 @@ def residual_plot(curve: CurveOut, fit: FitOut, flow: str, unit: str) -> str:
     u = Z95 * curve.trace_u[inside]
     low, high = fit.low - fit.value, fit.high - fit.value
     reach = [left, _finite(u), _finite(-u), _finite(low), _finite(high)]
-    frame = _Frame(_span([curve.flow]), _span(reach), 640, 200)
+    frame = Frame(_span([curve.flow]), _span(reach), 640, 200)
     parts = [frame.axes(flow, f"point − equation [{unit}]")]
     parts += [frame.band(fit.flow, low, high)]
     parts += [frame.line(x, u, "own"), frame.line(x, -u, "own")]
@@ -98,7 +98,7 @@ def _thin(n: int, most: int) -> NDArray[np.intp]:
 
 
 @dataclass(frozen=True, slots=True)
-class _Frame:
+class Frame:
     """The map from numbers to a drawing of width × height."""
 
     x: tuple[float, float]
