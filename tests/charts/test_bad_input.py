@@ -7,7 +7,7 @@ import pytest
 from command import curvefit
 
 FOLDER = Path(__file__).resolve().parents[2] / "sample_charts"
-MEMORY = 1300  # MiB
+MEMORY = 2200  # MiB: the guarded process that opens files is stopped at 2 GiB
 
 CASES = {
     # name: (maker, file name, exit codes that are right, a word that the message must hold)
