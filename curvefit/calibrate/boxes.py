@@ -12,6 +12,7 @@ from curvefit.calibrate.lines import Line
 __all__ = ["Box", "find_boxes"]
 
 _SPAN = 0.6  # a side of the box covers at least this share of it
+_OVERHANG = 0.065  # ticks let lines stick out beyond a side by less than this share
 
 
 @dataclass(frozen=True, slots=True)
@@ -51,7 +52,7 @@ def find_boxes(across: list[Line], upright: list[Line], reach: float) -> list[Bo
 
     reach : how far apart [px] two lines may end and still meet.
     """
-    boxes = [_box(h, v) for h, v in _groups(across, upright, reach) if h and v]
+    boxes = [_box(h, v, reach) for h, v in _groups(across, upright, reach) if h and v]
     return sorted((b for b in boxes if b is not None), key=lambda b: -b.area)
 
 
@@ -78,7 +79,7 @@ def _groups(
     return list(groups.values())
 
 
-def _box(across: list[Line], upright: list[Line]) -> Box | None:
+def _box(across: list[Line], upright: list[Line], reach: float) -> Box | None:
     left, right = min(h.lo for h in across), max(h.hi for h in across)
     top, bottom = min(v.lo for v in upright), max(v.hi for v in upright)
     seen = [False] * 4
@@ -87,7 +88,7 @@ def _box(across: list[Line], upright: list[Line]) -> Box | None:
         ys = [h.at for h in across if _cover(h, left, right) > _SPAN]
         if not xs or not ys:
             return None
-        slack_x, slack_y = 0.02 * (right - left), 0.02 * (bottom - top)
+        slack_x, slack_y = (max(_OVERHANG * d, reach) for d in (right - left, bottom - top))
         ends_x = [(h.lo, h.hi) for h in across if _cover(h, left, right) > _SPAN]
         ends_y = [(v.lo, v.hi) for v in upright if _cover(v, top, bottom) > _SPAN]
         x0, x1 = (float(np.median(e)) for e in zip(*ends_x, strict=True))

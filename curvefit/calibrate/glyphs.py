@@ -74,7 +74,9 @@ def text_lines(boxes: Array, zones: NDArray[np.int64]) -> list[TextLine]:
     strong = size >= 0.5 * np.median(size[size >= 5]) if (size >= 5).any() else size > 0
     n_across = np.bincount(across, strong.astype(float))[across]
     n_upright = np.bincount(upright, strong.astype(float))[upright]
-    vertical = (n_upright > n_across) & (n_upright >= 2)
+    row = _blobs(boxes, zones, _LOOSE, along_x=True)
+    in_row = np.bincount(row, strong.astype(float))[row]
+    vertical = (n_upright > n_across) & (n_upright >= 2) & (n_upright >= in_row)
     lines = []
     for up in (False, True):
         mine = np.flatnonzero(vertical == up)

@@ -53,9 +53,28 @@ def long_lines(ink: NDArray[np.uint8], along_x: bool, shortest: int) -> list[Lin
         if h > max(12, 0.03 * w):  # several lines run together, or a slanted one
             pieces += _rows(label[y : y + h, x : x + w] == i, thin[y : y + h, x : x + w], x, y)
             continue
+        inked = dark[y : y + h, x : x + w].any(0)
+        first, last = _trimmed(inked)
         strength = float(thin[y : y + h, x : x + w].max(0).mean())
-        pieces.append(Line(float(centre[i, 1]), float(x), float(x + w - 1), strength))
+        pieces.append(Line(float(centre[i, 1]), float(x + first), float(x + last), strength))
     return _joined(pieces, 3 * gap)
+
+
+def _trimmed(inked: NDArray[np.bool_]) -> tuple[int, int]:
+    """First and last place of a line without the crumbs (of a number, say) beyond its ends.
+
+    A crumb is short, and stands off by more than the line's own gaps.
+    """
+    edge = np.flatnonzero(np.diff(np.r_[0, inked.astype(np.int8), 0]))
+    start, stop = edge[::2], edge[1::2]
+    gap = start[1:] - stop[:-1]
+    usual = max(2.5, 2.0 * float(np.median(gap))) if len(gap) > 8 else 2.5
+    lo, hi = 0, len(start) - 1
+    while lo < hi and stop[lo] - start[lo] < 24 and gap[lo] > usual:
+        lo += 1
+    while hi > lo and stop[hi] - start[hi] < 24 and gap[hi - 1] > usual:
+        hi -= 1
+    return int(start[lo]), int(stop[hi] - 1)
 
 
 def _threshold(thin: NDArray[np.uint8]) -> float:

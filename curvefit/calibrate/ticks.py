@@ -148,14 +148,14 @@ def _row(
     offset: float = 0,
 ) -> list[TickRow]:
     """The peaks of a strip's profile as a row of ticks; none if there are fewer than two."""
-    at, weight, width = _peaks(profile.astype(float), 24.0, 0.35)
+    at, weight, width = _peaks(profile.astype(float), 14.0, 0.2)
     return _kept(side, kind, at - margin, weight, width, length, offset)
 
 
 def _grid(side: Side, box: NDArray[np.float32], margin: int, length: float) -> list[TickRow]:
     share = np.minimum(box, _FAINT).mean(0) / _FAINT
     # dark curves and words cover little of the depth, the neighbouring columns tell how much
-    at, weight, width = _peaks(share.astype(float), 0.14, 0.3)
+    at, weight, width = _peaks(share.astype(float), 0.07, 0.12)
     return _kept(side, "grid", at - margin, weight, width, length, 0.0)
 
 
@@ -191,8 +191,8 @@ def _peaks(profile: Array, floor: float, share: float) -> tuple[Array, Array, Ar
     smooth = np.convolve(profile, [0.25, 0.5, 0.25], "same")
     base = median_filter(smooth, 31, mode="nearest")
     rise = np.clip(smooth - base, 0, None)
-    top = np.percentile(rise[rise > floor / 2], 90) if (rise > floor / 2).any() else 0.0
-    level = max(floor, share * top)
+    top = np.percentile(rise[rise > floor], 90) if (rise > floor).any() else 0.0
+    level = max(floor, share * top, 6 * float(np.median(np.abs(smooth - base))))
     found, _ = find_peaks(rise, height=level, prominence=0.6 * level)
     if not len(found):
         return np.zeros(0), np.zeros(0), np.zeros(0)
