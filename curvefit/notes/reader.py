@@ -124,10 +124,11 @@ def _parse(text: str, file: str) -> dict[str, Any]:
     try:
         tables = tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
-        line = re.search(r"line (\d+)", str(error))
+        line = re.search(r"line (\d+)", str(error))  # else it is at the end of the document
+        number = int(line[1]) if line else max(len(text.splitlines()), 1)
         raise NotesError(
             f"not valid TOML: {error}",
-            Location(file=file, line=int(line[1]) if line else None),
+            Location(file=file, line=number),
             'Texts stand in quotes: unit = "m3/h".',
         ) from error
     for name in tables:
@@ -150,9 +151,9 @@ def _entries(
 ) -> list[Entry]:
     """The entries of one table, their keys and `by` checked."""
     rows = tables.get(table, [])
-    if isinstance(rows, dict):
+    if not isinstance(rows, list):
         rows = [rows]
-    found = [Entry(file, table, i, v, lines, page) for i, v in enumerate(rows or [])]
+    found = [Entry(file, table, i, v, lines, page) for i, v in enumerate(rows)]
     for entry in found:
         if not isinstance(entry.values, dict):
             bracket = f"[{table}]" if table in _SINGLE else f"[[{table}]]"

@@ -5,9 +5,9 @@ from __future__ import annotations
 import csv
 import io
 import math
+import re
 from collections.abc import Iterator
 from typing import Any
-from urllib.parse import quote
 
 import numpy as np
 
@@ -67,7 +67,7 @@ def csv_metadata(name: str, out: Outgoing) -> str:
     ]
     document: dict[str, Any] = {
         "@context": "http://www.w3.org/ns/csvw",
-        "url": quote(name),
+        "url": re.sub(r"[%#?:]", lambda m: f"%{ord(m[0]):02X}", name),
         "dc:title": "Pump curves read from a printed chart",
         "dc:creator": f"curvefit {__version__}",
         "dc:source": out.reading.page.sha256,
