@@ -42,6 +42,8 @@ def ended(run: Callable[[], Any], debug: bool) -> int:
     try:
         code = run()
         sys.stdout.flush()
+        if code == INTERRUPTED:
+            return _interrupted()
         return code if isinstance(code, int) else 0
     except ChartError as error:
         if debug:
@@ -89,7 +91,7 @@ def say_error(error: ChartError) -> None:
     place = str(error.where)
     say(f"Error: {place + ': ' if place else ''}{plain(error.what)}.", file=sys.stderr)
     if error.remedy:
-        say(f"  {plain(error.remedy)}", file=sys.stderr)
+        say(f"  {plain(error.remedy)}.", file=sys.stderr)
 
 
 def plain(text: str) -> str:
