@@ -10,7 +10,9 @@ from curvefit_cli.options import Debug, Quiet, Strict
 
 __all__ = ["demo"]
 
-CHART = "demo_chart.png"
+#: an invented pump, drawn by sample_charts/draw.py:
+#: chart("stacked", 7, "inked", "scan", dpi=150, units="m3/h", language="en")
+CHART = "demo_chart.jpg"
 
 
 def demo(

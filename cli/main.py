@@ -6,6 +6,7 @@ import sys
 
 import typer
 from curvefit_cli.demo import demo
+from curvefit_cli.duty import duty
 from curvefit_cli.read import read
 from curvefit_cli.show import ended
 
@@ -39,6 +40,7 @@ def begin(
 
 
 app.command()(read)
+app.command()(duty)
 app.command()(demo)
 
 

@@ -91,7 +91,8 @@ def say_error(error: ChartError) -> None:
     place = str(error.where)
     say(f"Error: {place + ': ' if place else ''}{plain(error.what)}.", file=sys.stderr)
     if error.remedy:
-        say(f"  {plain(error.remedy)}.", file=sys.stderr)
+        lines = error.remedy.splitlines()  # a remedy may list things, a line each
+        say("\n".join(f"  {plain(line)}" for line in lines) + ".", file=sys.stderr)
 
 
 def plain(text: str) -> str:

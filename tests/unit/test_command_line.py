@@ -231,3 +231,22 @@ def test_text_of_a_chart_cannot_steer_the_terminal(curvefit, reads, chart, made_
     out = curvefit("read", chart)[1]
     assert "\x1b" not in out
     assert "gone" in out
+
+
+def test_the_demo_chart_is_the_one_that_its_comment_says():
+    from importlib.resources import files
+
+    from curvefit_cli.demo import CHART
+
+    from sample_charts.draw import chart
+
+    drawn = chart("stacked", 7, "inked", "scan", dpi=150, units="m3/h", language="en")
+    shipped = files("curvefit_cli").joinpath(CHART).read_bytes()
+    from io import BytesIO
+
+    import numpy as np
+    from PIL import Image
+
+    with Image.open(BytesIO(shipped)) as a, Image.open(BytesIO(drawn.data)) as b:
+        gap = np.abs(np.asarray(a, float) - np.asarray(b, float)).mean()
+    assert gap < 1.0
