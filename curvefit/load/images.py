@@ -41,11 +41,8 @@ class Images:
                 image.seek(number - 1)
             self._check(*image.size)
             orientation = _orientation(image)
-            stored = image.size
             image.load()
             turned = _orientation(image) == 1 and orientation != 1
-            if image.size != stored:
-                stored = image.size
             pixels = _plain(image)
             data = pixels.tobytes()
         except Refusal:
@@ -100,8 +97,9 @@ def _plain(image: Any) -> Any:
         return image
     if "transparency" in image.info or image.mode in ("LA", "PA", "RGBA", "La", "RGBa"):
         layered = image.convert("RGBA")
-        white = Image.new("RGBA", image.size, (255, 255, 255, 255))
-        return Image.alpha_composite(white, layered).convert("RGB")
+        page = Image.new("RGB", image.size, "white")
+        page.paste(layered.convert("RGB"), mask=layered.getchannel("A"))
+        return page
     return image.convert("L" if image.mode == "1" else "RGB")
 
 

@@ -22,7 +22,7 @@ class Limits:
     drawn_pixels: int = 40_000_000
     drawn_side: int = 20_000
     least_side: int = 64
-    memory_bytes: int = 2 << 30
+    memory_bytes: int = 3 << 29
     seconds: float = 40.0
     segments: int = 1_500_000
     characters: int = 100_000

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -107,7 +108,7 @@ def _clipped(xy: Array, size: tuple[float, float], edge: float) -> Iterator[Arra
         yield xy
         return
     run: list[Array] = []
-    for a, b in zip(xy[:-1], xy[1:], strict=True):
+    for a, b in pairwise(xy):
         cut = _cut(a, b, low + edge, high - edge, edge)
         if cut is None:
             if len(run) > 1:

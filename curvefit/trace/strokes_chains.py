@@ -1,4 +1,4 @@
-"""Drawn pieces of one line joined: subpaths, hand-made dashes, stretches on both sides of a label."""
+"""Drawn pieces of one line joined: subpaths, hand-made dashes, both sides of a label."""
 
 from __future__ import annotations
 

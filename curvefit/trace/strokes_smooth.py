@@ -7,6 +7,8 @@ of magnitude where the points lie on a smooth curve, and is no better where they
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -39,7 +41,7 @@ def smooth(xy: Array, bridged: NDArray[np.bool_]) -> tuple[Array, Array, NDArray
     s = arc_length(xy)
     breaks = _corners(xy, s)
     points, sigmas, gaps = [], [], []
-    for first, stop in zip(breaks[:-1], breaks[1:], strict=True):
+    for first, stop in pairwise(breaks):
         part = slice(first, stop + 1)
         p, u, g = _run(xy[part], s[part] - s[first], bridged[part])
         begin = 0 if first == 0 else 1
@@ -87,7 +89,7 @@ def _places(s: Array) -> Array:
     if n.sum() > 4000:
         n = np.maximum((n * (4000 / n.sum())).astype(int), 1)
     parts = [np.linspace(a, b, k, endpoint=False) for a, b, k in zip(s[:-1], s[1:], n, strict=True)]
-    return np.r_[np.concatenate(parts), s[-1]]
+    return np.append(np.concatenate(parts), s[-1])
 
 
 def _span(at: Array, s: Array) -> Array:
