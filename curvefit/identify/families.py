@@ -149,7 +149,8 @@ def _chain(
     for i in range(len(ranked)):
         row = []
         for j in holding:
-            near = _placing(spots[i, j], stand, elsewhere[j], settings)
+            plain = any(m.plain for m in labels[j].means(kind))
+            near = _placing(spots[i, j], stand, elsewhere[j], plain, settings)
             if near is None:
                 continue
             for m in labels[j].means(kind):
@@ -195,18 +196,23 @@ def _chain(
     cost, dealt = min(states.values(), key=lambda s: s[0])
     if all(d is None for d in dealt):
         return None
+    if kind == "letter" and len({d[1].text for d in dealt if d is not None}) < len(dealt):
+        return None  # scraps of grid and line read as letters are never one of each
     cost += 0.3 * (kind == "letter") + 0.4 * (kind == "percent")
     cost += 0.15 * (stand != "any")
     got = tuple(None if d is None else (labels[d[0]], d[1]) for d in dealt)
     return Deal(kind, got, cost)
 
 
-def _placing(seen: Spot, stand: str, elsewhere: float, settings: Settings) -> float | None:
+def _placing(
+    seen: Spot, stand: str, elsewhere: float, plain: bool, settings: Settings
+) -> float | None:
     """Cost of a label for a line by where it stands; None where it is out of reach."""
     near = min(seen.gap, seen.start, seen.end)
+    far = settings.far if plain else 2.5 * settings.far  # a bare number may be anything
     if near > settings.reach or elsewhere < near - 1.0 or (elsewhere < 0.3 and near > 1.0):
         return None
-    cost = settings.far * max(near - 0.3, 0.0)
+    cost = far * max(near - 0.3, 0.0)
     at_end = min(seen.start, seen.end) < 1.5
     if not at_end and stand == "above" and seen.above < 0:
         cost += settings.side

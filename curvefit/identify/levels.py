@@ -9,7 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from curvefit.identify.ink import same_ink
-from curvefit.identify.placing import Label, spot
+from curvefit.identify.look import at_ends
+from curvefit.identify.placing import Label, spot, text_height
 from curvefit.identify.series import settle
 from curvefit.identify.wording import Meaning
 from curvefit.records import Panel, Trace
@@ -52,18 +53,21 @@ def iso_lines(panel: Panel, traces: Sequence[Trace], labels: Sequence[Label]) ->
     A trace that is not single-valued in flow is one. Lines of a family do not cross each other,
     and neither do lines of equal efficiency: where lines cross, they part into two sets, and the
     set that falls like heads over more of the box is the family. The other is taken as iso lines
-    if a level ("70 %", "15 kW") is printed at one of them. None of it holds where the panel has
-    no axis for the head, and lines of a panel with two quantities cross for other reasons.
+    if a level ("70 %", "15 kW") is printed at one of them, or if they are several and look or
+    run otherwise. None of it holds where the panel has no axis for the head, and lines of a panel
+    with two quantities cross for other reasons.
     """
     quantities = {a.quantity for a in panel.axes if not a.along_flow}
     if quantities and not quantities & {"head", "differential_pressure", None}:
         return []
     marked = [w for w in labels if any(m.plain and m.kind in _QUANTITY for m in w.meanings)]
     found = [t for t in traces if t.path]
-    if len(quantities) == 1 and marked:
-        for one, other in _parted([t for t in traces if not t.path], found):
-            iso = one if _head_like(one) < _head_like(other) else other
-            if any(_near(w, t) < Settings().reach for w in marked for t in iso):
+    if len(quantities) == 1:
+        for one, other in _parted([t for t in traces if not t.path]):
+            iso, heads = (one, other) if _head_like(one) < _head_like(other) else (other, one)
+            levelled = any(_near(w, t) < Settings().reach for w in marked for t in iso)
+            unlike = all(_other_style(t, h) for t in iso for h in heads)
+            if levelled or (len(iso) > 1 and (unlike or _head_like(iso) < 0.6 * _head_like(heads))):
                 found += iso
         found += _lone_levels(traces, found, labels)
     return [t for t in traces if any(t is f for f in found)]
@@ -96,9 +100,7 @@ def _lone_levels(
     return found
 
 
-def _parted(
-    traces: Sequence[Trace], paths: Sequence[Trace]
-) -> list[tuple[list[Trace], list[Trace]]]:
+def _parted(traces: Sequence[Trace]) -> list[tuple[list[Trace], list[Trace]]]:
     """Lines that cross, parted so that (as far as can be) only lines of different sets cross."""
     crossing = [[a is not b and _cross(a, b) for b in traces] for a in traces]
     side: dict[int, int] = {}
@@ -165,6 +167,11 @@ def levels(
     kind = _kind(lines, labels, settings)
     quantity = _QUANTITY[kind]
     dealt = _dealt(lines, labels, kind, settings)
+    unknown = [t for t, d in zip(lines, dealt, strict=True) if d is None or d[1].cost >= 0.5]
+    if kind == "percent" and unknown:
+        panel = lines[0].panel
+        labels = (*labels, *at_ends(panel, unknown, text_height(panel)))
+        dealt = _dealt(lines, labels, kind, settings)
     values = [None if d is None else d[1].value for d in dealt]
     rows = _sequences(lines, heads)
     texts = [d[0].text if d else "" for d in dealt]
@@ -209,7 +216,8 @@ def _dealt(
         for j, label in enumerate(holding):
             near = _near(label, trace)
             bent = min(m.cost for m in label.means(kind))
-            cost[i, j] = near + 0.5 * bent if near <= settings.reach else 1e3
+            doubt = 0.5 * bent + 0.5 * (1 - label.word.score)
+            cost[i, j] = near + doubt if near <= settings.reach else 1e3
     for i, j in zip(*linear_sum_assignment(cost), strict=True):
         if j < k and cost[i, j] < 1e2:
             dealt[i] = holding[j], holding[j].means(kind)[0]

@@ -1,8 +1,13 @@
-"""A second look: the page is read afresh where a label should stand and none was found."""
+"""A second look: the page is read afresh where a label should stand and none was found.
+
+Text that touches a line or a grid is missed where words are searched for over the whole page; a
+reader that is shown the right spot reads it all the same.
+"""
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import re
+from collections.abc import Callable, Sequence
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,11 +15,16 @@ from numpy.typing import NDArray
 from curvefit.identify.placing import Label, label_of
 from curvefit.records import Page, Panel, Trace, Word
 
-__all__ = ["again", "missing"]
+__all__ = ["again", "along", "at_ends", "missing"]
 
 Array = NDArray[np.float64]
+Image = NDArray[np.uint8]
 
-_ALPHABETS = (None, "0123456789Øø⌀=.,/\"'% ", "0123456789.%")
+_PERCENT = "0123456789.%"
+_ALPHABETS = (None, "0123456789Øø⌀=.,/\"'% ", _PERCENT)
+_AT_ENDS = [(0, 0), (0, -0.6), (0, 0.6), (0, -1.2), (0, 1.2), (1.7, 0), (-1.7, 0), (1.5, -0.7),
+            (-1.5, -0.7)]  # fmt: skip
+_SAMPLED = 3  #: lines of a kind that are searched in full; the others where these had theirs
 
 
 def missing(
@@ -35,12 +45,11 @@ def missing(
         return ()
     half = np.median([w.half for _, w in named], axis=0)
     height = float(np.median([w.height for _, w in named]))
-    place = _usual_place(named, height)
+    share, offset = _usual_place(named, height)
     boxes = []
     for trace in unnamed:
-        centre = place(trace)
-        corners = centre + np.array([[-1, -1], [1, -1], [1, 1], [-1, 1]]) * (half + 0.12 * height)
-        boxes.append(panel.warp.to_page(corners))
+        centre = _anchor(trace, share) + offset
+        boxes += [_box(panel, centre, half + k * height) for k in (0.12, 0.3)]
     return _read(panel, boxes)
 
 
@@ -48,62 +57,189 @@ def again(panel: Panel, labels: Sequence[Label]) -> tuple[Label, ...]:
     """The same labels read afresh from the page's pixels."""
     if panel.page.vector:
         return ()
-    return _read(panel, [_grown(w.word.box, 0.1 * w.word.height) for w in labels])
+    grown = [_box(panel, w.centre, w.half + 0.1 * w.height) for w in labels]
+    return _read(panel, grown)
 
 
-class _Place:
-    """Centre of a label from its line: anchor 0 its left end, 1 its right end, or between."""
+def at_ends(panel: Panel, traces: Sequence[Trace], height: float) -> tuple[Label, ...]:
+    """Levels in % read about the ends of lines, over whatever they are printed on.
 
-    def __init__(self, share: float, offset: Array) -> None:
-        self.share, self.offset = share, offset
+    Parameters
+    ----------
+    height : of the text [box px].
 
-    def __call__(self, trace: Trace) -> Array:
-        return _anchor(trace, self.share) + self.offset
+    Notes
+    -----
+    Some lines are searched all about both ends, the others where these had their level.
+    """
+    if panel.page.vector or not traces:
+        return ()
+    sample = [traces[round(k)] for k in np.linspace(0, len(traces) - 1, min(_SAMPLED, len(traces)))]
+    first = _levels_at(panel, sample, _AT_ENDS, height)
+    hits = {where for where, _ in first}
+    rest = [t for t in traces if not any(t is s for s in sample)]
+    places = sorted(hits, key=lambda p: -sum(where == p for where, _ in first))[:3]
+    second = _levels_at(panel, rest, places, height) if places else []
+    return tuple(label for _, label in (*first, *second))
+
+
+def _levels_at(
+    panel: Panel, traces: Sequence[Trace], places: Sequence[tuple[float, float]], height: float
+) -> list[tuple[tuple[float, float], Label]]:
+    from curvefit.ocr import readings
+
+    wanted = [
+        (place, _box(panel, trace.flat[end] + np.array(place) * height, np.array(size) * height))
+        for trace in traces
+        for end in (0, -1)
+        for place in places
+        for size in ((1.4, 0.65), (1.8, 0.8))
+    ]
+    crops = [(place, box, _crop(panel.page, box)) for place, box in wanted]
+    kept = [(place, box, crop) for place, box, crop in crops if crop is not None]
+    found = []
+    texts = readings([c for _, _, c in kept], (None, _PERCENT))
+    for (place, box, _), read in zip(kept, texts, strict=True):
+        for text, score in read:
+            match = re.search(r"(?<!\d)(\d{2}(?:\.\d)?)\s?%", text)
+            if match and score > 0.75:
+                found.append((place, label_of(panel, Word(match[0], box, score))))
+                break
+    return found
+
+
+def along(
+    panel: Panel, traces: Sequence[Trace], height: float, wanted: Callable[[Label], bool]
+) -> tuple[Label, ...]:
+    """Labels read behind the ends of lines and along them, above and below.
+
+    Parameters
+    ----------
+    height : of the text [box px]; wanted : whether a text is one of the labels that are missed.
+
+    Notes
+    -----
+    The strip beside a line is straightened along it, so that text that follows it is level.
+    Reading stops at the first kind of place in which most lines have a label.
+    """
+    if panel.page.vector or not traces:
+        return ()
+    every: list[Label] = []
+    for place in (_behind, _before, _above, _below):
+        found = []
+        for trace in traces:
+            strips = place(panel, trace, height)
+            hits = [w for w in _read_strips(panel, strips, height) if wanted(w)]
+            found += [max(hits, key=lambda w: w.word.score)] if hits else []
+        every += found
+        if len(found) > 0.6 * len(traces):
+            break
+    return tuple(every)
+
+
+_Strip = tuple[Array, Image]
+
+
+def _behind(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
+    return _level_strip(panel, trace.flat[-1] + np.array([3.2, 0]) * height, height)
+
+
+def _before(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
+    return _level_strip(panel, trace.flat[0] - np.array([3.2, 0]) * height, height)
+
+
+def _level_strip(panel: Panel, centre: Array, height: float) -> list[_Strip]:
+    box = _box(panel, centre, np.array([3.0, 0.75]) * height)
+    crop = _crop(panel.page, box)
+    return [] if crop is None else [(centre, crop)]
+
+
+def _above(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
+    return _beside(panel, trace, height, -0.9)
+
+
+def _below(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
+    return _beside(panel, trace, height, 0.9)
+
+
+def _beside(panel: Panel, trace: Trace, height: float, shift: float) -> list[_Strip]:
+    """Strips seven heights long beside a line: the first third of it and the last."""
+    import cv2
+
+    x, y = trace.flat.T
+    width = 7.0 * height
+    starts = np.arange(x[0] - height, x[-1] - width, 4.5 * height)
+    third = (x[-1] - x[0]) / 3
+    strips = []
+    for start in starts[(starts < x[0] + third) | (starts > x[-1] - third - width)][:16]:
+        across = np.arange(start, start + width)
+        middle = np.interp(across, x, y) + shift * height
+        up = np.arange(-0.75 * height, 0.75 * height)
+        flat = np.stack(np.broadcast_arrays(across, middle + up[:, None]), axis=-1)
+        xy = panel.warp.to_page(flat.reshape(-1, 2)).reshape(flat.shape).astype(np.float32)
+        crop = cv2.remap(
+            panel.page.pixels,
+            xy[..., 0],
+            xy[..., 1],
+            cv2.INTER_CUBIC,
+            borderMode=cv2.BORDER_REPLICATE,
+        )
+        centre = np.array([start + width / 2, middle[len(middle) // 2]])
+        strips.append((centre, np.asarray(crop, np.uint8)))
+    return strips
+
+
+def _read_strips(panel: Panel, strips: Sequence[_Strip], height: float) -> list[Label]:
+    from curvefit.ocr import recognise
+
+    found = []
+    texts = recognise([crop for _, crop in strips])
+    for (centre, _), (text, score) in zip(strips, texts, strict=True):
+        clean = re.sub(r"^[^\w⌀∅@(]+|[^\w%\"')]+$", "", text)
+        if len(clean) > 1 and score > 0.6:
+            half = np.array([0.28 * len(clean), 0.5]) * height
+            found.append(label_of(panel, Word(clean, _box(panel, centre, half), score)))
+    return found
 
 
 def _anchor(trace: Trace, share: float) -> Array:
     return np.asarray(trace.flat[round(share * (len(trace.flat) - 1))])
 
 
-def _usual_place(named: Sequence[tuple[Trace, Label]], height: float) -> _Place:
-    best: tuple[float, _Place] | None = None
+def _usual_place(named: Sequence[tuple[Trace, Label]], height: float) -> tuple[float, Array]:
+    """Where labels stand: the share of the way along their lines, and the offset from there."""
+    best: tuple[float, float, Array] | None = None
     for share in (1.0, 0.0, *np.linspace(0.02, 0.98, 25)):
         offsets = np.array([w.centre - _anchor(t, share) for t, w in named])
-        spread = float(np.abs(offsets - np.median(offsets, axis=0)).max())
-        far = float(np.hypot(*np.median(offsets, axis=0)))
-        cost = spread + 0.2 * far + (0.0 if share in (0.0, 1.0) else 0.1 * height)
+        usual = np.median(offsets, axis=0)
+        cost = float(np.abs(offsets - usual).max() + 0.2 * np.hypot(*usual))
+        cost += 0.0 if share in (0.0, 1.0) else 0.1 * height
         if best is None or cost < best[0]:
-            best = cost, _Place(float(share), np.median(offsets, axis=0))
+            best = cost, float(share), usual
     assert best is not None
-    return best[1]
+    return best[1], best[2]
 
 
-def _grown(box: Array, by: float) -> Array:
-    """A box of text widened on all sides [px]."""
-    along = (box[1] - box[0]) / max(float(np.hypot(*(box[1] - box[0]))), 1e-9)
-    down = (box[3] - box[0]) / max(float(np.hypot(*(box[3] - box[0]))), 1e-9)
-    signs = np.array([[-1, -1], [1, -1], [1, 1], [-1, 1]]) * by
-    return np.asarray(box + signs[:, :1] * along + signs[:, 1:] * down)
+def _box(panel: Panel, centre: Array, half: Array) -> Array:
+    """Page px corners of an upright box in box px."""
+    return panel.warp.to_page(centre + np.array([[-1, -1], [1, -1], [1, 1], [-1, 1]]) * half)
 
 
 def _read(panel: Panel, boxes: Sequence[Array]) -> tuple[Label, ...]:
     from curvefit.ocr import readings
 
-    crops, kept = [], []
-    for box in boxes:
-        crop = _crop(panel.page, box)
-        if crop is not None:
-            crops.append(crop)
-            kept.append(box)
+    crops = [(box, _crop(panel.page, box)) for box in boxes]
+    kept = [(box, crop) for box, crop in crops if crop is not None]
     found = []
-    for box, texts in zip(kept, readings(crops, _ALPHABETS), strict=True):
-        for text, score in dict(texts).items():
+    texts = readings([c for _, c in kept], _ALPHABETS)
+    for (box, _), read in zip(kept, texts, strict=True):
+        for text, score in dict(read).items():
             if len(text.strip()) > 1 and score > 0.3:
                 found.append(label_of(panel, Word(text, box, score)))
     return tuple(found)
 
 
-def _crop(page: Page, box: Array) -> NDArray[np.uint8] | None:
+def _crop(page: Page, box: Array) -> Image | None:
     """The upright pixels of a box; None where it leaves the page or is too small to read."""
     import cv2
 

@@ -11,8 +11,8 @@ from curvefit.identify.families import Deal, deal
 from curvefit.identify.impellers import agree, member
 from curvefit.identify.ink import line_sample, same_ink
 from curvefit.identify.line import Line
-from curvefit.identify.look import again, missing
-from curvefit.identify.placing import Label, spot
+from curvefit.identify.look import again, along, missing
+from curvefit.identify.placing import Label, spot, text_height
 from curvefit.identify.wording import Meaning
 from curvefit.records import Trace
 
@@ -34,10 +34,13 @@ def name_families(
     groups: dict[tuple[str, str], list[Line]] = {}
     for line in plain:
         groups.setdefault((line.panel.name, line.quantity), []).append(line)
-    for (panel, quantity), group in groups.items():
+    heads = ("head", "differential_pressure")
+    settled = False  # whether a family is named throughout: others can be named after it
+    for (panel, quantity), group in sorted(groups.items(), key=lambda g: g[0][1] not in heads):
         free = [w for w in labels[panel] if id(w.word) not in used | taken]
         others = [x for x in lines if x.panel.name == panel and x not in group]
-        taken |= _label_group(group, quantity, free, others)
+        taken |= _label_group(group, quantity, free, others, search=not settled)
+        settled |= len(group) > 1 and all(x.marked for x in group)
         taken |= _quantity_words(group, free)
     agree(list(groups.values()))
     for group in groups.values():
@@ -46,12 +49,16 @@ def name_families(
 
 
 def _label_group(
-    group: Sequence[Line], quantity: str, free: Sequence[Label], others: Sequence[Line]
+    group: Sequence[Line],
+    quantity: str,
+    free: Sequence[Label],
+    others: Sequence[Line],
+    search: bool,
 ) -> set[int]:
     legend = _from_legend(group, free)
     if legend is not None:
         return legend
-    found = _dealt(group, quantity, free, [x.trace for x in others])
+    found = _dealt(group, quantity, free, [x.trace for x in others], search)
     if found is None:
         return set()
     taken = set()
@@ -65,22 +72,45 @@ def _label_group(
 
 
 def _dealt(
-    group: Sequence[Line], quantity: str, free: Sequence[Label], others: Sequence[Trace]
+    group: Sequence[Line],
+    quantity: str,
+    free: Sequence[Label],
+    others: Sequence[Trace],
+    search: bool,
 ) -> Deal | None:
-    """Labels dealt to a family; where some line got none or a bent one, after a second look."""
+    """Labels dealt to a family; where some line got none or a bent one, after a second look.
+
+    search : look for labels of which nothing is known yet, too (the dear part).
+    """
     members = [member(x) for x in group]
-    first = deal(members, quantity, free, others)
-    if first is None or first.kind == "letter" or len(group) < 2:
-        return first
-    named = [(x.trace, g[0]) for x, g in zip(group, first.given, strict=True) if g is not None]
-    unnamed = [x.trace for x, g in zip(group, first.given, strict=True) if g is None]
-    bent = [g[0] for g in first.given if g is not None and g[1].cost >= 0.3]
-    panel = group[0].panel
-    extra = (*missing(panel, named, unnamed), *(again(panel, bent) if bent else ()))
-    if not extra:
-        return first
-    second = deal(members, quantity, (*free, *extra), others)
-    return second if second is not None and second.kind == first.kind else first
+    found = deal(members, quantity, free, others)
+    if len(group) < 2 or (found is not None and found.kind == "letter"):
+        return found
+    panel, words = group[0].panel, list(free)
+    if found is not None:
+        named = [(x.trace, g[0]) for x, g in zip(group, found.given, strict=True) if g is not None]
+        unnamed = [x.trace for x, g in zip(group, found.given, strict=True) if g is None]
+        bent = [g[0] for g in found.given if g is not None and g[1].cost >= 0.3]
+        words += [*missing(panel, named, unnamed), *again(panel, bent)]
+        found = _better(found, deal(members, quantity, words, others))
+    unnamed = [x.trace for k, x in enumerate(group) if found is None or found.given[k] is None]
+    if search and unnamed:
+        kinds = ("diameter", "speed", "stages") if found is None else (found.kind,)
+
+        def wanted(label: Label) -> bool:
+            return any(m.kind in kinds and (m.plain or m.cost <= 0.5) for m in label.meanings)
+
+        words += along(panel, unnamed, text_height(panel), wanted)
+        found = _better(found, deal(members, quantity, words, others))
+    return found
+
+
+def _better(before: Deal | None, after: Deal | None) -> Deal | None:
+    """The deal after a second look, if it is of the same kind and names no fewer lines."""
+    if before is None or after is None:
+        return after or before
+    more = sum(g is not None for g in after.given) >= sum(g is not None for g in before.given)
+    return after if after.kind == before.kind and more else before
 
 
 def _stands_alone(line: Line, label: Label, meaning: Meaning) -> bool:

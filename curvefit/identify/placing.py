@@ -12,7 +12,7 @@ from curvefit.identify.wording import Meaning, meanings
 from curvefit.records import Panel, Trace, Word
 from curvefit.units import fold
 
-__all__ = ["Label", "Spot", "label_of", "labels_of", "spot"]
+__all__ = ["Label", "Spot", "label_of", "labels_of", "spot", "text_height"]
 
 Array = NDArray[np.float64]
 
@@ -60,22 +60,30 @@ def labels_of(panel: Panel) -> tuple[Label, ...]:
     """The words in and near the box that are no title of an axis."""
     titles = {fold(a.title) for a in panel.axes if a.title}
     width, height = panel.warp.size
+    size = text_height(panel)
     found = []
     for word in panel.words:
         label = label_of(panel, word)
         x, y = label.centre
         inside = 0 < x < width and 0 < y < height
-        near = -0.2 * width < x < 1.25 * width and -0.15 * height < y < 1.15 * height
-        if near and (inside or not _is_title(word, titles)):
+        near = -0.1 * width < x < 1.25 * width and -6 * size < y < height + size
+        if near and 0.45 < label.height / size < 2.2 and (inside or not _is_title(word, titles)):
             found.append(label)
     return tuple(found)
+
+
+def text_height(panel: Panel) -> float:
+    """Usual height of the text of a panel [box px]: of words rather than of scraps."""
+    sure = [w for w in panel.words if len(w.text.strip()) > 2 and w.score > 0.7]
+    sizes = [w.height for w in sure or panel.words]
+    return float(np.median(sizes)) * _scale(panel) if sizes else 0.03 * panel.warp.size[1]
 
 
 def label_of(panel: Panel, word: Word) -> Label:
     """One word of a panel with its place in the straightened box and its meanings."""
     box = project(panel.warp.matrix, word.box)
     low, high = box.min(0), box.max(0)
-    size = min(word.height, word.width) * _scale(panel)
+    size = word.height * _scale(panel)
     return Label(
         word,
         (low + high) / 2,

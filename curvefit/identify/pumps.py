@@ -19,6 +19,7 @@ _PER_MINUTE = (
 _SPEED = re.compile(rf"{_NUMBER}\s?{_PER_MINUTE}", re.IGNORECASE)
 _N_SPEED = re.compile(rf"\b(?:n|speed|drehzahl|vitesse|velocit[aà]|velocidad)\s?[=:]\s?{_NUMBER}\b",
                       re.IGNORECASE)  # fmt: skip
+_CUT_SPEED = re.compile(r"(\d{3,4})\s1/$")  # the rest of "1/min" was lost
 _HERTZ = re.compile(r"\b(50|60)\s?hz\b", re.IGNORECASE)
 _POLES = re.compile(r"\b([2468])\s?-?\s?(?:poles?\b|pol(?:ig|e)\b|p[oô]les?\b|poli\b|polos\b)",
                     re.IGNORECASE)  # fmt: skip
@@ -63,10 +64,13 @@ def speed_in(text: str) -> float | None:
     >>> speed_in("n = 1450 rpm") * 60
     1450.0
     """
-    match = _SPEED.search(text) or _N_SPEED.search(text)
+    match = _SPEED.search(text) or _N_SPEED.search(text) or _CUT_SPEED.match(text.strip())
     if match is None:
         return None
-    rpm = float(re.sub(r"\D", "", match[1]))
+    number = re.sub(r"\D", "", match[1])
+    if len(number) == 5 and number.endswith("1"):  # 1450 1/min without its blank
+        number = number[:4]
+    rpm = float(number)
     if re.search(r"\dl/min", text.replace(" ", "")) and not _of_a_motor(rpm):
         return None  # litres
     return rpm / 60 if 100 <= rpm <= 30000 else None

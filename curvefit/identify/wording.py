@@ -267,9 +267,6 @@ def _inches(body: str) -> tuple[float, bool] | None:
 
 def _letters(clean: str, text: str) -> list[Meaning]:
     """A trim letter or code: names a line, and no diameter is made of it."""
-    if (
-        re.fullmatch(r"[A-HJ-MR-Z][A-Z]?\d?'?|[IVX]{1,4}|[①-⑨]", clean)
-        and quantity_named(clean) is None
-    ):
+    if re.fullmatch(r"[A-HKMNPRSXYZ][1-9]?'?|II|III|IV|[①-⑨]", clean) and not quantity_named(clean):
         return [Meaning("letter", None, "", 0.4, False, text)]
     return []
