@@ -23,11 +23,11 @@ from curvefit_cli.options import (
 )
 from curvefit_cli.show import (
     UNTRUSTED,
+    Stages,
     curve_table,
     findings_text,
     say,
     say_error,
-    stages,
     written,
 )
 
@@ -93,23 +93,24 @@ def read_to(
     from curvefit.write import write
 
     folder = out if out is not None else chart.with_name(f"{chart.name}.curvefit")
-    inputs = [chart]
 
     def notes_of(loaded: Page) -> Notes:
         return _notes(loaded, chart, folder, notes, page is not None, quiet)
 
-    worst = 0
+    worst, done = 0, 0
     try:
-        with stages(len(STAGES), quiet, chart.name) as progress:
+        with Stages(len(STAGES) + 1, quiet, chart.name) as progress:
             readings = read_document(chart, notes_of, page=page, progress=progress)
             for reading, stem in _named(readings, chart.stem, page):
                 reading, code = _judged(reading, strict)
-                paths = write(reading, folder, stem, units=units, points=points, inputs=inputs)
+                progress("write")
+                paths = write(reading, folder, stem, units=units, points=points, inputs=[chart])
+                progress.clear()
                 _report(reading, paths, units, strict, quiet)
-                worst = max(worst, code)
+                worst, done = max(worst, code), done + 1
     except ChartError as error:
         if error.exit_code == UNTRUSTED and error.partial is not None:
-            _write_partial(error, chart, folder, page)
+            _write_partial(error, chart, folder, page is not None or done > 0)
         raise
     return worst
 
@@ -118,16 +119,23 @@ def _named(
     readings: Iterator[Reading], stem: str, page: int | None
 ) -> Iterator[tuple[Reading, str]]:
     """Readings with the stem of their files: STEM.pN where a document has several charts pages."""
-    first = next(readings, None)
-    second = next(readings, None)
-    if first is None:
-        return
-    several = second is not None or (page is not None and first.page.pages > 1)
-    yield first, f"{stem}.p{first.page.number}" if several else stem
-    if second is not None:
-        yield second, f"{stem}.p{second.page.number}"
-    for reading in readings:
-        yield reading, f"{stem}.p{reading.page.number}"
+    from curvefit.errors import ChartError
+
+    held: Reading | None = None
+    several, failed = False, None
+    try:
+        for reading in readings:
+            if held is not None:
+                several = True
+                yield held, f"{stem}.p{held.page.number}"
+            held = reading
+    except ChartError as error:  # what was read before is not lost
+        failed = error
+    if held is not None:
+        several = several or (page is not None and held.page.pages > 1)
+        yield held, f"{stem}.p{held.page.number}" if several else stem
+    if failed is not None:
+        raise failed
 
 
 def _notes(
@@ -205,7 +213,7 @@ def first_place(reading: Reading) -> str:
     return str(Location(file=reading.page.file, page=reading.page.number))
 
 
-def _write_partial(error: ChartError, chart: Path, folder: Path, page: int | None) -> None:
+def _write_partial(error: ChartError, chart: Path, folder: Path, named: bool) -> None:
     """Writes what was read before an error, with the error among its findings."""
     from curvefit.errors import ChartError
     from curvefit.records import Finding, Reading
@@ -217,8 +225,8 @@ def _write_partial(error: ChartError, chart: Path, folder: Path, page: int | Non
     code = "chart.none" if type(error).__name__ == "NoChart" else "chart.unreadable"
     finding = Finding("error", code, error.what, error.where, error.remedy)
     partial = replace(partial, findings=(finding, *partial.findings))
-    named = page is not None and partial.page.pages > 1
-    stem = f"{chart.stem}.p{partial.page.number}" if named else chart.stem
+    several = named and partial.page.pages > 1
+    stem = f"{chart.stem}.p{partial.page.number}" if several else chart.stem
     try:
         write(partial, folder, stem, inputs=[chart])
     except ChartError as failed:

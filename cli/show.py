@@ -4,8 +4,7 @@ from __future__ import annotations
 
 import sys
 import textwrap
-from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
-from contextlib import contextmanager
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TextIO
 
@@ -14,13 +13,13 @@ if TYPE_CHECKING:
     from curvefit.records import Finding, Reading
 
 __all__ = [
+    "Stages",
     "curve_table",
     "ended",
     "findings_text",
     "quantity_text",
     "say",
     "say_error",
-    "stages",
     "table",
     "written",
 ]
@@ -178,23 +177,36 @@ def written(paths: Sequence[Path]) -> str:
     )
 
 
-@contextmanager
-def stages(total: int, quiet: bool, what: str = "") -> Iterator[Callable[[str], None]]:
-    """A function that shows on a terminal which stage is under way, and is silent in a pipe."""
-    if quiet or not sys.stderr.isatty():
-        yield lambda name: None
-        return
-    from tqdm import tqdm
+class Stages:
+    """Shows on a terminal which stage is under way; silent in a pipe and when quiet.
 
-    form = "{desc:<24} |{bar:24}| {elapsed}"
-    with tqdm(total=total, bar_format=form, leave=False, file=sys.stderr) as bar:
-        begun = 0
+    Called with the name of each stage as it begins; used in a `with` block.
+    """
 
-        def begin(name: str) -> None:
-            nonlocal begun
-            bar.set_description_str(f"{what} {name}".strip(), refresh=False)
-            bar.n = begun % total
-            begun += 1
-            bar.refresh()
+    def __init__(self, total: int, quiet: bool, what: str = "") -> None:
+        self.total, self.what, self.begun = total, what, 0
+        self.bar: Any = None
+        if not quiet and sys.stderr.isatty():
+            from tqdm import tqdm
 
-        yield begin
+            form = "{desc:<28} |{bar:24}| {elapsed}"
+            self.bar = tqdm(total=total, bar_format=form, leave=False, file=sys.stderr)
+
+    def __enter__(self) -> Stages:
+        return self
+
+    def __exit__(self, *error: object) -> None:
+        if self.bar is not None:
+            self.bar.close()
+
+    def __call__(self, name: str) -> None:
+        if self.bar is not None:
+            self.bar.set_description_str(f"{self.what} {name}".strip(), refresh=False)
+            self.bar.n = self.begun % self.total
+            self.bar.refresh()
+        self.begun += 1
+
+    def clear(self) -> None:
+        """Takes the bar off the terminal, so that something can be printed."""
+        if self.bar is not None:
+            self.bar.clear()

@@ -134,6 +134,38 @@ def test_several_chart_pages_get_names_of_their_own(curvefit, reads, chart, made
     }
 
 
+def test_pages_read_before_an_error_are_not_lost(curvefit, reads, chart, made_reading):
+    one = made_reading()
+    first, second = (replace(one, page=replace(one.page, number=n, pages=5)) for n in (2, 3))
+    error = NoChart("no numbers", Location(page=4))
+    error.partial = Reading(replace(one.page, number=4, pages=5))
+    reads(first, second, error)
+    assert curvefit("read", chart)[0] == 4
+    names = {p.name for p in (chart.parent / "my chart.png.curvefit").glob("*.curves.json")}
+    assert names == {f"my chart.p{n}.curves.json" for n in (2, 3, 4)}
+
+
+def test_progress_names_the_stage_on_a_terminal_and_nothing_in_a_pipe(monkeypatch, capsys):
+    import sys
+
+    from curvefit_cli.show import Stages
+
+    with Stages(2, False, "a.png") as piped:
+        piped("load")
+    assert capsys.readouterr().err == ""
+    monkeypatch.setattr(sys.stderr, "isatty", lambda: True, raising=False)
+    with Stages(2, False, "a.png") as shown:
+        shown("load")
+        shown("calibrate")
+        shown.clear()
+    said = capsys.readouterr().err
+    assert "a.png load" in said
+    assert "a.png calibrate" in said
+    with Stages(2, True) as quiet:
+        quiet("load")
+    assert capsys.readouterr().err == ""
+
+
 def test_one_chart_page_of_several_keeps_the_plain_name(curvefit, reads, chart, made_reading):
     one = made_reading()
     reads(replace(one, page=replace(one.page, number=3, pages=5)))
