@@ -23,6 +23,9 @@ def fit(
 ) -> tuple[Fit, ...]:
     """The fits of all curves that are functions of flow, in their order; iso lines are skipped.
 
+    After them come the efficiencies that lines of equal efficiency give on the head curves of a
+    hill chart; their curve records are made here, of the crossings.
+
     `derived` holds best efficiency point, shut-off head and specific speeds where the curves and
     `pumps` (speed, stages, suction sides) tell them.
 
@@ -31,8 +34,26 @@ def fit(
     """
     from curvefit.fit.derived import derive
 
+    curves = tuple(curves)
     fits = tuple(fit_curve(c, choice, settings, rng) for c in curves if not c.iso)
-    return derive(fits, pumps)
+    return derive(fits + _from_hills(curves, choice, settings), pumps)
+
+
+def _from_hills(
+    curves: tuple[Curve, ...], choice: Choice | None, settings: Settings | None
+) -> tuple[Fit, ...]:
+    """Efficiencies from lines of equal efficiency, for pumps that have no efficiency curve."""
+    if not any(c.quantity == "iso_efficiency" for c in curves):
+        return ()
+    from curvefit.fit.hill import efficiency_on_heads
+
+    has_own = {c.pump for c in curves if c.quantity == "efficiency"}
+    names = dict.fromkeys(c.pump for c in curves if c.pump not in has_own)
+    return tuple(
+        f
+        for name in names
+        for f in efficiency_on_heads([c for c in curves if c.pump == name], choice, settings)
+    )
 
 
 def fit_curve(
