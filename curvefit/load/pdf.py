@@ -185,11 +185,13 @@ def _stored(view: _View, image: Any) -> Answer | None:
     low = max(round(x0), 0), max(round(y0), 0)
     cut = *low, min(round(x1), image.size[0]), min(round(y1), image.size[1])
     part = samples.crop(cut)
-    reduced = max(min(part.size) // 200, 1)
-    k = kx / reduced
+    k = kx / max(min(part.size) // 200, 1)
     size = max(round(view.width * k), 1), max(round(view.height * k), 1)
     seen = Image.frombuffer("RGB", size, view.pixels(k, size), "raw", "BGR", 0, 1)
-    area = tuple(round(v / reduced) for v in (cut[0] - x0, cut[1] - y0, cut[2] - x0, cut[3] - y0))
+    area = tuple(
+        round((v - begin) / per_point * k)
+        for v, begin, per_point in zip(cut, (x0, y0, x0, y0), (kx, ky, kx, ky), strict=True)
+    )
     seen = seen.crop(area)
     small = part.convert("RGB").resize(seen.size, Image.Resampling.BOX)
     difference = ImageStat.Stat(ImageChops.difference(seen, small)).mean
