@@ -24,12 +24,13 @@ def settled(layer: Layer, line: Line, longest: float, kinked: bool = False) -> L
     longest : how far the line may be carried on over one gap [px].
     kinked : whether sharp turns are allowed.
     """
-    for _ in range(4):
+    for _ in range(6):
         gap = _usual_gap(line)
-        reach = min(max(24.0 + 3 * line.width, 1.7 * gap + 8), longest)
-        memory = max(60.0, 3.0 * gap)
+        memory = float(np.clip(0.2 * len(line.xy), max(60.0, 3.0 * gap), 160.0))
+        least = max(24.0 + 3 * line.width, 1.7 * gap + 8, 0.5 * longest)
+        reach = min(max(least, 30 + _hidden_beyond(layer, line, longest, memory)), longest)
         rough = _extended(line.xy, reach, memory)
-        longer = centred(layer.lines, layer.known, rough, line.width, slack=1.5)
+        longer = centred(layer.lines, layer.known, rough, line.width)
         if not kinked:
             longer = trimmed(longer, *_smoothest(longer))
         first, last = _supported(longer)
@@ -41,6 +42,20 @@ def settled(layer: Layer, line: Line, longest: float, kinked: bool = False) -> L
         if max(grown) < 0.4 * reach:
             break
     return line
+
+
+def _hidden_beyond(layer: Layer, line: Line, longest: float, memory: float) -> int:
+    """How far beyond its ends the line would run through what cannot be seen (a label) [px]."""
+    most = 0
+    for xy in (line.xy, line.xy[::-1]):
+        at = np.round(_carry(xy, longest, memory)).astype(int)
+        rows, cols = layer.known.shape
+        inside = (at[:, 0] >= 0) & (at[:, 1] >= 0) & (at[:, 0] < cols) & (at[:, 1] < rows)
+        hidden = np.nonzero(layer.known[at[inside, 1], at[inside, 0]] < 0.5)[0]
+        if len(hidden) and hidden[0] < 12:
+            breaks = np.nonzero(np.diff(hidden) > 12)[0]
+            most = max(most, int(hidden[breaks[0]] if len(breaks) else hidden[-1]))
+    return most
 
 
 def _usual_gap(line: Line) -> float:
@@ -93,8 +108,8 @@ def _supported(line: Line) -> tuple[int, int]:
     duty = float((clean | solid)[inside[0] : inside[-1] + 1].mean())
     theta = 0.28 * duty
     gain = np.where(clean, 1.0 - theta, np.where(solid, 0.15, -theta))
-    hidden = (line.known < 0.5) & ~clean
-    gain = np.where(hidden, np.where(line.ink > 0.45, 0.02, -0.02), gain)
+    hidden = (line.known < 0.6) & ~clean
+    gain = np.where(hidden, np.where(line.ink > 0.45, 0.05, -0.02), gain)
     total = np.r_[0.0, np.cumsum(gain)]
     lowest = np.minimum.accumulate(total)
     last = int((total - lowest).argmax())
@@ -105,24 +120,27 @@ def _supported(line: Line) -> tuple[int, int]:
     return first + int(shown[0]), first + int(shown[-1])
 
 
-def _smoothest(line: Line, sharp: float = 0.4) -> tuple[int, int]:
+def _smoothest(line: Line, sharp: float = 0.3) -> tuple[int, int]:
     """First and last index of the longest stretch without a kink.
 
-    Where the direction of some strokes' length before a place and after it differ by more than
-    `sharp` [rad], two lines were taken for one.
+    Where the direction turns by `sharp` [rad] more than it does a little before and after, two
+    lines were taken for one.
     """
-    n, reach = len(line.xy), int(max(4 * line.width, 14))
+    n, reach = len(line.xy), int(max(6 * line.width, 24))
     if n < 4 * reach:
         return 0, n - 1
     before = line.xy[reach:-reach] - line.xy[: -2 * reach]
     after = line.xy[2 * reach :] - line.xy[reach:-reach]
     cross = before[:, 0] * after[:, 1] - before[:, 1] * after[:, 0]
-    turn = np.abs(np.arctan2(cross, (before * after).sum(1)))
-    kinks, bound = [0], turn.copy()
-    while bound.max() > sharp:
-        k = int(bound.argmax())
+    turn = np.arctan2(cross, (before * after).sum(1))
+    far = int(1.5 * reach)
+    padded = np.pad(turn, far, mode="edge")
+    excess = np.abs(turn - 0.5 * (padded[: -2 * far] + padded[2 * far :]))
+    kinks = [0]
+    while excess.max() > sharp:
+        k = int(excess.argmax())
         kinks.append(k + reach)
-        bound[max(k - 2 * reach, 0) : k + 2 * reach] = 0
+        excess[max(k - 2 * reach, 0) : k + 2 * reach] = 0
     cuts = [*sorted(kinks), n - 1]
     ink = [float(line.good[a:b].sum()) for a, b in pairwise(cuts)]
     best = int(np.argmax(ink))

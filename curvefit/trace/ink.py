@@ -30,7 +30,11 @@ class Flat:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Layer:
-    """One ink of the drawing, (rows, cols) each: all, all but letters, and what is visible."""
+    """One ink of the drawing, arrays of shape (rows, cols).
+
+    ink : all of it, letters weakened; lines : without letters and markers;
+    known : 0 where something hides whether there is ink, 1 where it is plain to see.
+    """
 
     ink: Image
     lines: Image

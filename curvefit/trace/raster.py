@@ -50,8 +50,8 @@ def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
     flat = straightened(panel)
     inked = without_lines(flat.dark, MARGIN)
     width = stroke_width(inked.ink, 0.02 * panel.warp.size[0])
-    letters = lettering(panel, inked.ink, width)
     blots = markers(inked.ink, width)
+    letters = lettering(panel, np.where(blots | (inked.known < 0.6), 0, inked.ink), width)
     least = 0.6 * tolerances.shortest * panel.warp.size[0]
 
     def frame(line: Line) -> bool:
@@ -88,7 +88,8 @@ def _layer(flat: Flat, inked: Inked, member: Image, letters: Mask, blots: Mask) 
     known = np.where(spread(letters), 0.3 * known, known)
     known = np.where(blots, 0.0, known).astype(np.float32)
     lines = np.where(letters | blots, 0.0, own).astype(np.float32)
-    return Layer(own.astype(np.float32), lines, known)
+    weak = np.where(letters, 0.3 * own, own).astype(np.float32)
+    return Layer(weak, lines, known)
 
 
 def _follow(layer: Layer, width: float, settings: Settings) -> list[Line]:
@@ -100,22 +101,20 @@ def _follow(layer: Layer, width: float, settings: Settings) -> list[Line]:
         k = 1.5
     size = (max(round(cols * k), 16), max(round(rows * k), 16))
     how = cv2.INTER_AREA if k < 1 else cv2.INTER_LINEAR
-    seen = 0.3 * layer.ink + 0.7 * layer.lines
-    small = cv2.resize(seen, size, interpolation=how)
+    small = cv2.resize(layer.ink, size, interpolation=how)
     known = cv2.resize(layer.known, size, interpolation=how)
-    reward = across(small, known, settings.tracking)
     scale = np.array([cols / size[0], rows / size[1]])
     lines: list[Line] = []
     for _ in range(settings.at_most):
-        track = best_track(reward, settings.tracking)
+        track = best_track(across(small, known, settings.tracking), settings.tracking)
         if track is None or track.score < settings.shortest * size[0]:
             break
         line, own = _refined(without(layer, lines), track, scale, width)
         if line is None:
-            peel(reward, track.x, track.y, 0.5 * own * k + 0.3)
+            peel(small, known, track.x, track.y, 0.5 * own * k + 0.3)
             continue
         x, y = ((line.xy + 0.5) / scale - 0.5).T
-        peel(reward, x, y, 0.5 * own * k + 0.3)
+        peel(small, known, x, y, 0.5 * own * k + 0.3)
         lines.append(line)
     return lines
 

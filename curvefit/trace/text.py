@@ -25,6 +25,8 @@ def lettering(panel: Panel, ink: Image, width: float) -> NDArray[np.bool_]:
     import cv2
 
     mask = (ink > 0.3).astype(np.uint8)
+    edge = MARGIN + 4  # what stands in the frame's own ticks is no letter
+    mask[:edge], mask[-edge:], mask[:, :edge], mask[:, -edge:] = 0, 0, 0, 0
     count, labels, stats, _ = cv2.connectedComponentsWithStats(mask, connectivity=8)
     largest = 0.045 * max(panel.warp.size) + 6 * width
     small = np.maximum(stats[:, cv2.CC_STAT_WIDTH], stats[:, cv2.CC_STAT_HEIGHT]) < largest
@@ -46,7 +48,9 @@ def _compact(shape: NDArray[np.bool_], area: int, width: float) -> bool:
     points = np.argwhere(shape)[:, ::-1].astype(np.float32)
     (_, size, _) = cv2.minAreaRect(points)
     short, long = sorted((size[0] + 1.0, size[1] + 1.0))
-    return bool(short > 1.9 * width + 1.0 and area < 0.78 * short * long)
+    fill = area / (short * long)
+    dash = long > 2.2 * short and fill > 0.5
+    return bool(short > 1.9 * width + 1.0 and fill < 0.78 and not dash)
 
 
 def _word_mask(panel: Panel, shape: tuple[int, ...]) -> NDArray[np.uint8]:
@@ -88,14 +92,14 @@ def markers(ink: Image, width: float) -> NDArray[np.bool_]:
 
     Notes
     -----
-    Small round holes are filled; what survives an opening by a disc 2.2 strokes wide and is as
+    Small round holes are filled; what survives an opening by a disc 1.8 strokes wide and is as
     tall as it is broad is a marker. Where lines run together the blot is long, and stays.
     """
     import cv2
 
     mask = (ink > 0.4).astype(np.uint8)
     mask = _holes_filled(mask, width)
-    size = round(2.2 * width + 1) | 1
+    size = round(1.8 * width + 1) | 1
     disc = cv2.getStructuringElement(cv2.MORPH_ELLIPSE, (size, size))
     blots = cv2.morphologyEx(mask, cv2.MORPH_OPEN, disc)
     _, labels, stats, _ = cv2.connectedComponentsWithStats(blots, connectivity=8)

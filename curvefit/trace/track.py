@@ -123,9 +123,9 @@ def _came_from(value: Image, i: int, tracking: Tracking) -> tuple[float, int]:
     return max((float(value[j]) - tracking.bend[abs(j - i)], j) for j in near)
 
 
-def peel(reward: Image, xs: Array, ys: Array, half: float, worth: float = 0.0) -> None:
-    """Take a line's ink out of the reward map, in place: it is worth `worth` a pixel."""
-    rows, cols = reward.shape
+def peel(ink: Image, known: Image, xs: Array, ys: Array, half: float) -> None:
+    """Take a line's ink out of the maps, in place: it is neither ink nor blank any more."""
+    rows, cols = ink.shape
     x = np.arange(max(int(np.ceil(xs.min())), 0), min(int(xs.max()) + 1, cols))
     order = np.argsort(xs, kind="stable")
     y = np.interp(x, xs[order], ys[order])
@@ -134,4 +134,5 @@ def peel(reward: Image, xs: Array, ys: Array, half: float, worth: float = 0.0) -
     for k in range(-int(tall.max()) - 1, int(tall.max()) + 2):
         at = np.round(y).astype(int) + k
         ok = (np.abs(at - y) <= tall) & (at >= 0) & (at < rows)
-        reward[at[ok], x[ok]] = np.minimum(reward[at[ok], x[ok]], worth)
+        ink[at[ok], x[ok]] = 0.0
+        known[at[ok], x[ok]] = 0.0
