@@ -15,7 +15,7 @@ import numpy as np
 
 from curvefit.errors import ChartError, NoChart
 from curvefit.notes import CurveNotes, Notes
-from curvefit.records import Curve, Finding, Fit, Page, Panel, Reading, Trace
+from curvefit.records import Curve, Finding, Fit, Page, Panel, Pump, Reading, Trace
 
 __all__ = ["STAGES", "read_chart", "read_document"]
 
@@ -102,7 +102,6 @@ def read_page(
     """The Reading of one loaded page; see :func:`read_chart`."""
     from curvefit.calibrate import calibrate
     from curvefit.check import check
-    from curvefit.fit import fit
     from curvefit.identify import identify
 
     given = notes(page) if callable(notes) else notes or Notes()
@@ -121,7 +120,7 @@ def read_page(
         done = replace(done, curves=curves, pumps=pumps)
         done = replace(done, findings=_gathered(page, panels, traces, curves) + said)
         with _stage("fit", seconds, progress):
-            fits = _fits(curves, before, fit)
+            fits = _fits(curves, pumps, before)
         with _stage("check", seconds, progress):
             checked = check(curves, fits, pumps)
     except ChartError as error:
@@ -177,19 +176,18 @@ def _shaping(curves: tuple[CurveNotes, ...]) -> list[tuple[object, ...]]:
 
 
 def _fits(
-    curves: tuple[Curve, ...],
-    before: Reading | None,
-    fit: Callable[[tuple[Curve, ...]], tuple[Fit, ...]],
+    curves: tuple[Curve, ...], pumps: tuple[Pump, ...], before: Reading | None
 ) -> tuple[Fit, ...]:
-    """Fits of all curves; those of a previous reading for curves whose points did not change."""
-    kept = {}
-    for old in before.fits if before is not None else ():
-        for curve in curves:
-            if len(old.curves) == 1 and _same_points(old.curve, curve):
-                kept[curve.name] = replace(old, name=old.name, curves=(curve,))
-    new = {f.curve.name: f for f in fit(tuple(c for c in curves if c.name not in kept))}
-    merged = kept | new
-    return tuple(merged[c.name] for c in curves if c.name in merged)
+    """Fits of all curves; those of a previous reading where no curve and no pump changed."""
+    from curvefit.fit import fit
+
+    if before is not None and before.pumps == pumps and len(before.curves) == len(curves):
+        same = dict(zip(before.curves, curves, strict=True))
+        if all(_same_points(old, new) for old, new in same.items()):
+            return tuple(
+                replace(f, curves=tuple(same.get(c, c) for c in f.curves)) for f in before.fits
+            )
+    return fit(curves, pumps=pumps)
 
 
 def _same_points(a: Curve, b: Curve) -> bool:
