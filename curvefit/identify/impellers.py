@@ -82,7 +82,8 @@ def _pairs(
     if by_look:
         cost += [[0.05 * (not _same_look(a, b)) for a in base] for b in group]
     rows, columns = linear_sum_assignment(cost)
-    if bool((gaps[rows, columns] < settings.flow).all()) and (
+    seen = np.array([[_end_gap(a, b, span, 0.0) for a in base] for b in group])
+    if bool((seen[rows, columns] < settings.flow).all()) and (
         by_look or _telling(base, span, settings)
     ):
         return [(group[i], int(k)) for i, k in zip(rows, columns, strict=True)], True
@@ -95,11 +96,12 @@ def _pairs(
     return [(group[i], k) for i, k in zip(own, first, strict=True)], False
 
 
-def _end_gap(a: Line, b: Line, span: float) -> float:
+def _end_gap(a: Line, b: Line, span: float, cut: float = 0.2) -> float:
+    """How far the ends of two lines are apart; weight `cut` where the box cut one of them."""
     first = abs(float(a.values.flow[0] - b.values.flow[0]))
     last = float(a.values.flow[-1] - b.values.flow[-1])
     if (last < 0 and _cut_off(a)) or (last > 0 and _cut_off(b)):
-        last *= 0.2  # the side of the box cut the line short: its true end is not known
+        last *= cut  # its true end is not known
     return (0.5 * first + abs(last)) / span
 
 

@@ -93,7 +93,7 @@ def _levels_at(
         for trace in traces
         for end in (0, -1)
         for place in places
-        for size in ((1.4, 0.65), (1.8, 0.8))
+        for size in ((1.6, 0.72),)
     ]
     crops = [(place, box, _crop(panel.page, box)) for place, box in wanted]
     kept = [(place, box, crop) for place, box, crop in crops if crop is not None]
@@ -111,7 +111,7 @@ def _levels_at(
 def along(
     panel: Panel, traces: Sequence[Trace], height: float, wanted: Callable[[Label], bool]
 ) -> tuple[Label, ...]:
-    """Labels read behind the ends of lines and along them, above and below.
+    """Labels read behind the ends of lines and along them: above, in and below them.
 
     Parameters
     ----------
@@ -125,7 +125,7 @@ def along(
     if panel.page.vector or not traces:
         return ()
     every: list[Label] = []
-    for place in (_behind, _before, _above, _below):
+    for place in (_behind, _before, _above, _over, _below):
         found = []
         for trace in traces:
             strips = place(panel, trace, height)
@@ -156,6 +156,10 @@ def _level_strip(panel: Panel, centre: Array, height: float) -> list[_Strip]:
 
 def _above(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
     return _beside(panel, trace, height, -0.9)
+
+
+def _over(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
+    return _beside(panel, trace, height, 0.0)
 
 
 def _below(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
