@@ -23,6 +23,7 @@ Side = Literal["bottom", "top", "left", "right"]
 SIDES: tuple[Side, ...] = ("bottom", "top", "left", "right")
 Kind = Literal["grid", "inside", "outside", "end"]
 Places = Callable[[Array], Array]
+FEW = 4  #: so few numbers in the text layer are not the numbers of the scales
 
 
 @dataclass(frozen=True, slots=True)
@@ -76,39 +77,61 @@ def gather(
     -------
     tuple of Evidence
         Boxes of tables may be among them: they get no scales later. Where the letters are drawn
-        as outlines `words` is empty and a finding says so. No boxes at all: the chart is not
-        drawn in lines that run along the page, or not in lines.
+        as shapes the words are read from their picture and a finding says so. No boxes at all:
+        the chart is not drawn in lines that run along the page, or not in lines.
     """
     s = settings or Settings()
+    if sum(any(c.isdigit() for c in w.text) for w in page.words) < FEW:
+        return _read_from_pixels(page, page_notes, panel_notes, s)
+    return _exact(page, page_notes, panel_notes, s)
+
+
+def _exact(
+    page: Page, page_notes: PageNotes, panel_notes: tuple[PanelNotes, ...], s: Settings
+) -> tuple[Evidence, ...]:
     turn = page_notes.turn if page_notes.turn is not None else _turn(page.words)
     frame, size = _upright(turn, page.size)
     across, upright = rules_of(page.strokes, frame)
     words = [replace(w, box=_moved(frame, w.box)) for w in page.words]
     boxes = boxes_of(across, upright, _areas(page, frame), words, size)
     back = np.linalg.inv(frame)
-    evidence = []
+    evidence: list[Evidence] = []
     for box, corners in _with_given(boxes, panel_notes, frame):
         warp = _warp(_moved(back, corners), corners)
         others = [b for b in boxes if b is not box]
         rows = _tick_rows(across, upright, box, corners, others, s)
-        evidence.append(
-            Evidence(
-                _moved(back, corners), warp, turn, rows, page.words, None, True, _said(page.words)
-            )
-        )
+        placed = _moved(back, corners)
+        evidence.append(Evidence(placed, warp, turn, rows, page.words, exact=True))
     return tuple(evidence)
 
 
-def _said(words: tuple[Word, ...]) -> tuple[Finding, ...]:
-    if words:
+def _read_from_pixels(
+    page: Page, page_notes: PageNotes, panel_notes: tuple[PanelNotes, ...], s: Settings
+) -> tuple[Evidence, ...]:
+    """Exact boxes and ticks, with words read from the picture: the lettering is drawn as shapes."""
+    from curvefit.calibrate.pixels import gather as gather_pixels
+
+    seen = gather_pixels(page, page_notes, panel_notes)
+    if not seen:
         return ()
-    return (
-        Finding(
-            "info",
-            "page.no-text",
-            "the page's lettering is drawn as shapes: its words are read from their picture.",
-        ),
+    turned = replace(page_notes, turn=seen[0].turn)
+    lettered = replace(page, words=page.words + _others(seen[0].words, page.words))
+    said = Finding(
+        "info",
+        "page.no-text",
+        "the page's lettering is drawn as shapes: its words were read from their picture.",
     )
+    exact = _exact(lettered, turned, panel_notes, s)
+    return tuple(replace(e, look=seen[0].look, findings=(said,)) for e in exact)
+
+
+def _others(words: tuple[Word, ...], known: tuple[Word, ...]) -> tuple[Word, ...]:
+    """The words that do not stand where a known one does."""
+    if not known:
+        return words
+    low = np.array([w.box.min(0) for w in known]) - 3
+    high = np.array([w.box.max(0) for w in known]) + 3
+    return tuple(w for w in words if not ((w.centre > low) & (w.centre < high)).all(1).any())
 
 
 def _turn(words: tuple[Word, ...]) -> int:

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from curvefit.notes import CurveNotes
 from curvefit.records import BRIDGED, Panel, Stroke, Trace
 from curvefit.trace.strokes_chains import Chain, Piece, joined
+from curvefit.trace.strokes_outline import middle_line
 from curvefit.trace.strokes_smooth import smooth
 
 __all__ = ["Settings", "has_curves", "trace_strokes"]
@@ -72,15 +73,20 @@ def _pieces(panel: Panel, s: Settings) -> Iterator[Piece]:
     width, height = panel.warp.size
     low, high = panel.corners.min(0) - 2, panel.corners.max(0) + 2
     for stroke in panel.page.strokes:
-        if stroke.fill or min(stroke.colour) > s.pale:
+        if min(stroke.colour) > s.pale:
             continue
         if (stroke.xy.max(0) < low).any() or (stroke.xy.min(0) > high).any():
             continue
-        xy = panel.warp.to_panel(stroke.xy)
+        xy, thick = panel.warp.to_panel(stroke.xy), stroke.width
+        if stroke.fill:
+            line = middle_line(xy)
+            if line is None:
+                continue
+            xy, thick = line
         if _is_rule(xy, stroke, (width, height)):
             continue
         for part in _clipped(xy, (width, height), s.edge):
-            yield Piece(part, stroke.width, stroke.colour, stroke.dash)
+            yield Piece(part, thick, stroke.colour, stroke.dash)
 
 
 def _is_rule(xy: Array, stroke: Stroke, size: tuple[float, float]) -> bool:
