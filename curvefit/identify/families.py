@@ -149,7 +149,7 @@ def _chain(
     for i in range(len(ranked)):
         row = []
         for j in holding:
-            plain = any(m.plain for m in labels[j].means(kind))
+            plain = kind == "letter" or any(m.plain for m in labels[j].means(kind))
             near = _placing(spots[i, j], stand, elsewhere[j], plain, settings)
             if near is None:
                 continue
@@ -209,7 +209,7 @@ def _placing(
 ) -> float | None:
     """Cost of a label for a line by where it stands; None where it is out of reach."""
     near = min(seen.gap, seen.start, seen.end)
-    far = settings.far if plain else 2.5 * settings.far  # a bare number may be anything
+    far = settings.far if plain else 1.6 * settings.far  # a bare number may be anything
     if near > settings.reach or elsewhere < near - 1.0 or (elsewhere < 0.3 and near > 1.0):
         return None
     cost = far * max(near - 0.3, 0.0)
