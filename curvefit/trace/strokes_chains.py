@@ -79,28 +79,14 @@ def joined(pieces: Sequence[Piece], words: Array) -> list[Chain]:
 
 
 def _chains(pieces: list[Piece], words: Array) -> list[Chain]:
-    if len(pieces) == 1:
-        return [_chain([(pieces[0], False)], words)]
     ends = [e for i, p in enumerate(pieces) for e in _ends(i, p)]
     lengths = np.array([p.length for p in pieces])
     links = _links(ends, lengths, words)
     mate: dict[int, int] = {}
-    parent = list(range(len(pieces)))
-
-    def root(i: int) -> int:
-        while parent[i] != i:
-            parent[i] = parent[parent[i]]
-            i = parent[i]
-        return i
-
     for _, a, b in sorted(links):
         if a in mate or b in mate:
             continue
-        ra, rb = root(ends[a].piece), root(ends[b].piece)
-        if ra == rb:
-            continue  # a ring is closed where its ends touch, by who looks at the chain
         mate[a], mate[b] = b, a
-        parent[ra] = rb
     return _walked(pieces, mate, words)
 
 
@@ -130,18 +116,17 @@ def _links(ends: list[End], lengths: Array, words: Array) -> list[tuple[float, i
         near = tree.query_pairs(longest, output_type="ndarray")
     found = []
     for a, b in near.tolist():
-        if ends[a].piece == ends[b].piece:
-            continue
+        same = ends[a].piece == ends[b].piece  # a ring that a label interrupts
         gap = at[b] - at[a]
         size = float(np.hypot(*gap))
         turn = _degrees(ahead[a], -ahead[b])
         if size <= TOUCH:
-            if turn < CORNER:
+            if turn < CORNER and not same:
                 found.append((turn / 90, a, b))
             continue
         la, lb = lengths[ends[a].piece], lengths[ends[b].piece]
         lean = max(_degrees(ahead[a], gap / size), _degrees(-ahead[b], gap / size))
-        dashes = size < min(DASH_GAP * min(la, lb) + 4.0, LONGEST_GAP)
+        dashes = not same and size < min(DASH_GAP * min(la, lb) + 4.0, LONGEST_GAP)
         label = min(la, lb) > 1.5 * size and _word_in(words, at[a], at[b])
         if (dashes or label) and turn < BENT and lean < 0.8 * BENT:
             found.append((0.1 + size / 40 + lean / 15, a, b))
@@ -179,6 +164,7 @@ def _walked(pieces: list[Piece], mate: dict[int, int], words: Array) -> list[Cha
                 break
             seen.add(other // 2)
             end = other ^ 1
+        begin = end
         order: list[tuple[Piece, bool]] = []
         while True:
             i, backwards = end // 2, bool(end % 2)
@@ -188,11 +174,11 @@ def _walked(pieces: list[Piece], mate: dict[int, int], words: Array) -> list[Cha
             if out not in mate or mate[out] // 2 not in left:
                 break
             end = mate[out]
-        chains.append(_chain(order, words))
+        chains.append(_chain(order, words, ring=mate.get(out) == begin))
     return chains
 
 
-def _chain(order: list[tuple[Piece, bool]], words: Array) -> Chain:
+def _chain(order: list[tuple[Piece, bool]], words: Array, ring: bool) -> Chain:
     parts: list[Array] = []
     bridged: list[NDArray[np.bool_]] = []
     gaps: list[tuple[float, float]] = []
@@ -211,5 +197,9 @@ def _chain(order: list[tuple[Piece, bool]], words: Array) -> Chain:
         total += piece.length
         parts.append(xy)
         bridged.append(empty)
+    if ring:
+        first, last = parts[0][0], parts[-1][-1]
+        parts.append(first[None])
+        bridged.append(np.array([_word_in(words, last, first)]))
     largest = max((p for p, _ in order), key=lambda p: p.length)
     return Chain(np.concatenate(parts), largest, len(order), gaps, np.concatenate(bridged))
