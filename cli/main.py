@@ -7,6 +7,7 @@ import sys
 import typer
 from curvefit_cli.demo import demo
 from curvefit_cli.duty import duty
+from curvefit_cli.fit import fit
 from curvefit_cli.read import read
 from curvefit_cli.show import ended
 from curvefit_cli.write import write
@@ -41,6 +42,7 @@ def begin(
 
 
 app.command()(read)
+app.command()(fit)
 app.command()(duty)
 app.command()(write)
 app.command()(demo)
