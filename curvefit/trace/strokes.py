@@ -3,14 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
 
+from curvefit.geometry import resample
 from curvefit.notes import CurveNotes
 from curvefit.records import BRIDGED, Panel, Stroke, Trace
+from curvefit.trace.given import REACH, with_notes
 from curvefit.trace.strokes_chains import Chain, Piece, joined
 from curvefit.trace.strokes_outline import middle_line
 from curvefit.trace.strokes_smooth import smooth
@@ -58,7 +60,34 @@ def trace_strokes(
     """
     s = settings or Settings()
     chains = sorted(_curves(panel, s), key=lambda c: (round(c.xy[:, 0].min() / 5), c.xy[0, 1]))
-    return tuple(_trace(panel, c, f"line {i}", s) for i, c in enumerate(chains, 1))
+    traces = [_trace(panel, c, f"line {i}", s) for i, c in enumerate(chains, 1)]
+
+    def follow(path: Array) -> Trace | None:
+        return _along(panel, path, s)
+
+    return with_notes(panel, traces, curve_notes, follow)
+
+
+def _along(panel: Panel, path: Array, s: Settings) -> Trace | None:
+    """The stretch of a drawn line, whatever else it may be, that runs along a path."""
+    from scipy.spatial import cKDTree
+
+    ends = resample(path, 4.0)
+    best: tuple[float, Chain] | None = None
+    for chain in joined(list(_pieces(panel, s)), _words(panel)):
+        away = cKDTree(resample(chain.xy, 2.0)).query(ends)[0]
+        if away.max() <= REACH and (best is None or away.mean() < best[0]):
+            best = float(away.mean()), chain
+    if best is None:
+        return None
+    trace = _trace(panel, best[1], "", s)
+    index = [int(np.hypot(*(trace.flat - e).T).argmin()) for e in path[[0, -1]]]
+    part = slice(min(index), max(index) + 1)
+    if max(index) - min(index) < 2:
+        return None
+    return replace(
+        trace, flat=trace.flat[part], sigma=trace.sigma[part], flags=trace.flags[part], closed=False
+    )
 
 
 def _curves(panel: Panel, s: Settings) -> list[Chain]:

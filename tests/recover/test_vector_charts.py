@@ -6,8 +6,8 @@ from vector_scene import BOTTOM, LEFT, RIGHT, TOP, K, Scene, curve_between
 
 from curvefit.calibrate.strokes import gather
 from curvefit.load import load
-from curvefit.notes import PageNotes, PanelNotes
-from curvefit.records import BRIDGED, Panel
+from curvefit.notes import CurveNotes, PageNotes, PanelNotes
+from curvefit.records import BRIDGED, GIVEN, Panel
 from curvefit.trace.strokes import has_curves, trace_strokes
 
 TENTHS = np.arange(9) / 8
@@ -289,3 +289,69 @@ def test_given_corners_are_taken_as_given(tmp_path):
     row = next(r for r in given.ticks if r.side == "bottom" and r.kind == "outside")
     x = moved[3, 0] + row.at * (moved[2, 0] - moved[3, 0])
     assert np.allclose(x, seen.corners[3, 0] + TENTHS * 320 * K, atol=0.05)
+
+
+def _path(trace, first, last, lift=0.0):
+    """Page px of a rough path along a stretch of a trace."""
+    n = len(trace.flat)
+    part = trace.flat[int(first * n) : int(last * n) : 40] + np.array([0.0, lift])
+    return tuple(map(tuple, trace.panel.warp.to_page(part)))
+
+
+def test_a_drawn_path_follows_the_line_beneath_it(tmp_path):
+    scene = Scene()
+    scene.axes("lines")
+    drawn = curve_between(0.0, 0.9)
+    scene.curve(drawn)
+    _, _, panel, (trace,) = read(scene, tmp_path)
+    note = CurveNotes(path=_path(trace, 0.2, 0.8, lift=3.0))
+    traces = trace_strokes(panel, (note,))
+    assert len(traces) == 2
+    new = traces[1]
+    assert new.by == "given"
+    w, h = panel.warp.size
+    from scipy.interpolate import CubicSpline
+
+    true = CubicSpline(drawn[:, 0], drawn[:, 1])
+    assert np.abs(1 - new.flat[:, 1] / h - true(new.flat[:, 0] / w)).max() < 5e-5
+    assert 0.15 < new.flat[0, 0] / w < 0.25
+
+
+def test_a_drawn_path_over_nothing_is_the_line_and_says_so(tmp_path):
+    scene = Scene()
+    scene.axes("lines")
+    scene.curve(curve_between(0.0, 0.9))
+    _, _, panel, (trace,) = read(scene, tmp_path)
+    corners = panel.at(np.array([0.1, 0.5]), np.array([0.1, 0.2]))
+    _, new = trace_strokes(panel, (CurveNotes(path=tuple(map(tuple, corners))),))
+    assert (new.flags == GIVEN).all()
+    assert new.sigma.min() >= 1
+    assert np.allclose(new.xy[[0, -1]], corners)
+    # instead of a stretch of a line that is named by a point on it
+    at = tuple(trace.xy[len(trace.xy) // 2])
+    lifted = _path(trace, 0.3, 0.7, lift=30.0)
+    (changed,) = trace_strokes(panel, (CurveNotes(at=at, path=lifted, whole=False),))
+    given = changed.flags == GIVEN
+    assert 0.3 < given.mean() < 0.5
+    assert (np.diff(changed.flat[:, 0]) > 0).all()
+    assert changed.name == trace.name
+    assert changed.colour == trace.colour
+    # or instead of all of it
+    (whole,) = trace_strokes(panel, (CurveNotes(at=at, path=lifted),))
+    assert (whole.flags == GIVEN).all()
+
+
+def test_a_stretch_is_left_out(tmp_path):
+    scene = Scene()
+    scene.axes("lines")
+    scene.curve(curve_between(0.0, 0.9))
+    scene.curve(curve_between(0.0, 0.8, 0.2), look="1 w 0 G")
+    _, _, panel, traces = read(scene, tmp_path)
+    at = tuple(traces[0].xy[20])
+    (x0, _), (x1, _) = panel.at(np.array([0.4, 0.6]), np.array([0.5, 0.5]))
+    box = (x0, -1e5, x1, 1e5)
+    cut, other = trace_strokes(panel, (CurveNotes(at=at, leave_out=(box,)),))
+    x = cut.flat[:, 0] / panel.warp.size[0]
+    assert not ((x > 0.4) & (x < 0.6)).any()
+    assert x.max() > 0.85 or other.flat[-1, 0] > cut.flat[-1, 0]
+    assert len(other.flat) == len(traces[1].flat)
