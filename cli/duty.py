@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from contextlib import suppress
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated, Any
 
@@ -23,7 +25,7 @@ from curvefit_cli.show import UNTRUSTED, findings_text, say, table, written
 
 if TYPE_CHECKING:
     from curvefit.duty import Duty
-    from curvefit.records import Fit, Interval
+    from curvefit.records import Curve, Fit, Interval
     from curvefit.write.reopen import CurveSet
 
 __all__ = ["duty"]
@@ -94,6 +96,8 @@ def duty(
     result = duty_of(
         fits, plant, how, draws=draws, flow_unit=units["flow"], head_unit=units["head"]
     )
+    said = tuple(f for one in fits for f in one.findings)
+    result = replace(result, findings=result.findings + said)
     about = _about(opened, fits, how)
     folder = out or curves.parent
     stem = curves.name.removesuffix(".json").removesuffix(".curves")
@@ -126,10 +130,13 @@ def _chosen(
     d = None if diameter is None else parse_quantity(diameter, "length", "mm")
     n = None if speed is None else parse_quantity(speed, "speed", "/min")
     charted = n is not None and any(same(c.speed_si, n) for c in curves)
+    if d is not None and not any(same(c.diameter_si, d) for c in curves):
+        fits = _between(opened, select(curves, pump), d)
+        return fits, _ratio(opened, fits[0].curve, n)
     kept = select(curves, pump, None, d, n if charted else None)
     if curve is not None:
-        (head,) = select(kept, curve=curve)[:1]
-        kept = tuple(c for c in kept if c.quantity != head.quantity or c is head)
+        (one,) = select(kept, curve=curve)[:1]
+        kept = tuple(c for c in kept if c.quantity != one.quantity or c is one)
     by_quantity = {q: [c for c in kept if c.quantity == q] for q in _ONE_OF_EACH}
     for quantity in ("head", "differential_pressure"):
         if len(by_quantity[quantity]) > 1:
@@ -145,15 +152,46 @@ def _chosen(
         if len(same_quantity) == 1 or (head is not None and same(c.diameter_si, head.diameter_si))
     }
     fits = [f for f in opened.fits if len(f.curves) == 1 and f.curve.name in names]
-    if n is None or charted or head is None:
-        return fits, 1.0
+    return fits, 1.0 if charted or head is None else _ratio(opened, head, n)
+
+
+def _between(opened: CurveSet, curves: Sequence[Curve], diameter_si: float) -> list[Fit]:
+    """Fits at a diameter that is not drawn, by the joint model of each quantity's curves."""
+    from curvefit.errors import ChartError, InputError
+    from curvefit.fit.family import fit_family
+    from curvefit.fit.npsh import npsh_between
+
+    fits = []
+    for quantity in ("head", "efficiency", "shaft_power"):
+        members = [c for c in curves if c.quantity == quantity and c.diameter_si is not None]
+        if len(members) > 1:
+            fits.append(fit_family(members).at(diameter_si))
+    if not any(f.curve.quantity == "head" for f in fits):
+        raise InputError(
+            f"no head curve has the diameter {diameter_si * 1e3:g} mm, and fewer than two heads "
+            "have a diameter to reckon it from",
+            remedy=listing(curves),
+        )
+    names = {c.name for c in curves}
+    own = [f for f in opened.fits if f.curve.name in names]
+    with suppress(ChartError):  # a chart without NPSHr
+        fits.append(npsh_between(own, diameter_si))
+    return fits
+
+
+def _ratio(opened: CurveSet, head: Curve, speed_si: float | None) -> float:
+    """The ratio of a speed to the chart's own."""
+    from curvefit.errors import InputError
+
+    if speed_si is None:
+        return 1.0
     of_chart = head.speed_si or getattr(opened.pump(head), "speed_si", None)
     if of_chart is None:
         raise InputError(
             "the chart's own speed is not known, so no other speed can be reckoned",
             remedy='Give it in the notes of the chart: [[pump]] speed = "2900 rpm".',
         )
-    return fits, n / of_chart
+    return float(speed_si / of_chart)
 
 
 def _wanted(
