@@ -67,7 +67,9 @@ def overlay(reading: Reading, settings: Settings | None = None) -> Picture:
     if scale != 1:
         kind = cv2.INTER_CUBIC if scale > 1 else cv2.INTER_AREA
         paper = cv2.resize(paper, None, fx=scale, fy=scale, interpolation=kind)
-    paper = cv2.addWeighted(paper, 1 - s.paper, np.full_like(paper, 255), s.paper, 0)
+    # lighter, and in 16 steps, so that the grain of a scan does not fill the file
+    lighter = np.arange(256) * (1 - s.paper) + 255 * s.paper
+    paper = cv2.LUT(paper, np.minimum(lighter // 16 * 16 + 15, 255).astype(np.uint8))
     canvas = _Canvas(paper, scale, grain, s)
     lines = _lines(reading)
     for line in lines:
@@ -93,7 +95,7 @@ def png(picture: Picture) -> bytes:
     """The picture as PNG, without metadata."""
     import cv2
 
-    flags = [cv2.IMWRITE_PNG_COMPRESSION, 3]
+    flags = [cv2.IMWRITE_PNG_COMPRESSION, 2]
     done, data = cv2.imencode(".png", cv2.cvtColor(picture, cv2.COLOR_RGB2BGR), flags)
     assert done
     return bytes(data)
