@@ -64,7 +64,9 @@ def duty_plot(result: Any, units: Mapping[str, str]) -> str:
     parts = [
         frame.axes(f"Flow [{unit(units['flow']).print}]", f"Head [{unit(units['head']).print}]"),
         frame.band(q(own), h(head - u), h(head + u)),
-        frame.band(q(flow_si)[shown], h(asked - doubt)[shown], h(asked + doubt)[shown]),
+        frame.band(
+            q(flow_si)[shown], h(asked - doubt)[shown], np.minimum(h(asked + doubt)[shown], top)
+        ),
         frame.line(q(own), h(head), "pump"),
         frame.line(q(flow_si)[shown], h(asked)[shown], "system"),
     ]
