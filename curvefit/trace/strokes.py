@@ -30,6 +30,7 @@ class Settings:
     line is a pointer. straight : px off its chord. hatch : so many parallel straight lines are a
     hatching. ruled : share of a closed outline along the edges that makes it a frame.
     pale : lightness from which a stroke is a halo. edge : px that a line on the frame may lie out.
+    many_fills : with more filled shapes than this in the box, only long ones are looked at.
     """
 
     shortest: float = 0.05
@@ -39,6 +40,7 @@ class Settings:
     ruled: float = 0.6
     pale: float = 0.93
     edge: float = 0.7
+    many_fills: int = 1000
     most_points: int = 1500
 
 
@@ -100,14 +102,13 @@ def _curves(panel: Panel, s: Settings) -> list[Chain]:
 def _pieces(panel: Panel, s: Settings) -> Iterator[Piece]:
     """Strokes inside the box, cut at its sides, without what runs along it."""
     width, height = panel.warp.size
-    low, high = panel.corners.min(0) - 2, panel.corners.max(0) + 2
-    for stroke in panel.page.strokes:
-        if min(stroke.colour) > s.pale:
-            continue
-        if (stroke.xy.max(0) < low).any() or (stroke.xy.min(0) > high).any():
-            continue
+    near = _near(panel, s)
+    fills = sum(stroke.fill for stroke in near)
+    for stroke in near:
         xy, thick = panel.warp.to_panel(stroke.xy), stroke.width
         if stroke.fill:
+            if fills > s.many_fills and np.ptp(xy, axis=0).max() < s.shortest * width:
+                continue  # lettering drawn as shapes
             line = middle_line(xy)
             if line is None:
                 continue
@@ -116,6 +117,18 @@ def _pieces(panel: Panel, s: Settings) -> Iterator[Piece]:
             continue
         for part in _clipped(xy, (width, height), s.edge):
             yield Piece(part, thick, stroke.colour, stroke.dash)
+
+
+def _near(panel: Panel, s: Settings) -> list[Stroke]:
+    """Strokes that show and reach into the box."""
+    low, high = panel.corners.min(0) - 2, panel.corners.max(0) + 2
+    return [
+        stroke
+        for stroke in panel.page.strokes
+        if min(stroke.colour) <= s.pale
+        and not (stroke.xy.max(0) < low).any()
+        and not (stroke.xy.min(0) > high).any()
+    ]
 
 
 def _is_rule(xy: Array, stroke: Stroke, size: tuple[float, float]) -> bool:
@@ -226,12 +239,22 @@ def _is_curve(chain: Chain, panel: Panel, s: Settings) -> bool:
     closed = bool(np.hypot(*(xy[0] - xy[-1])) < 1.0)
     if closed and length[along].sum() > s.ruled * length.sum():
         return False  # a frame with rounded corners
-    if closed and size < 3 * s.shortest * width:
-        return False  # a marker, a sign
+    if closed and (size < 3 * s.shortest * width or _corners(xy) > 2):
+        return False  # a marker, a sign, the outline of an area
     diagonal = float(np.hypot(width, height))
-    if _bow(xy) < s.straight and size < s.leader * diagonal:
+    plain = len(xy) <= 4 and not chain.first.dash
+    if plain and _bow(xy) < s.straight and size < s.leader * diagonal:
         return False  # a pointer to a label
     return not (length.sum() > 12 * size)  # scribble: a sign, a filled-in area
+
+
+def _corners(xy: Array) -> int:
+    """How often a line turns by more than 40 degrees at once."""
+    d = np.diff(xy, axis=0)
+    d = d[np.hypot(*d.T) > 1e-3]
+    angle = np.arctan2(d[:, 1], d[:, 0])
+    turn = np.abs((np.diff(angle) + np.pi) % (2 * np.pi) - np.pi)
+    return int((turn > np.radians(40)).sum())
 
 
 def _bow(xy: Array) -> float:

@@ -158,6 +158,9 @@ def test_what_is_no_curve_is_left_out(tmp_path):
     for k in range(14):
         scene.line(100 + 6 * k, 60, 130 + 6 * k, 110, "0.3 w")
     scene.curve(curve_between(0.0, 0.9), look="5 w 1 G")
+    part = scene.points(curve_between(0.3, 0.6))  # the outline of a recommended range
+    low = part[::-1] * [1, 0] + [0, 60]
+    scene.draw("0.9 g 0.5 w", np.vstack([part, low]), "b")
     # a fat pale copy below and lettering drawn by a pen
     for k in range(6):
         scene.ops.append(f"{250 + 8 * k} 200 m {254 + 8 * k} 210 l {257 + 8 * k} 200 l S")
