@@ -7,13 +7,37 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["TextLine", "letters_of", "text_lines"]
+__all__ = ["Letters", "TextLine", "letters_of", "pieces_of", "text_lines"]
 
 Array = NDArray[np.float64]
+Ints = NDArray[np.int64]
 Mask = NDArray[np.uint8]
 
 _TIGHT = 0.32  # letters of one word stand closer than this share of their height
-_LOOSE = 0.72  # words of one line stand closer than this
+_LOOSE = 0.9  # words of one line stand closer than this
+_APART = 0.5  # numbers of one line that stand farther apart than this are several
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Letters:
+    """Components of ink that may be characters, on the straightened page [px].
+
+    boxes : (n, 4) left, top, right, bottom. index : (n,) their labels in `label`.
+    bar : (n,) whether it is one straight stroke: a dash, a 1, a piece of a curve.
+    """
+
+    boxes: Array
+    index: Ints
+    label: NDArray[np.int32]
+    bar: NDArray[np.bool_]
+
+    @property
+    def speck(self) -> NDArray[np.bool_]:
+        """Which are too small for a character of their own."""
+        return np.asarray((self.boxes[:, 2:] - self.boxes[:, :2]).max(1) < 6)
+
+    def of(self, keep: NDArray[np.bool_]) -> Letters:
+        return Letters(self.boxes[keep], self.index[keep], self.label, self.bar[keep])
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -41,102 +65,157 @@ class TextLine:
         return (y1 - y0) if self.vertical else (x1 - x0)
 
 
-def letters_of(dark: Mask, tallest: float) -> tuple[Array, NDArray[np.int32], NDArray[np.int64]]:
-    """Boxes (n, 4) of the components that may be characters, the label image and their labels.
+def letters_of(dark: Mask, tallest: float) -> Letters:
+    """The components that may be characters.
 
     dark : 0/1 ink without the long lines. tallest : of a character [px].
     """
     import cv2
 
-    count, label, stats, _ = cv2.connectedComponentsWithStats(dark, connectivity=8)
+    _, label, stats, _ = cv2.connectedComponentsWithStats(dark, connectivity=8)
     x, y, w, h, area = stats[:, :5].T.astype(float)
     long_side = np.maximum(w, h)
-    fill = area / (w * h)
-    keep = (long_side <= tallest) & (area >= 3) & ~((long_side > 0.5 * tallest) & (fill > 0.9))
+    keep = (long_side <= tallest) & (area >= 3)
     keep[0] = False
     index = np.flatnonzero(keep)
     if len(index) > 6000:  # speckles: the largest are the text
-        index = index[np.argsort(-area[index])[:6000]]
+        index = np.sort(index[np.argsort(-area[index])[:6000]])
     boxes = np.c_[x, y, x + w, y + h][index]
-    return boxes, label, index
+    bar = np.array([_is_bar(label, b.astype(int), i) for b, i in zip(boxes, index, strict=True)])
+    return Letters(boxes, index, label, bar.astype(bool))
 
 
-def text_lines(boxes: Array, zones: NDArray[np.int64]) -> list[TextLine]:
-    """Lines of text made of character boxes; characters of different zones never join.
+def _is_bar(label: NDArray[np.int32], box: Ints, index: int) -> bool:
+    """Whether a component is one straight stroke: as much ink as a bar of its two spreads holds."""
+    x0, y0, x1, y1 = box
+    if max(x1 - x0, y1 - y0) < 5:
+        return False
+    y, x = np.nonzero(label[y0:y1, x0:x1] == index)
+    spread = np.linalg.eigvalsh(np.cov(np.c_[x, y].T) + np.eye(2) / 12)
+    return bool(len(x) > 0.85 * 12 * np.sqrt(spread[0] * spread[1]) and spread[1] > 3.2 * spread[0])
 
-    boxes : (n, 4) left, top, right, bottom. zones : (n,) inside which plot box each stands.
+
+def text_lines(letters: Letters, zones: Ints) -> list[TextLine]:
+    """Lines of text made of characters; characters of different zones never join.
+
+    zones : (n,) the plot box that each stands in, 0 outside. Inside a box a bar counts only next
+    to a character of its own height (as a 1 does): the rest are dashes and pieces of curves.
     """
+    keep = (zones == 0) | ~letters.bar | _beside_letter(letters, zones)
+    boxes, zones = letters.boxes[keep], zones[keep]
     if not len(boxes):
         return []
     size = np.maximum(boxes[:, 2] - boxes[:, 0], boxes[:, 3] - boxes[:, 1])
-    across = _blobs(boxes, zones, _TIGHT, along_x=True)
-    upright = _blobs(boxes, zones, _TIGHT, along_x=False)
-    strong = size >= 0.5 * np.median(size[size >= 5]) if (size >= 5).any() else size > 0
-    n_across = np.bincount(across, strong.astype(float))[across]
-    n_upright = np.bincount(upright, strong.astype(float))[upright]
-    row = _blobs(boxes, zones, _LOOSE, along_x=True)
-    in_row = np.bincount(row, strong.astype(float))[row]
-    vertical = (n_upright > n_across) & (n_upright >= 2) & (n_upright >= in_row)
+    strong = (size >= 0.5 * np.median(size[size >= 5])) if (size >= 5).any() else size > 0
+
+    def company(reach: float, along_x: bool) -> Array:
+        blob = _blobs(boxes, zones, reach, along_x)
+        return np.asarray(np.bincount(blob, strong.astype(float))[blob])
+
+    up = company(_TIGHT, False)
+    vertical = (up >= 2) & (up > company(_TIGHT, True)) & (up >= company(0.72, True))
+    up = np.zeros(len(boxes))
+    column = _blobs(boxes[vertical], zones[vertical], _TIGHT, False)
+    up[vertical] = np.bincount(column)[column] if len(column) else 0
+    vertical &= up >= 2
+    vertical |= _joins_column(boxes, vertical, company(_TIGHT, True))
     lines = []
-    for up in (False, True):
-        mine = np.flatnonzero(vertical == up)
+    for along_x in (True, False):
+        mine = np.flatnonzero(vertical != along_x)
         if not len(mine):
             continue
-        blob = _blobs(boxes[mine], zones[mine], _LOOSE, along_x=not up)
+        blob = _blobs(boxes[mine], zones[mine], _LOOSE, along_x)
         for b in range(blob.max() + 1):
-            line = _line(boxes[mine[blob == b]], up, int(zones[mine[blob == b][0]]))
+            line = _line(boxes[mine[blob == b]], not along_x, int(zones[mine[blob == b][0]]))
             if line is not None:
                 lines.append(line)
     return lines
 
 
+def _beside_letter(letters: Letters, zones: Ints) -> NDArray[np.bool_]:
+    """Bars along x or y with a real character of the same height close by."""
+    out = np.zeros(len(letters.bar), bool)
+    real = letters.boxes[~letters.bar]
+    if not len(real):
+        return out
+    tall = np.maximum(real[:, 2] - real[:, 0], real[:, 3] - real[:, 1])
+    for i in np.flatnonzero(letters.bar & (zones > 0)):
+        x0, y0, x1, y1 = letters.boxes[i]
+        size = max(x1 - x0, y1 - y0)
+        gap_x = np.maximum(real[:, 0] - x1, x0 - real[:, 2])
+        gap_y = np.maximum(real[:, 1] - y1, y0 - real[:, 3])
+        near = np.maximum(gap_x, gap_y) < 0.45 * size
+        out[i] = bool((near & (np.abs(tall - size) < 0.25 * size)).any())
+    return out
+
+
+def _joins_column(boxes: Array, vertical: NDArray[np.bool_], in_row: Array) -> NDArray[np.bool_]:
+    """Lone characters that stand right above or below a vertical word: an H before [m]."""
+    out = np.zeros(len(boxes), bool)
+    if not vertical.any():
+        return out
+    column = boxes[vertical]
+    for i in np.flatnonzero(~vertical & (in_row <= 1)):
+        x0, y0, x1, y1 = boxes[i]
+        wide = np.maximum(column[:, 2] - column[:, 0], x1 - x0)
+        gap = np.maximum(column[:, 1] - y1, y0 - column[:, 3])
+        beside = np.maximum(column[:, 0] - (x0 + x1) / 2, (x0 + x1) / 2 - column[:, 2])
+        alike = (x1 - x0) < 1.5 * (column[:, 2] - column[:, 0]).max()
+        out[i] = bool(alike and ((gap < _LOOSE * wide) & (beside < 0)).any())
+    return out
+
+
 def _line(letters: Array, vertical: bool, zone: int) -> TextLine | None:
     lo, hi = letters[:, :2].min(0), letters[:, 2:].max(0)
     thick = (hi - lo)[0 if vertical else 1]
-    tall = (letters[:, 2:] - letters[:, :2])[:, 0 if vertical else 1].max()
-    if thick < 5 or tall < 5:
+    if thick < 5:
         return None
     order = np.argsort(letters[:, 1 if vertical else 0])
-    return TextLine((*lo, *hi), vertical, letters[order], zone)
+    x0, y0, x1, y1 = (float(v) for v in (*lo, *hi))
+    return TextLine((x0, y0, x1, y1), vertical, letters[order], zone)
 
 
-def _blobs(
-    boxes: Array, zones: NDArray[np.int64], reach: float, along_x: bool
-) -> NDArray[np.int64]:
+def pieces_of(line: TextLine) -> list[TextLine]:
+    """The line cut where its characters stand farther apart than digits of one number do."""
+    a = 1 if line.vertical else 0
+    reach = np.maximum.accumulate(line.letters[:, a + 2])
+    gap = line.letters[1:, a] - reach[:-1]
+    cuts = np.flatnonzero(gap > _APART * line.height) + 1
+    parts = [_line(part, line.vertical, line.zone) for part in np.split(line.letters, cuts)]
+    return [p for p in parts if p is not None]
+
+
+def _blobs(boxes: Array, zones: Ints, reach: float, along_x: bool) -> Ints:
     """Numbers of the chains of characters that follow each other along one direction."""
     from scipy.sparse import coo_array
     from scipy.sparse.csgraph import connected_components
 
+    if not len(boxes):
+        return np.zeros(0, np.int64)
     a, b = (0, 1) if along_x else (1, 0)
     order = np.argsort(boxes[:, a], kind="stable")
     s = boxes[order]
-    n = len(s)
-    lo, hi = s[:, a], s[:, a + 2]
-    low, high = s[:, b], s[:, b + 2]
-    tall = high - low
-    middle = (low + high) / 2
-    zone = zones[order]
-    rows, cols = [], []
-    biggest = float(tall.max())
-    last = np.searchsorted(lo, hi + reach * biggest, side="right")
-    for i in range(n):
+    lo, hi, low, high = s[:, a], s[:, a + 2], s[:, b], s[:, b + 2]
+    tall, middle, zone = high - low, (low + high) / 2, zones[order]
+    last = np.searchsorted(lo, hi + reach * float(tall.max()), side="right")
+    rows, cols = [np.zeros(0, int)], [np.zeros(0, int)]
+    for i in range(len(s)):
         j = np.arange(i + 1, last[i])
-        if not len(j):
-            continue
         h = np.maximum(tall[i], tall[j])
-        small = np.minimum(tall[i], tall[j])
         larger_low = np.where(tall[j] > tall[i], low[j], low[i])
         smaller_mid = np.where(tall[j] > tall[i], middle[i], middle[j])
         near = lo[j] - hi[i] <= reach * h
         level = (smaller_mid > larger_low - 0.12 * h) & (smaller_mid < larger_low + 1.12 * h)
-        alike = (small > 0.3 * h) | (np.minimum(hi[i] - lo[i], hi[j] - lo[j]) < 0.9 * h)
+        level &= (np.abs(middle[i] - middle[j]) < 0.45 * h) | (
+            np.minimum(tall[i], tall[j]) < 0.7 * h
+        )
+        narrow = np.minimum(hi[i] - lo[i], hi[j] - lo[j]) < 0.9 * h
+        alike = (np.minimum(tall[i], tall[j]) > 0.3 * h) | narrow
         j = j[near & level & alike & (zone[j] == zone[i])]
         rows.append(np.full(len(j), i))
         cols.append(j)
-    r = np.concatenate(rows) if rows else np.zeros(0, int)
-    c = np.concatenate(cols) if cols else np.zeros(0, int)
-    graph = coo_array((np.ones(len(r)), (r, c)), shape=(n, n))
-    blob = connected_components(graph, directed=False)[1]
-    out = np.empty(n, np.int64)
-    out[order] = blob
+    r, c = np.concatenate(rows), np.concatenate(cols)
+    graph = coo_array((np.ones(len(r)), (r, c)), shape=(len(s), len(s)))
+    out = np.empty(len(s), np.int64)
+    out[order] = connected_components(graph, directed=False)[1]
     return out

@@ -3,22 +3,22 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from curvefit.calibrate.boxes import Box, find_boxes
-from curvefit.calibrate.evidence import Evidence
+from curvefit.calibrate.evidence import Evidence, TickRow
 from curvefit.calibrate.glyphs import TextLine
 from curvefit.calibrate.ink import ink_of
 from curvefit.calibrate.lines import Line, long_lines
 from curvefit.calibrate.rectify import rectification, segments
 from curvefit.calibrate.sides import side_lines, warp_of
-from curvefit.calibrate.ticks import Side, flatten, tick_rows
+from curvefit.calibrate.ticks import flatten, tick_bars, tick_rows
 from curvefit.calibrate.upright import quarter_turns
 from curvefit.calibrate.words import Lettering, find_text, read_lines
-from curvefit.geometry import Warp, project
+from curvefit.geometry import project
 from curvefit.notes import PageNotes, PanelNotes
 from curvefit.records import Page, Word
 
@@ -73,13 +73,31 @@ def gather(
     """
     s = settings or Settings()
     sheet = _straighten(ink_of(page.pixels), s)
-    boxes = _boxes(sheet, s)
-    if not boxes:
+    plots = [_plot(sheet, corners, box) for corners, box in _boxes(sheet, s)]
+    if not plots:
         return ()
-    lettering = find_text(sheet.flat, *_zones(sheet, boxes))
+    lettering = find_text(sheet.flat, *_drawn(sheet, plots))
     turn = page_notes.turn if page_notes.turn is not None else quarter_turns(lettering)
-    words = read_lines(lettering, _wanted(lettering, boxes, s), sheet.matrix, turn)
-    return tuple(_evidence(sheet, c, b, turn, words, boxes) for c, b in boxes)
+    words = read_lines(lettering, _wanted(lettering, plots, s), sheet.matrix, turn)
+    return tuple(_evidence(sheet, plot, turn, words) for plot in plots)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Plot:
+    """A plot box before the page's turn is known. corners : (4, 2) page px."""
+
+    corners: Array
+    box: Box
+    warp: Warp
+    ticks: tuple[TickRow, ...]
+    bars: list[Array]
+
+
+def _plot(sheet: Sheet, corners: Array, box: Box) -> Plot:
+    warp = warp_of(corners)
+    flat = flatten(sheet.ink, warp, int(min(0.3 * max(warp.size), 600)))
+    rows = tick_rows(flat, box.seen, {})
+    return Plot(corners, box, warp, rows, tick_bars(flat, rows))
 
 
 def _straighten(ink: Image, s: Settings) -> Sheet:
@@ -141,52 +159,53 @@ def _boxes(sheet: Sheet, s: Settings) -> list[tuple[Array, Box]]:
     return sorted(found, key=lambda f: (round(f[0][:, 1].mean() / 20), f[0][:, 0].mean()))
 
 
-def _zones(
-    sheet: Sheet, boxes: list[tuple[Array, Box]]
-) -> tuple[NDArray[np.int16], NDArray[np.bool_]]:
-    """Which box each straightened pixel lies in, and the frames with what touches them."""
+def _drawn(sheet: Sheet, plots: list[Plot]) -> tuple[NDArray[np.int16], Image, Image]:
+    """Per straightened pixel: which box it lies in, and where sides and ticks are drawn."""
+    import cv2
+
     zone = np.zeros(sheet.flat.shape, np.int16)
-    frame = np.zeros(sheet.flat.shape, bool)
-    for i, (_, box) in enumerate(boxes):
-        x0, x1 = round(box.left), round(box.right)
-        y0, y1 = round(box.top), round(box.bottom)
-        zone[max(y0, 0) : y1 + 1, max(x0, 0) : x1 + 1] = i + 1
-        for x in (x0, x1):
-            frame[max(y0 - 3, 0) : y1 + 4, max(x - 3, 0) : x + 4] = True
-        for y in (y0, y1):
-            frame[max(y - 3, 0) : y + 4, max(x0 - 3, 0) : x1 + 4] = True
-    return zone, frame
+    frame, ticks = np.zeros(sheet.flat.shape, np.uint8), np.zeros(sheet.flat.shape, np.uint8)
+    for i, plot in enumerate(plots):
+        outline = np.round(project(sheet.matrix, plot.corners)).astype(np.int32)
+        cv2.fillPoly(zone, [outline], i + 1)
+        cv2.polylines(frame, [outline], True, 1, 7)
+        for bar in plot.bars:
+            shape = project(sheet.matrix, plot.warp.to_page(bar))
+            cv2.fillPoly(ticks, [np.round(shape).astype(np.int32)], 1)
+    return zone, frame, ticks
 
 
-def _wanted(lettering: Lettering, boxes: list[tuple[Array, Box]], s: Settings) -> list[TextLine]:
+def _wanted(lettering: Lettering, plots: list[Plot], s: Settings) -> list[TextLine]:
     """The lines of text worth reading: those nearest to a plot box."""
 
     def distance(line: TextLine) -> float:
         x, y = (line.box[0] + line.box[2]) / 2, (line.box[1] + line.box[3]) / 2
-        return min(b.distance(x, y) for _, b in boxes)
+        return min(p.box.distance(x, y) for p in plots)
 
-    near = sorted(lettering.lines, key=distance)
-    return near[: s.most_lines]
-
-
-def _evidence(
-    sheet: Sheet,
-    corners: Array,
-    box: Box,
-    turn: int,
-    words: tuple[Word, ...],
-    boxes: list[tuple[Array, Box]],
-) -> Evidence:
-    upright = np.roll(corners, turn, axis=0)
-    seen = tuple(np.roll(box.seen, turn))
-    warp = warp_of(upright)
-    margin = int(min(0.3 * max(warp.size), 600))
-    flat = flatten(sheet.ink, warp, margin)
-    rows = tick_rows(flat, seen, {})  # type: ignore[arg-type]
-    return Evidence(upright, warp, turn, rows, words, _look(sheet, turn))
+    return sorted(lettering.lines, key=distance)[: s.most_lines]
 
 
-def _look(sheet: Sheet, turn: int) -> Callable[[Sequence[Array]], list[tuple[str, float]]]:
+_ROUND = ("top", "right", "bottom", "left")  # clockwise: a quarter turn moves each on by one
+
+
+def _evidence(sheet: Sheet, plot: Plot, turn: int, words: tuple[Word, ...]) -> Evidence:
+    corners = np.roll(plot.corners, turn, axis=0)
+    rows = tuple(_turned(row, turn) for row in plot.ticks)
+    return Evidence(corners, warp_of(corners), turn, rows, words, _look(sheet))
+
+
+def _turned(row: TickRow, turn: int) -> TickRow:
+    """The row on the page set upright; along two sides the direction may change."""
+    side, at = row.side, row.at
+    for _ in range(turn):
+        side = _ROUND[(_ROUND.index(side) + 1) % 4]
+        if side in ("left", "right"):  # left to right has become downwards
+            at = 1 - at
+    order = np.argsort(at)
+    return replace(row, side=side, at=at[order], u=row.u[order], weight=row.weight[order])
+
+
+def _look(sheet: Sheet) -> Callable[[Sequence[Array]], list[tuple[str, float]]]:
     def look(boxes: Sequence[Array]) -> list[tuple[str, float]]:
         """Reads the numbers in boxes (4, 2), page px, clockwise from the text's top left."""
         from curvefit.ocr import NUMERIC, recognise

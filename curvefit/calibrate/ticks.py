@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from curvefit.calibrate.evidence import TickRow
 from curvefit.geometry import Warp
 
-__all__ = ["Flat", "flatten", "tick_rows"]
+__all__ = ["Flat", "flatten", "tick_bars", "tick_rows"]
 
 Array = NDArray[np.float64]
 Image = NDArray[np.uint8]
@@ -126,6 +126,55 @@ def tick_rows(
             ):
                 rows += _row(side, kind, strip.mean(0), m, length, offset)
     return tuple(rows)
+
+
+def tick_bars(flat: Flat, rows: tuple[TickRow, ...]) -> list[Array]:
+    """Outlines (4, 2), straightened px, of the ticks that stand outside the box.
+
+    No tick is taken for longer than most are, so that a number that touches its tick is spared.
+    """
+    bars = []
+    for row in rows:
+        if row.kind != "outside" or row.offset:
+            continue
+        length, depth = flat.span(row.side)
+        view, m = flat.facing(row.side), flat.margin
+        first = m - _half_width(view, m) - 1
+        far = min(first, round(0.03 * max(length, depth)))
+        columns = [round(t * length) + m for t in row.at]
+        ink = np.array([view[first - far : first + 1, c - 1 : c + 2].max(1)[::-1] for c in columns])
+        usual = _tick_end(np.median(ink, axis=0))
+        for t, run in zip(row.at, ink, strict=True):
+            own = _tick_end(run)
+            reach = (own if usual < own <= 2.2 * usual else usual) + m - first
+            bars.append(_bar(row.side, t, flat.size, reach - 0.5))
+    return bars
+
+
+def _tick_end(ink: NDArray[np.float32]) -> int:
+    """Pixels from its foot to where a tick's ink fades, or dips before a number close by."""
+    level = max(float(ink[:3].max()), 30.0)
+    faded = np.flatnonzero(ink < 0.5 * level)
+    dips = np.flatnonzero(
+        (ink[1:-1] < 0.85 * level) & (ink[1:-1] < ink[2:]) & (ink[1:-1] <= ink[:-2])
+    )
+    return int(min([*faded[:1], *(dips[:1] + 1), len(ink)]))
+
+
+def _bar(side: Side, t: float, size: tuple[float, float], reach: float) -> Array:
+    """A tick of length `reach` and 6 px wide, outwards from fraction t of a side."""
+    w, h = size
+    foot = {
+        "bottom": (t * w, h),
+        "top": (t * w, 0),
+        "left": (0, h - t * h),
+        "right": (w, h - t * h),
+    }
+    way = {"bottom": (0, 1), "top": (0, -1), "left": (-1, 0), "right": (1, 0)}
+    start, out = np.array(foot[side], float), np.array(way[side], float)
+    across = 3.0 * out[::-1]
+    tip = start + reach * out
+    return np.array([start - across, tip - across, tip + across, start + across])
 
 
 def _half_width(view: NDArray[np.float32], at: int) -> int:

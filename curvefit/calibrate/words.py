@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from curvefit.calibrate.glyphs import TextLine, letters_of, text_lines
+from curvefit.calibrate.glyphs import TextLine, letters_of, pieces_of, text_lines
 from curvefit.geometry import project
 from curvefit.records import Word
 
@@ -32,7 +32,7 @@ class Lettering:
     lines: tuple[TextLine, ...]
 
 
-def find_text(flat: Image, zone_of: NDArray[np.int16], frame: NDArray[np.bool_]) -> Lettering:
+def find_text(flat: Image, zone_of: NDArray[np.int16], frame: Image, ticks: Image) -> Lettering:
     """Where text stands on the straightened page.
 
     Parameters
@@ -41,44 +41,56 @@ def find_text(flat: Image, zone_of: NDArray[np.int16], frame: NDArray[np.bool_])
         Ink of the straightened page.
     zone_of : array of the same shape
         Number of the plot box that each pixel lies in, 0 outside all of them.
-    frame : array of the same shape
-        Where the sides of the boxes are drawn: what touches them is a tick or a curve.
+    frame, ticks : arrays of the same shape
+        Not 0 where the sides of the boxes and their ticks are drawn; what touches a side is a
+        tick or a curve.
     """
     import cv2
 
     dark = (flat > _threshold(flat)).astype(np.uint8)
-    dark[frame] = 0
     long_side = max(flat.shape)
-    dark[_long_runs(dark, max(30, int(0.024 * long_side)))] = 0
-    boxes, label, index = letters_of(dark, _TALLEST * long_side)
-    touching = np.unique(label[cv2.dilate(frame.astype(np.uint8), np.ones((3, 3), np.uint8)) > 0])
-    apart = ~np.isin(index, touching)
-    boxes, index = boxes[apart], index[apart]
-    middle = ((boxes[:, :2] + boxes[:, 2:]) / 2).astype(int)
-    zones = zone_of[middle[:, 1], middle[:, 0]].astype(np.int64)
-    lines = text_lines(boxes, zones)
-    text = np.zeros(int(label.max()) + 1, bool)
-    text[index] = True
-    keep = text[label]
-    near = cv2.dilate(keep.astype(np.uint8), np.ones((5, 5), np.uint8)).astype(bool)
-    return Lettering(255 - np.where(near, flat, 0).astype(np.uint8), tuple(lines))
+    drawn = (frame > 0) | (ticks > 0) | _long_runs(dark, max(30, int(0.024 * long_side)), zone_of)
+    dark[drawn] = 0
+    letters = letters_of(dark, _TALLEST * long_side)
+    at_side = np.unique(letters.label[cv2.dilate(frame, np.ones((3, 3), np.uint8)) > 0])
+    at_tick = np.unique(letters.label[cv2.dilate(ticks, np.ones((7, 7), np.uint8)) > 0])
+    crumb = (letters.bar | letters.speck) & np.isin(letters.index, at_tick)
+    letters = letters.of(~np.isin(letters.index, at_side) & ~crumb)
+    middle = ((letters.boxes[:, :2] + letters.boxes[:, 2:]) / 2).astype(int)
+    lines = text_lines(letters, zone_of[middle[:, 1], middle[:, 0]].astype(np.int64))
+    text = np.zeros(int(letters.label.max()) + 1, bool)
+    text[letters.index] = True
+    other = (letters.label > 0) & ~text[letters.label]
+    other = (cv2.dilate(other.astype(np.uint8), np.ones((3, 3), np.uint8)) > 0) | drawn
+    return Lettering(255 - np.where(other & ~text[letters.label], 0, flat), tuple(lines))
 
 
 def _threshold(flat: Image) -> float:
     some = flat[flat > 24]
-    return float(np.clip(0.4 * np.percentile(some, 95), 40, 110)) if some.size else 255.0
+    return float(np.clip(0.3 * np.percentile(some, 95), 36, 80)) if some.size else 255.0
 
 
-def _long_runs(dark: Image, shortest: int) -> NDArray[np.bool_]:
-    """Where straight lines along x or y run, a pixel wider on each side."""
+def _long_runs(dark: Image, shortest: int, zone_of: NDArray[np.int16]) -> NDArray[np.bool_]:
+    """Where straight lines along x or y run, a pixel wider on each side.
+
+    Inside a plot box short pieces count too (a grid broken by curves), outside only long ones.
+    """
     import cv2
 
     runs = np.zeros(dark.shape, bool)
-    for shape, wide in (((1, shortest), (3, 1)), ((shortest, 1), (1, 3))):
-        gap = (1, 5) if shape[0] == 1 else (5, 1)
-        closed = cv2.morphologyEx(dark, cv2.MORPH_CLOSE, np.ones(gap, np.uint8))
-        opened = cv2.morphologyEx(closed, cv2.MORPH_OPEN, np.ones(shape, np.uint8))
-        runs |= cv2.dilate(opened, np.ones(wide, np.uint8)).astype(bool)
+    for along_x in (True, False):
+
+        def bar(n: int, along_x: bool = along_x) -> Image:
+            return np.ones((1, n) if along_x else (n, 1), np.uint8)
+
+        closed = cv2.morphologyEx(dark, cv2.MORPH_CLOSE, bar(5))
+        # a heading is as long as a line, but thicker
+        thick = cv2.morphologyEx(closed, cv2.MORPH_OPEN, np.ones((9, 9), np.uint8))
+        inside = cv2.morphologyEx(closed * (zone_of > 0), cv2.MORPH_OPEN, bar(shortest))
+        outside = cv2.morphologyEx(dark * (zone_of == 0), cv2.MORPH_OPEN, bar(2 * shortest))
+        outside[thick > 0] = 0
+        wide = np.ones((3, 1) if along_x else (1, 3), np.uint8)
+        runs |= cv2.dilate((inside | outside).astype(np.uint8), wide) > 0
     return runs
 
 
@@ -99,24 +111,66 @@ def read_lines(
     matrix : (3, 3) page px → straightened px. turn : quarter turns clockwise that set the page
     upright.
     """
-    from curvefit.ocr import readings
-
+    first = _read(lettering.image, lines, turn)
+    # numbers side by side are several, words are one line
+    crowded = [r for r in first if _SEVERAL.match(r.text) and len(pieces_of(r.line)) > 1]
+    parts = [p for r in crowded for p in pieces_of(r.line)]
+    held = [r for r in first if r not in crowded] + _read(lettering.image, parts, turn)
     back = np.linalg.inv(matrix)
+    return tuple(Word(r.text, project(back, _corners(r.line.box, r.turn)), r.score) for r in held)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Read:
+    line: TextLine
+    turn: int
+    text: str
+    score: float
+
+
+_SEVERAL = re.compile(r"^[\d.,%\s−-]{2,}$")
+
+
+def _read(image: Image, lines: list[TextLine], turn: int) -> list[_Read]:
+    from curvefit.ocr import NUMERIC, readings
+
     jobs: list[tuple[TextLine, int]] = []
     for line in lines:
-        if line.vertical == bool(turn % 2):  # reads along the upright page's rows
+        if line.vertical == bool(turn % 2) or len(line.letters) == 1:
             jobs.append((line, turn))
-        elif len(line.letters) > 1:  # upwards or downwards: both are tried
+        else:  # upwards or downwards: both are tried
             jobs += [(line, (turn + 1) % 4), (line, (turn + 3) % 4)]
-    read = readings([crop_of(lettering.image, line, t) for line, t in jobs], (None,))
-    best: dict[int, tuple[float, Word]] = {}
-    for (line, t), [(text, score)] in zip(jobs, read, strict=True):
-        clean = _tidy(text, line)
-        worth = score * min(len(clean), 8)
-        if clean and worth > best.get(id(line), (0.0, None))[0]:
-            corners = project(back, _corners(line.box, t))
-            best[id(line)] = (worth, Word(clean, corners, score))
-    return tuple(word for _, word in best.values())
+    read = readings([crop_of(image, line, t) for line, t in jobs], (None, NUMERIC))
+    best: dict[int, _Read] = {}
+    for (line, t), (free, number) in zip(jobs, read, strict=True):
+        text, score = number if _stands_for_number(free[0], number) else free
+        text = _tidy(text, line)
+        worth = score * min(len(text), 8)
+        if _plausible(text, score, line) and (
+            id(line) not in best or worth > best[id(line)].score * min(len(best[id(line)].text), 8)
+        ):
+            best[id(line)] = _Read(line, t, text, score)
+    return list(best.values())
+
+
+def _stands_for_number(free: str, number: tuple[str, float]) -> bool:
+    """Whether letters were read for figures that look like them: an O for a 0, an l for a 1."""
+    if not free or not number[0] or any(c.isdigit() for c in number[0]) is False:
+        return False
+    return (
+        free != number[0]
+        and all(c in "OoDQlI|iSsBZz.,-% " or c.isdigit() for c in free)
+        and (len(free) <= 2 or sum(c.isdigit() for c in free) >= 0.5 * len(free))
+    )
+
+
+def _plausible(text: str, score: float, line: TextLine) -> bool:
+    """Not a crumb of a drawing: inside a box, strokes read as a sign or two are no words."""
+    if not any(c.isalnum() for c in text):
+        return False
+    if line.zone and len(text) <= 2 and score < 0.6:
+        return False
+    return score > 0.3
 
 
 def _corners(box: tuple[float, float, float, float], turn: int) -> Array:
@@ -130,7 +184,12 @@ _NUMBER = re.compile(r"^[-−–—]?\s*\d")
 
 
 def _tidy(text: str, line: TextLine) -> str:
-    """A dash in front of a number stays only where a dash was printed: a flat mark of its own."""
+    """A dash in front of a number stays only where a dash was printed: a flat mark of its own.
+
+    Behind a number it is the end of a tick.
+    """
+    if text[-1:] in "-–—" and text[:-1].strip().replace(".", "").replace(",", "").isdigit():
+        text = text[:-1].strip()
     if not _NUMBER.match(text) or text[0].isdigit():
         return text
     first = line.letters[0] if not line.vertical else line.letters[-1]
