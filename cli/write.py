@@ -34,7 +34,7 @@ KINDS = ("csv", "json", "xlsx", "table", "template")
 def write(
     curves: Annotated[
         list[Path],
-        typer.Argument(metavar="CURVES_OR_FOLDERS...", help="Files .curves.json, or folders."),
+        typer.Argument(metavar="CURVES_OR_FOLDERS...", help=".curves.json, .csv or folders."),
     ],
     to: Annotated[
         str, typer.Option("--to", metavar="KIND", help="csv, json, xlsx, table or template.")
@@ -131,8 +131,9 @@ def _selected(
 
     from curvefit.units import parse_quantity
     from curvefit.write.reopen import reopen
+    from curvefit.write.reopen_csv import reopen_csv
 
-    opened = reopen(path)
+    opened = reopen_csv(path) if path.suffix == ".csv" else reopen(path)
     if pump is curve is diameter is speed is None:
         return opened
     d = None if diameter is None else parse_quantity(diameter, "length", "mm")
@@ -150,7 +151,7 @@ def _beside(path: Path) -> Path:
 
 
 def _stem(path: Path) -> str:
-    return path.name.removesuffix(".json").removesuffix(".curves")
+    return path.name.removesuffix(path.suffix).removesuffix(".curves")
 
 
 def _free(stem: str, taken: set[str]) -> str:

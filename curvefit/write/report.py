@@ -139,7 +139,7 @@ def _curve(out: Outgoing, curve: CurveOut) -> dict[str, Any]:
     fits = out.fits_of(c)
     title = QUANTITIES[curve.units.quantity].title
     plots = []
-    flow_title, value_title = f"flow [{flow}]", f"{title.lower()} [{value}]"
+    flow_title, value_title = f"flow [{flow}]", f"{_low(title)} [{value}]"
     if not c.iso:
         plots.append(curve_plot(curve, fits[0] if fits else None, flow_title, value_title))
         plots += [residual_plot(curve, f, flow_title, value) for f in fits[:1]]
@@ -160,6 +160,10 @@ def _curve(out: Outgoing, curve: CurveOut) -> dict[str, Any]:
         "fits": [_fit(f) for f in fits],
         "plots": plots,
     }
+
+
+def _low(title: str) -> str:
+    return title if title.startswith("NPSH") else title[:1].lower() + title[1:]
 
 
 def _fit(out: FitOut) -> dict[str, Any]:

@@ -11,10 +11,12 @@ from hypothesis import strategies as st
 from curvefit.notes import given_entries, notes_from
 from curvefit.records import Reading
 from curvefit.units import UNITS
+from curvefit.write.curves_csv import curves_csv
 from curvefit.write.curves_json import curves_document, json_text
 from curvefit.write.notes_toml import notes_toml
 from curvefit.write.outgoing import outgoing
 from curvefit.write.reopen import reopen_text
+from curvefit.write.reopen_csv import is_own_table, reopen_csv
 from curvefit.write.svg import nice_ticks
 
 slow = settings(deadline=None, max_examples=40, suppress_health_check=list(HealthCheck))
@@ -64,6 +66,25 @@ def test_curves_and_fits_come_back_from_any_units(made_reading, flow, head):
     assert [(f.code, f.message, f.remedy) for f in back.findings] == [
         (f.code, f.message, f.remedy) for f in reading.findings
     ]
+
+
+@slow
+@given(flow=st.sampled_from(FLOWS), name=st.sampled_from(["a", "=b", " -c", 'd, "e"']))
+def test_the_table_comes_back(made_reading, tmp_path_factory, flow, name):
+    reading = made_reading()
+    curve = replace(reading.curves[0], name=name)
+    reading = replace(reading, curves=(curve, *reading.curves[1:]), fits=())
+    path = tmp_path_factory.mktemp("table") / "c.csv"
+    path.write_text(curves_csv(outgoing(reading, {"flow": flow})), encoding="utf-8", newline="")
+    assert is_own_table(path)
+    for a, b in zip(reading.curves, reopen_csv(path).curves, strict=True):
+        assert (a.name, a.quantity, a.pump) == (b.name, b.quantity, b.pump)
+        close(a.flow_si, b.flow_si, 1e-7)
+        close(a.value_si, b.value_si, 1e-7)
+        close(a.sigma_si, b.sigma_si, 1e-4)
+        close(a.diameter_si, b.diameter_si, 1e-7)
+        assert b.speed_si == pytest.approx(2900 / 60)
+        assert np.array_equal(a.flags, b.flags)
 
 
 @slow

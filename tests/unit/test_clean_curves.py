@@ -310,3 +310,30 @@ def test_a_file_that_is_no_curve_set(content, code, tmp_path, capsys):
     assert got == code
     assert "x.curves.json" in err
     assert "Traceback" not in err
+
+
+@pytest.mark.parametrize(
+    ("spoil", "word"),
+    [
+        (lambda t: t.replace("pump,page", "pumpe,page"), "Needed: pump"),
+        (lambda t: t.replace(",49.99192,", ",much,", 1), "line 2, key value"),
+        (lambda t: t.replace(",m3/h,", ",buckets,", 1), "line 2"),
+        (lambda t: t.replace(",head,", ",height,", 1), "line 2, key quantity"),
+        (lambda t: t + "1,2,3\r\n", "3 cells"),
+    ],
+)
+def test_a_spoilt_table_names_its_line(spoil, word, folder, tmp_path, capsys):
+    text = (folder / "pump.curves.csv").read_text(encoding="utf-8")
+    path = tmp_path / "mine.csv"
+    path.write_text(spoil(text), encoding="utf-8", newline="")
+    code, _, err = run(capsys, "write", path, "--out", tmp_path / "o")
+    assert code == 2
+    assert word in err
+
+
+def test_a_table_can_be_written_again(folder, tmp_path, capsys):
+    out = tmp_path / "out"
+    code, said, _ = run(capsys, "write", folder / "pump.curves.csv", "--to", "table", "--out", out)
+    assert code == 0
+    assert "traced points" in said
+    assert (out / "pump.points.txt").is_file()
