@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from curvefit.geometry import project
 from curvefit.records import Stroke
 
-__all__ = ["flattened", "strokes_of"]
+__all__ = ["smoothed", "strokes_of"]
 
 Array = NDArray[np.float64]
 MOVE, BEZIER, CLOSE = 0, 2, 4
@@ -38,15 +38,23 @@ def strokes_of(
     """
     xy = project(to_page, np.frombuffer(points, float).reshape(-1, 2))
     codes = np.frombuffer(kinds, np.uint8)
+    if not len(codes):
+        return ()
+    path = np.repeat(np.arange(len(styles)), [style["segments"] for style in styles])
+    fresh = np.append(True, np.diff(path) > 0)  # a path begins with a move, whatever it says
+    begins = np.nonzero(((codes & 3) == MOVE) | fresh)[0]
+    closed = np.bitwise_or.reduceat(codes, begins) & CLOSE > 0
+    dense, place = smoothed(xy, codes & np.uint8(3))
+    starts = place[begins]
+    stops = np.append(starts[1:], len(dense))
+    low, high = np.minimum.reduceat(dense, starts), np.maximum.reduceat(dense, starts)
+    seen = (stops - starts > 1) & (high > -0.5).all(1) & (low < size).all(1)
     scale = float(np.sqrt(abs(np.linalg.det(to_page[:2, :2]))))
     strokes: list[Stroke] = []
-    start = 0
-    for number, style in enumerate(styles):
-        stop = start + style["segments"]
-        for line, closed in _subpaths(xy[start:stop], codes[start:stop]):
-            if _inside(line, size):
-                strokes += _painted(line, closed, style, scale, number)
-        start = stop
+    for i in np.nonzero(seen)[0].tolist():
+        number = int(path[begins[i]])
+        line = dense[starts[i] : stops[i]]
+        strokes += _painted(line, bool(closed[i]), styles[number], scale, number)
     return tuple(strokes)
 
 
@@ -66,57 +74,45 @@ def _painted(
         yield Stroke(outline, width, tuple(style["stroke"]), dash, False, number)
 
 
-def _inside(line: Array, size: tuple[int, int]) -> bool:
-    low, high = line.min(0), line.max(0)
-    return bool(
-        np.isfinite(line).all() and (high >= -0.5).all() and low[0] < size[0] and low[1] < size[1]
-    )
-
-
-def _subpaths(xy: Array, codes: NDArray[np.uint8]) -> Iterator[tuple[Array, bool]]:
-    """(polyline, whether it is closed) for each subpath of two points or more."""
-    begins = np.nonzero((codes & 3) == MOVE)[0]
-    for first, stop in zip(begins, [*begins[1:], len(codes)], strict=True):
-        if stop - first < 2:
-            continue
-        part = codes[first:stop]
-        line = xy[first:stop]
-        if ((part & 3) == BEZIER).any():
-            line = _smooth(line, part)
-        yield line, bool((part & CLOSE).any())
-
-
-def _smooth(points: Array, codes: NDArray[np.uint8]) -> Array:
-    """One subpath with its Bézier curves flattened."""
-    pieces = [points[:1]]
-    i = 1
-    while i < len(points):
-        if codes[i] & 3 == BEZIER and i + 2 < len(points):
-            pieces.append(flattened(np.r_[pieces[-1][-1:], points[i : i + 3]])[1:])
-            i += 3
-        else:
-            pieces.append(points[i : i + 1])
-            i += 1
-    return np.concatenate(pieces)
-
-
-def flattened(control: Array) -> Array:
-    """A cubic Bézier curve as a polyline that stays within 0.01 px of it; shape (n, 2).
+def smoothed(xy: Array, codes: NDArray[np.uint8]) -> tuple[Array, NDArray[np.intp]]:
+    """Path points with chords in place of Bézier curves, and where each given point went.
 
     Parameters
     ----------
-    control : array of shape (4, 2), the control points [px]
+    xy : array of shape (n, 2) [px]
+    codes : array of shape (n,); 2 for each of the three points that follow a curve's first
 
     Notes
     -----
-    n equal steps of the parameter keep the chords within 0.75 M/n² of the curve, M the largest
+    m equal steps of the parameter keep the chords within 0.75 M/m² of the curve, M the largest
     second difference of the control points: a sixth of the second derivative's bound, which is
-    divided by 8 n² for a chord.
+    divided by 8 m² for a chord.
     """
-    bend = control[:-2] - 2 * control[1:-1] + control[2:]
-    most = float(np.hypot(*bend.T).max())
-    n = int(np.clip(np.ceil(np.sqrt(0.75 * most / FLATNESS)), 1, 2000))
-    t = np.linspace(0.0, 1.0, n + 1)[:, None]
-    s = 1.0 - t
-    basis = np.hstack([s**3, 3 * s * s * t, 3 * s * t * t, t**3])
-    return np.asarray(basis @ control)
+    count = np.ones(len(codes), np.intp)
+    ends = _curve_ends(codes)
+    control = xy[ends[:, None] + np.arange(-3, 1)]
+    bend = control[:, :-2] - 2 * control[:, 1:-1] + control[:, 2:]
+    most = np.hypot(bend[..., 0], bend[..., 1]).max(1, initial=0.0)
+    steps = np.clip(np.ceil(np.sqrt(0.75 * most / FLATNESS)), 1, 2000).astype(np.intp)
+    count[ends - 1] = count[ends - 2] = 0
+    count[ends] = steps
+    place = np.cumsum(count) - count
+    dense = np.empty((int(count.sum()), 2))
+    plain = np.ones(len(codes), bool)
+    plain[(ends[:, None] + np.arange(-2, 1)).ravel()] = False
+    dense[place[plain]] = xy[plain]
+    for m in np.unique(steps):
+        these = np.nonzero(steps == m)[0]
+        t = (np.arange(1, m + 1) / m)[:, None]
+        basis = np.hstack([(1 - t) ** 3, 3 * (1 - t) ** 2 * t, 3 * (1 - t) * t * t, t**3])
+        dense[place[ends[these]][:, None] + np.arange(m)] = basis @ control[these]
+    return dense, place
+
+
+def _curve_ends(codes: NDArray[np.uint8]) -> NDArray[np.intp]:
+    """Indices of the last points of Bézier curves; points that make no whole curve are lines."""
+    curved = codes == BEZIER
+    change = np.diff(np.r_[False, curved, False].astype(np.int8))
+    first, stop = np.nonzero(change > 0)[0], np.nonzero(change < 0)[0]
+    ends = [np.arange(a + 2, b, 3) for a, b in zip(first, stop, strict=True) if a > 0]
+    return np.concatenate(ends) if ends else np.zeros(0, np.intp)

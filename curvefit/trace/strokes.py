@@ -40,7 +40,7 @@ class Settings:
     ruled: float = 0.6
     pale: float = 0.93
     edge: float = 0.7
-    many_fills: int = 1000
+    many_fills: int = 150
     most_points: int = 1500
 
 
