@@ -1,0 +1,181 @@
+"""Titles to axes: which line of text names which scale."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+from curvefit.calibrate.rows import Column, Spot
+from curvefit.calibrate.titles import Title, read_title
+from curvefit.errors import Location
+from curvefit.records import Axis, Finding, Word
+
+__all__ = ["name_axes"]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Candidate:
+    """A title in the making: one word, or two that stand together."""
+
+    title: Title
+    bounds: tuple[float, float, float, float]
+    quarter: int
+    height: float
+    words: tuple[Word, ...]
+
+
+def name_axes(
+    axes: Sequence[Axis],
+    columns: Sequence[Column],
+    text: Sequence[Spot],
+    size: tuple[float, float],
+) -> tuple[list[Axis], set[int], list[Finding]]:
+    """The axes with quantity and unit from the titles about the box.
+
+    Returns
+    -------
+    axes, ids of the words that are titles, findings
+    """
+    candidates = [c for c in _candidates(text) if c.title.strength]
+    offers = [
+        (_cost(axis, column, c, size), i, k)
+        for i, (axis, column) in enumerate(zip(axes, columns, strict=True))
+        for k, c in enumerate(candidates)
+    ]
+    chosen: dict[int, Candidate] = {}
+    used: set[int] = set()
+    for cost, i, k in sorted(offers):
+        c = candidates[k]
+        if cost > 14 or i in chosen or any(id(w) in used for w in c.words):
+            continue
+        chosen[i] = c
+        used |= {id(w) for w in c.words}
+    named = [_named(axis, chosen.get(i), columns[i]) for i, axis in enumerate(axes)]
+    return named, used, []
+
+
+def _candidates(text: Sequence[Spot]) -> list[Candidate]:
+    single = [
+        Candidate(read_title(s.word.text), s.bounds, s.quarter, s.height, (s.word,)) for s in text
+    ]
+    out = list(single)
+    for i, a in enumerate(text):
+        for j, b in enumerate(text):
+            if i == j or single[i].title.strength == 3 or single[j].title.strength == 3:
+                continue
+            if a.quarter != b.quarter or not _together(a, b):
+                continue
+            joined = read_title(f"{a.word.text} {b.word.text}")
+            if joined.strength > max(single[i].title.strength, single[j].title.strength):
+                x0, y0, x1, y1 = a.bounds
+                u0, v0, u1, v1 = b.bounds
+                bounds = (min(x0, u0), min(y0, v0), max(x1, u1), max(y1, v1))
+                out.append(Candidate(joined, bounds, a.quarter, a.height, (a.word, b.word)))
+    return out
+
+
+def _together(a: Spot, b: Spot) -> bool:
+    """Whether b follows a on the line, or starts the next line."""
+    h = max(a.height, b.height)
+    ax0, ay0, ax1, ay1 = _reading(a)
+    bx0, by0, bx1, by1 = _reading(b)
+    follows = 0 <= bx0 - ax1 + 0.3 * h < 1.8 * h and abs(ay0 + ay1 - by0 - by1) < h
+    below = 0 <= by0 - ay1 + 0.3 * h < 1.1 * h and min(ax1, bx1) > max(ax0, bx0)
+    return follows or below
+
+
+def _reading(s: Spot) -> tuple[float, float, float, float]:
+    """Bounds in the word's own frame: x along the line, y down the lines."""
+    x0, y0, x1, y1 = s.bounds
+    if s.quarter == 1:
+        return -y1, x0, -y0, x1
+    if s.quarter == 3:
+        return y0, -x1, y1, -x0
+    return x0, y0, x1, y1
+
+
+def _cost(axis: Axis, column: Column, c: Candidate, size: tuple[float, float]) -> float:
+    """Distance of a title from the numbers of an axis in heights of type, and what speaks against."""
+    if not _suits(axis, c.title):
+        return 1e9
+    w, h = size
+    x0, y0, x1, y1 = c.bounds
+    near, far = column.near, column.far
+    pad = 1.0 * column.height
+    if axis.side == "left":
+        strip = (-far, -pad, -near, h + pad)
+    elif axis.side == "right":
+        strip = (w + near, -pad, w + far, h + pad)
+    elif axis.side == "bottom":
+        strip = (-pad, h + near, w + pad, h + far)
+    else:
+        strip = (-pad, -far, w + pad, -near)
+    dx = max(strip[0] - x1, x0 - strip[2], 0.0)
+    dy = max(strip[1] - y1, y0 - strip[3], 0.0)
+    cost = (dx * dx + dy * dy) ** 0.5 / max(column.height, 1.0)
+    inside = x0 > 0 and x1 < w and y0 > 0 and y1 < h
+    inner = {
+        "left": x0 > strip[2] - 0.3 * pad,
+        "right": x1 < strip[0] + 0.3 * pad,
+        "bottom": y1 < strip[1] + 0.3 * pad,
+        "top": y0 > strip[3] - 0.3 * pad,
+    }[axis.side]
+    cost += 7.0 * inside + 2.0 * (inner and not inside)
+    turned = c.quarter in (1, 3)
+    if axis.along_flow and turned:
+        cost += 10
+    if not axis.along_flow and not turned and 0.15 * h < (y0 + y1) / 2 < 0.85 * h:
+        cost += 1.0
+    cost += {0: 20.0, 1: 3.0, 2: 1.5, 3: 0.0}[c.title.strength]
+    return cost + 1.0 * c.title.guessed + 0.5 * (len(c.words) - 1)
+
+
+def _suits(axis: Axis, title: Title) -> bool:
+    flow = title.dimension == "flow"
+    if axis.along_flow != flow:
+        return False
+    if title.dimension == "ratio":
+        top = max(axis.value([0.0, 1.0]))  # type: ignore[arg-type]
+        return bool(top <= 200)
+    return True
+
+
+def _named(axis: Axis, c: Candidate | None, column: Column) -> Axis:
+    suffix = _suffix(column)
+    if c is None:
+        title = read_title(suffix) if suffix else None
+        if title is None or title.unit is None:
+            return axis
+    else:
+        title = c.title
+        if title.unit is None and suffix:
+            own = read_title(suffix)
+            if own.dimension == title.dimension:
+                title = replace(title, unit=own.unit, printed_unit=own.printed_unit)
+    return replace(
+        axis,
+        quantity=title.quantity,
+        unit=title.unit,
+        printed_unit=title.printed_unit,
+        factor=title.factor,
+        title=title.text if c is not None else "",
+        guessed=title.guessed,
+    )
+
+
+def _suffix(column: Column) -> str:
+    """A unit printed behind the numbers themselves ("80 %")."""
+    found = [r.readings[0].suffix for r in column.labels if r.readings[0].suffix]
+    return max(set(found), key=found.count) if found else ""
+
+
+def gallon_finding(axis: Axis) -> Finding:
+    """Gallons of no stated kind were taken as US gallons."""
+    panel = axis.name.partition(".")[0]
+    return Finding(
+        "info",
+        "axis.gallons",
+        f'"{axis.printed_unit}" was taken for US gallons: the chart does not say which.',
+        Location(panel=panel, axis=axis.name),
+        f'In the notes give the axis unit = "US gpm" or "igpm" (panel "{panel}").',
+    )

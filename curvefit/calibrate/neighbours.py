@@ -1,0 +1,140 @@
+"""What axes say of each other: a second flow scale on top, the panels of a stack, head in m and ft."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numpy as np
+
+from curvefit.calibrate.naming import gallon_finding
+from curvefit.calibrate.titles import read_title
+from curvefit.errors import Location
+from curvefit.records import Axis, Finding, Panel
+from curvefit.units import to_si
+
+__all__ = ["checked_together"]
+
+_FLOWS = ("m3/h", "L/s", "L/min", "[gal_us]/min", "[gal_br]/min", "m3/s")
+_POWERS_OF_TEN = (0.001, 0.01, 0.1, 10.0, 100.0, 1000.0)
+
+
+def checked_together(panels: Sequence[Panel]) -> tuple[Panel, ...]:
+    """The panels with units filled in from, and doubts raised by, the axes beside them."""
+    out = [_same_dimension(p) for p in panels]
+    out = _stacked(out)
+    return tuple(_gallons(p) for p in out)
+
+
+def _ends_si(axis: Axis, unit: str | None = None) -> np.ndarray:  # type: ignore[type-arg]
+    return np.asarray(to_si(axis.value(np.array([0.0, 1.0])), unit or axis.unit or "1"))
+
+
+def _ratio(a: Axis, b: Axis, unit_a: str | None = None, unit_b: str | None = None) -> float | None:
+    """Scale a over scale b in SI where both run alike; None where they do not."""
+    x, y = _ends_si(a, unit_a), _ends_si(b, unit_b)
+    if a.scale != b.scale or abs(y[1] - y[0]) == 0:
+        return None
+    ratio = float((x[1] - x[0]) / (y[1] - y[0]))
+    return ratio if abs(x[0] - ratio * y[0]) < 0.01 * abs(x[1] - x[0]) else None
+
+
+def _same_dimension(panel: Panel) -> Panel:
+    """Two flow axes, or head in metres and feet, must show the same quantity."""
+    axes = list(panel.axes)
+    said: list[Finding] = []
+    bottom = next((a for a in axes if a.name.endswith(".bottom")), None)
+    for k, top in enumerate(axes):
+        if bottom is None or not top.along_flow or top is bottom:
+            continue
+        axes[k], finding = _second_flow(bottom, top)
+        said += finding
+    return replace(panel, axes=tuple(axes), findings=panel.findings + tuple(said))
+
+
+def _second_flow(bottom: Axis, top: Axis) -> tuple[Axis, list[Finding]]:
+    if bottom.unit is None:
+        return top, []
+    if top.unit is None:
+        for unit in _FLOWS:
+            ratio = _ratio(top, bottom, unit)
+            if ratio is not None and abs(ratio - 1) < 0.005:
+                named = replace(top, quantity="flow", unit=unit, printed_unit="", guessed=True)
+                return named, []
+        return top, []
+    ratio = _ratio(top, bottom)
+    if ratio is not None and abs(ratio - 1) < 0.02:
+        return top, []
+    message = (
+        f"its scale is {ratio:.3g} times that of {bottom.name}, 1 was expected."
+        if ratio is not None
+        else f"it does not show the same flow as {bottom.name}."
+    )
+    remedy = f'Give unit or marks of axis "{top.name.partition(".")[2]}" in the notes.'
+    where = Location(panel=top.name.partition(".")[0], axis=top.name)
+    return top, [Finding("warning", "axis.two-flows", message, where, remedy)]
+
+
+def _stacked(panels: list[Panel]) -> list[Panel]:
+    """Panels in line: one flow title serves all; scales a power of ten apart are in doubt."""
+    out = list(panels)
+    for i, panel in enumerate(out):
+        for k, axis in enumerate(panel.axes):
+            if axis.side != "bottom" or axis.name.count(".") > 1:
+                continue
+            others = [
+                a for q in out if q is not panel and _in_line(panel, q)
+                for a in q.axes if a.side == "bottom" and a.unit is not None
+            ]  # fmt: skip
+            if axis.unit is None and others:
+                donor = others[-1]
+                if _alike(axis, donor):
+                    axes = list(out[i].axes)
+                    axes[k] = replace(
+                        axis, quantity=donor.quantity, unit=donor.unit, factor=donor.factor,
+                        printed_unit=donor.printed_unit, title=donor.title, guessed=donor.guessed,
+                    )  # fmt: skip
+                    out[i] = replace(out[i], axes=tuple(axes))
+            for other in others:
+                ratio = _ratio(axis, other, other.unit)
+                if ratio is not None and any(abs(ratio / t - 1) < 0.01 for t in _POWERS_OF_TEN):
+                    out[i] = _doubted(out[i], axis, other, ratio)
+                    break
+    return out
+
+
+def _in_line(a: Panel, b: Panel) -> bool:
+    flat = a.warp.to_panel(b.corners)[:, 0] / a.warp.size[0]
+    return bool(np.abs(flat - [0, 1, 1, 0]).max() < 0.006)
+
+
+def _alike(a: Axis, b: Axis) -> bool:
+    x, y = (s.offset + s.slope * np.array([0.0, 1.0]) for s in (a, b))
+    return a.scale == b.scale and bool(np.abs(x - y).max() < 0.01 * abs(y[1] - y[0]))
+
+
+def _doubted(panel: Panel, axis: Axis, other: Axis, ratio: float) -> Panel:
+    message = f"its scale is {ratio:g} times that of {other.name}, which stands in line with it."
+    remedy = f'Give two marks of axis "bottom" of panel "{panel.name}" in the notes.'
+    where = Location(panel=panel.name, axis=axis.name)
+    finding = Finding("warning", "axis.factor", message, where, remedy)
+    return replace(panel, findings=(*panel.findings, finding))
+
+
+def _gallons(panel: Panel) -> Panel:
+    """Gallons of no stated kind: said, unless another flow axis of the panel confirms them."""
+    said = []
+    for axis in panel.axes:
+        if axis.by == "given" or not axis.along_flow or not read_title(axis.title).bare_gallon:
+            continue
+        if not any(
+            o is not axis and o.along_flow and o.unit is not None and _confirms(axis, o)
+            for o in panel.axes
+        ):
+            said.append(gallon_finding(axis))
+    return replace(panel, findings=panel.findings + tuple(said))
+
+
+def _confirms(a: Axis, b: Axis) -> bool:
+    ratio = _ratio(a, b)
+    return ratio is not None and abs(ratio - 1) < 0.02
