@@ -18,6 +18,7 @@ __all__ = [
     "ended",
     "findings_text",
     "quantity_text",
+    "range_text",
     "say",
     "say_error",
     "table",
@@ -108,6 +109,19 @@ def quantity_text(value: float | None, unit: str, digits: int = 4) -> str:
     return f"{value:.{digits}g} {known(unit).print}".rstrip()
 
 
+def range_text(low: float, high: float, unit: str) -> str:
+    """A range with its unit, both ends to a ten-thousandth of the larger one."""
+    from math import floor, log10
+
+    from curvefit.units import unit as known
+
+    largest = max(abs(low), abs(high), 1e-300)
+    places = 3 - floor(log10(largest))
+    ends = (f"{round(v, places) + 0.0:.{max(places, 0)}f}" for v in (low, high))
+    short = (e.rstrip("0").rstrip(".") if "." in e else e for e in ends)
+    return f"{' to '.join(short)} {known(unit).print}".rstrip()
+
+
 def table(head: Sequence[str], rows: Iterable[Sequence[str]]) -> str:
     """A plain table of aligned columns, two blanks between them."""
     cells = [list(head), *(list(map(plain, r)) for r in rows)]
@@ -122,20 +136,18 @@ def curve_table(reading: Reading, units: Mapping[str, str | None] | None = None)
     import numpy as np
 
     from curvefit.records import QUANTITIES
-    from curvefit.units import unit as known
     from curvefit.write.outgoing import outgoing
 
     rows = []
     for c in outgoing(reading, units).curves:
         u = c.u[np.isfinite(c.u)]
-        flow = known(c.units.flow).print
         rows.append(
             [
                 c.curve.panel.name if c.curve.panel is not None else "–",
                 c.curve.name,
                 QUANTITIES[c.units.quantity].title + (" (guess)" if c.curve.guessed else ""),
                 c.curve.label or "–",
-                f"{c.flow.min():.4g} to {c.flow.max():.4g} {flow}",
+                range_text(float(c.flow.min()), float(c.flow.max()), c.units.flow),
                 quantity_text(float(np.median(u)), c.units.value, 2) if len(u) else "unknown",
             ]
         )

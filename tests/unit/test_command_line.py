@@ -282,3 +282,20 @@ def test_the_demo_chart_is_the_one_that_its_comment_says():
     with Image.open(BytesIO(shipped)) as a, Image.open(BytesIO(drawn.data)) as b:
         gap = np.abs(np.asarray(a, float) - np.asarray(b, float)).mean()
     assert gap < 1.0
+
+
+@pytest.mark.parametrize(
+    ("low", "high", "text"),
+    [
+        (-5.5e-6, 532.18, "0 to 532.2 m³/h"),
+        (2, 95.04, "2 to 95.04 m³/h"),
+        (-2.331, 901.3, "-2.3 to 901.3 m³/h"),
+        (10000, 123456, "10000 to 123500 m³/h"),
+        (0, 0.01234567, "0 to 0.01235 m³/h"),
+        (0, 0, "0 to 0 m³/h"),
+    ],
+)
+def test_a_range_shows_what_its_larger_end_can_carry(low, high, text):
+    from curvefit_cli.show import range_text
+
+    assert range_text(low, high, "m3/h") == text
