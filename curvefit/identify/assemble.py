@@ -12,7 +12,7 @@ from curvefit.identify.levels import Level, iso_lines, levels
 from curvefit.identify.line import Line
 from curvefit.identify.members import name_families
 from curvefit.identify.naming import names
-from curvefit.identify.placing import Label, labels_of
+from curvefit.identify.placing import Label, labels_of, same_place
 from curvefit.identify.pumps import page_words, read_pump, with_notes
 from curvefit.identify.quantities import Choice, choose, usable_axes
 from curvefit.identify.scales import agreements, with_units
@@ -98,7 +98,7 @@ def _lines_of(
         for trace, level in zip(isos, levels(isos, labels, heads), strict=True):
             made.append(_iso_line(trace, panel, flow, head, level))
             if level.label is not None:
-                used.add(id(level.label.word))
+                used |= same_place(level.label, labels)
     seen = {id(x.trace) for x in made} | {id(c.trace) for c in choices}
     findings += [
         doubts.no_axis(t, panel) for t in traces if id(t) not in seen and (flow is None or not axes)

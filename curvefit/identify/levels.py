@@ -165,23 +165,61 @@ def levels(
     """
     settings = settings or Settings()
     kind = _kind(lines, labels, settings)
-    quantity = _QUANTITY[kind]
     dealt = _dealt(lines, labels, kind, settings)
-    unknown = [t for t, d in zip(lines, dealt, strict=True) if d is None or d[1].cost >= 0.5]
-    if kind == "percent" and unknown:
-        panel = lines[0].panel
-        labels = (*labels, *at_ends(panel, unknown, text_height(panel)))
-        dealt = _dealt(lines, labels, kind, settings)
-    values = [None if d is None else d[1].value for d in dealt]
-    rows = _sequences(lines, heads)
-    texts = [d[0].text if d else "" for d in dealt]
-    mended = settle(values, texts, rows) if kind == "percent" else values
+    values = _settled(lines, dealt, heads, kind)
+    doubtful = [
+        i
+        for i, (d, v) in enumerate(zip(dealt, values, strict=True))
+        if d is None or d[1].cost >= 0.5 or d[1].value != v
+    ]
+    if kind == "percent" and doubtful:
+        labels = _looked_again(lines, dealt, labels, doubtful)
+        second = _dealt(lines, labels, kind, settings)
+        after = _settled(lines, second, heads, kind)
+        if sum(v is None for v in after) <= sum(v is None for v in values):
+            dealt, values = second, after
     usual = next((d[1].unit for d in dealt if d is not None), _UNIT[kind])
     found = []
-    for d, before, after in zip(dealt, values, mended, strict=True):
+    for d, value in zip(dealt, values, strict=True):
         unit = d[1].unit if d is not None else usual
-        found.append(Level(quantity, after, unit, d[0] if d else None, before != after))
+        read = None if d is None else d[1].value
+        found.append(Level(_QUANTITY[kind], value, unit, d[0] if d else None, read != value))
     return found
+
+
+_Dealt = list[tuple[Label, Meaning] | None]
+
+
+def _settled(
+    lines: Sequence[Trace], dealt: _Dealt, heads: Sequence[Trace], kind: str
+) -> list[float | None]:
+    values = [None if d is None else d[1].value for d in dealt]
+    if kind != "percent":
+        return values
+    return settle(values, [d[0].text if d else "" for d in dealt], _sequences(lines, heads))
+
+
+def _looked_again(
+    lines: Sequence[Trace], dealt: _Dealt, labels: Sequence[Label], doubtful: Sequence[int]
+) -> list[Label]:
+    """Labels with those of doubtful lines read afresh; a new reading takes the old one's place."""
+    panel = lines[0].panel
+    height = text_height(panel)
+    found = at_ends(panel, [lines[i] for i in doubtful], height)
+    doubted = {id(d[0]) for i in doubtful if (d := dealt[i]) is not None}
+
+    def replaced(old: Label) -> bool:
+        return any(np.hypot(*(old.centre - new.centre)) < 1.5 * height for new in found)
+
+    def known(new: Label) -> bool:
+        return any(
+            np.hypot(*(old.centre - new.centre)) < 2.0 * height and old.means("percent")
+            for old in labels
+            if id(old) not in doubted
+        )
+
+    kept = [w for w in labels if not (id(w) in doubted and replaced(w))]
+    return [*kept, *(w for w in found if not known(w))]
 
 
 def _kind(lines: Sequence[Trace], labels: Sequence[Label], settings: Settings) -> str:
@@ -203,11 +241,11 @@ def _near(label: Label, trace: Trace) -> float:
 
 def _dealt(
     lines: Sequence[Trace], labels: Sequence[Label], kind: str, settings: Settings
-) -> list[tuple[Label, Meaning] | None]:
+) -> _Dealt:
     from scipy.optimize import linear_sum_assignment
 
     holding = [w for w in labels if w.means(kind)]
-    dealt: list[tuple[Label, Meaning] | None] = [None] * len(lines)
+    dealt: _Dealt = [None] * len(lines)
     if not holding or not lines:
         return dealt
     n, k = len(lines), len(holding)

@@ -7,7 +7,8 @@ reader that is shown the right spot reads it all the same.
 from __future__ import annotations
 
 import re
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -24,6 +25,9 @@ _PERCENT = "0123456789.%"
 _ALPHABETS = (None, "0123456789Øø⌀=.,/\"'% ", _PERCENT)
 _AT_ENDS = [(0, 0), (0, -0.6), (0, 0.6), (0, -1.2), (0, 1.2), (1.7, 0), (-1.7, 0), (1.5, -0.7),
             (-1.5, -0.7)]  # fmt: skip
+_LABELS = re.compile(
+    r"[Øø⌀∅]\s?\d{2,4}(?:\s?mm)?|(?<!\d)\d{3,4}\s?(?:mm|rpm|1/min)|\d{1,2}(?:[- ]?\d/\d{1,2})?\s?\""
+)
 _SAMPLED = 3  #: lines of a kind that are searched in full; the others where these had theirs
 
 
@@ -80,7 +84,17 @@ def at_ends(panel: Panel, traces: Sequence[Trace], height: float) -> tuple[Label
     rest = [t for t in traces if not any(t is s for s in sample)]
     places = sorted(hits, key=lambda p: -sum(where == p for where, _ in first))[:3]
     second = _levels_at(panel, rest, places, height) if places else []
-    return tuple(label for _, label in (*first, *second))
+    return _once([label for _, label in (*first, *second)], height)
+
+
+def _once(labels: Sequence[Label], height: float) -> tuple[Label, ...]:
+    """Labels without repeats of the same print, the surest reading of each."""
+    kept: list[Label] = []
+    for label in sorted(labels, key=lambda w: -w.word.score):
+        near = [k for k in kept if np.hypot(*(k.centre - label.centre)) < 2.0 * height]
+        if not near:
+            kept.append(label)
+    return tuple(kept)
 
 
 def _levels_at(
@@ -119,39 +133,56 @@ def along(
 
     Notes
     -----
-    The strip beside a line is straightened along it, so that text that follows it is level.
-    Reading stops at the first kind of place in which most lines have a label.
+    The strip beside a line is straightened along it, so that text that follows it is level. Two
+    lines are searched in full; a kind of place in which neither has a label is left out. The
+    strip above one line may be that below another: which label is whose is decided later.
     """
     if panel.page.vector or not traces:
         return ()
     every: list[Label] = []
     for place in (_behind, _before, _above, _over, _below):
-        found = []
-        for trace in traces:
-            strips = place(panel, trace, height)
-            hits = [w for w in _read_strips(panel, strips, height) if wanted(w)]
+        found: list[Label] = []
+        for k, trace in enumerate(_ends_first(traces)):
+            if k == 2 and not found:
+                break
+            hits = [
+                w for w in _read_strips(panel, place(panel, trace, height), height) if wanted(w)
+            ]
             found += [max(hits, key=lambda w: w.word.score)] if hits else []
         every += found
-        if len(found) > 0.6 * len(traces):
+        if place is _behind and len(found) == len(traces) > 1:
             break
     return tuple(every)
 
 
-_Strip = tuple[Array, Image]
+def _ends_first(traces: Sequence[Trace]) -> list[Trace]:
+    return [*traces[:1], *traces[-1:], *traces[1:-1]] if len(traces) > 1 else list(traces)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Strip:
+    """Pixels in which a label may stand: its middle [box px], and where in it text is looked for.
+
+    side : 1 text starts at `centre`, −1 it ends there, 0 it may be anywhere about it.
+    """
+
+    crop: Image
+    centre: Array
+    side: int = 0
 
 
 def _behind(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
-    return _level_strip(panel, trace.flat[-1] + np.array([3.2, 0]) * height, height)
+    return _level_strip(panel, trace.flat[-1], 1, height)
 
 
 def _before(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
-    return _level_strip(panel, trace.flat[0] - np.array([3.2, 0]) * height, height)
+    return _level_strip(panel, trace.flat[0], -1, height)
 
 
-def _level_strip(panel: Panel, centre: Array, height: float) -> list[_Strip]:
-    box = _box(panel, centre, np.array([3.0, 0.75]) * height)
-    crop = _crop(panel.page, box)
-    return [] if crop is None else [(centre, crop)]
+def _level_strip(panel: Panel, end: Array, side: int, height: float) -> list[_Strip]:
+    middle = end + np.array([3.2 * side * height, 0])
+    crop = _crop(panel.page, _box(panel, middle, np.array([3.0, 0.75]) * height))
+    return [] if crop is None else [_Strip(crop, end + np.array([0.4 * side * height, 0]), side)]
 
 
 def _above(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
@@ -167,15 +198,15 @@ def _below(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
 
 
 def _beside(panel: Panel, trace: Trace, height: float, shift: float) -> list[_Strip]:
-    """Strips seven heights long beside a line: the first third of it and the last."""
+    """Strips nine heights long beside a line: the first third of it and the last."""
     import cv2
 
     x, y = trace.flat.T
-    width = 7.0 * height
+    width = 9.0 * height
     starts = np.arange(x[0] - height, x[-1] - width, 4.5 * height)
     third = (x[-1] - x[0]) / 3
     strips = []
-    for start in starts[(starts < x[0] + third) | (starts > x[-1] - third - width)][:16]:
+    for start in starts[(starts < x[0] + third) | (starts > x[-1] - third - width)][:10]:
         across = np.arange(start, start + width)
         middle = np.interp(across, x, y) + shift * height
         up = np.arange(-0.75 * height, 0.75 * height)
@@ -189,7 +220,8 @@ def _beside(panel: Panel, trace: Trace, height: float, shift: float) -> list[_St
             borderMode=cv2.BORDER_REPLICATE,
         )
         centre = np.array([start + width / 2, middle[len(middle) // 2]])
-        strips.append((centre, np.asarray(crop, np.uint8)))
+        if _inked(crop):
+            strips.append(_Strip(np.asarray(crop, np.uint8), centre))
     return strips
 
 
@@ -197,13 +229,25 @@ def _read_strips(panel: Panel, strips: Sequence[_Strip], height: float) -> list[
     from curvefit.ocr import recognise
 
     found = []
-    texts = recognise([crop for _, crop in strips])
-    for (centre, _), (text, score) in zip(strips, texts, strict=True):
-        clean = re.sub(r"^[^\w⌀∅@(]+|[^\w%\"')]+$", "", text)
-        if len(clean) > 1 and score > 0.6:
-            half = np.array([0.28 * len(clean), 0.5]) * height
-            found.append(label_of(panel, Word(clean, _box(panel, centre, half), score)))
+    texts = recognise([s.crop for s in strips])
+    for strip, (text, score) in zip(strips, texts, strict=True):
+        if score < 0.6:
+            continue
+        for part in _labels_in(text):
+            half = np.array([0.28 * len(part), 0.5]) * height
+            centre = strip.centre + np.array([strip.side * half[0], 0])
+            found.append(label_of(panel, Word(part, _box(panel, centre, half), score)))
     return found
+
+
+def _labels_in(text: str) -> Iterator[str]:
+    """The text, and what in it looks like a label of its own."""
+    clean = re.sub(r"^[^\w⌀∅@(]+|[^\w%\"')]+$", "", text)
+    if len(clean) > 1:
+        yield clean
+    for match in _LABELS.finditer(text):
+        if match[0].strip() != clean:
+            yield match[0].strip()
 
 
 def _anchor(trace: Trace, share: float) -> Array:
@@ -258,4 +302,10 @@ def _crop(page: Page, box: Array) -> Image | None:
     crop = cv2.warpAffine(
         page.pixels, matrix, (width, height), flags=cv2.INTER_CUBIC, borderMode=cv2.BORDER_REPLICATE
     )
-    return np.asarray(crop, np.uint8)
+    return np.asarray(crop, np.uint8) if _inked(crop) else None
+
+
+def _inked(crop: NDArray[np.uint8]) -> bool:
+    """Whether there is anything to read: blank paper is not shown to the reader."""
+    light = crop.min(2)
+    return bool(np.ptp(np.percentile(light, (1, 90))) > 40)

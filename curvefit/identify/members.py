@@ -12,7 +12,7 @@ from curvefit.identify.impellers import agree, member
 from curvefit.identify.ink import line_sample, same_ink
 from curvefit.identify.line import Line
 from curvefit.identify.look import again, along, missing
-from curvefit.identify.placing import Label, spot, text_height
+from curvefit.identify.placing import Label, same_place, spot, text_height
 from curvefit.identify.wording import Meaning
 from curvefit.records import Trace
 
@@ -67,7 +67,7 @@ def _label_group(
             continue
         _set(line, *got)
         doubts.of_label(line, *got)
-        taken.add(id(got[0].word))
+        taken |= same_place(got[0], free)
     return taken
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -12,7 +13,7 @@ from curvefit.identify.wording import Meaning, meanings
 from curvefit.records import Panel, Trace, Word
 from curvefit.units import fold
 
-__all__ = ["Label", "Spot", "label_of", "labels_of", "spot", "text_height"]
+__all__ = ["Label", "Spot", "label_of", "labels_of", "same_place", "spot", "text_height"]
 
 Array = NDArray[np.float64]
 
@@ -92,6 +93,15 @@ def label_of(panel: Panel, word: Word) -> Label:
         meanings(word.text),
         _masked(panel, word),
     )
+
+
+def same_place(label: Label, labels: Sequence[Label]) -> set[int]:
+    """Ids of the words that stand where a label does: other readings of the same print."""
+    return {
+        id(w.word)
+        for w in (label, *labels)
+        if np.hypot(*(w.centre - label.centre)) < 1.5 * label.height
+    }
 
 
 def spot(label: Label, trace: Trace) -> Spot:

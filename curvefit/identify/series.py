@@ -14,10 +14,14 @@ __all__ = ["Settings", "series_step", "settle", "unimodal"]
 class Settings:
     """Costs: a level off the series, one character misread, no level, one that no text says.
 
+    outer : a level off the series and not near its top; apart : one more than 2.5 steps from all
+    others.
     disorder : a head line along which the levels do not rise to one peak and fall behind it.
     """
 
     off_series: float = 0.4
+    outer: float = 1.3
+    apart: float = 1.5
     misread: float = 1.2
     unknown: float = 2.0
     silent: float = 1.6
@@ -106,7 +110,11 @@ def settle(
                 costs[level] = settings.silent
         if value is not None:
             off = step is not None and not _on(value, step)
-            costs[value] = settings.off_series * off
+            outer = off and value < high - 1.5 * (step or 0)  # extra levels stand about the peak
+            costs[value] = settings.outer if outer else settings.off_series * off
+            others = [abs(value - k) for k in known if abs(value - k) > 1e-9]
+            if step is not None and others and min(others) > 2.5 * step:
+                costs[value] = settings.apart
         options.append(costs)
     chosen = list(values)
     for _ in range(2 * len(chosen)):
@@ -178,8 +186,8 @@ def _misread(text: str, level: float) -> bool:
     """Whether a text could be this level with one character misread or lost."""
     digits = "".join(c for c in text if c.isdigit())
     right = f"{100 * level:g}".replace(".", "")
-    if len(digits) > len(right):
-        digits = digits[: len(right)]
+    if len(digits) > len(right) == 2:
+        digits = digits[:2]  # what follows was the sign
     if len(digits) == len(right):
         return sum(a != b for a, b in zip(digits, right, strict=True)) <= 1
     return len(digits) + 1 == len(right) and (right.startswith(digits) or right.endswith(digits))

@@ -255,6 +255,9 @@ def _inches(body: str) -> tuple[float, bool] | None:
     match = re.fullmatch(r"(\d{1,2})[ -]\s?(\d{1,2})/(2|4|8|16|32|3)", bare)
     if match and int(match[2]) < int(match[3]):
         return int(match[1]) + int(match[2]) / int(match[3]), quoted
+    match = re.fullmatch(r"(\d{1,2})([137])/(2|4|8)", bare)
+    if match and quoted and int(match[2]) < int(match[3]):  # the blank was lost
+        return int(match[1]) + int(match[2]) / int(match[3]), quoted
     match = re.fullmatch(r"(\d{1,2}(?:[.,]\d{1,3})?)", bare)
     if (
         match
