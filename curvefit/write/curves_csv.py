@@ -46,7 +46,7 @@ def curves_csv(out: Outgoing) -> str:
     text = io.StringIO()
     writer = csv.writer(text, lineterminator="\r\n")
     writer.writerow([name for name, _, _ in COLUMNS])
-    for curve in out.curves:
+    for curve in (*out.curves, *out.derived):
         writer.writerows(_traced(out, curve))
         for fit in out.fits_of(curve.curve):
             writer.writerows(_fitted(out, curve, fit))

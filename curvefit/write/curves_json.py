@@ -40,6 +40,7 @@ def curves_document(out: Outgoing) -> dict[str, Any]:
         "pumps": [_pump(p) for p in out.reading.pumps],
         "panels": [_panel(out.reading, p) for p in out.reading.panels],
         "curves": [_curve(c) for c in out.curves],
+        "derived_curves": [_curve(c) for c in out.derived],
         "fits": [_fit(f) for f in out.fits],
         "findings": [_finding(out.reading, f) for f in out.findings],
     }

@@ -90,7 +90,7 @@ def clean_curves(
     out = outgoing(_as_reading(opened), units)
     grids = _grids(out, how)
     made, said = [], list(out.findings[len(opened.findings) :])
-    for curve in out.curves:
+    for curve in (*out.curves, *out.derived):
         clean = _clean(out, curve, grids.get(curve.curve.name), how)
         if how.strict and curve.units.quantity in ("head", "differential_pressure"):
             clean, finding = _made_falling(clean, how.digits)
@@ -138,7 +138,7 @@ def _fit(out: Outgoing, curve: CurveOut) -> FitOut | None:
 def _grids(out: Outgoing, how: Sampling) -> dict[str, Array]:
     """The flows of every curve by name; iso lines are left out."""
     grids: dict[str, Array] = {}
-    for curve in out.curves:
+    for curve in (*out.curves, *out.derived):
         if curve.curve.iso:
             continue
         fit = _fit(out, curve)
@@ -161,7 +161,7 @@ def _shared(
     """One grid over the flows that all curves cover; each curve keeps it as it is."""
     if not names:
         return {}
-    by_name = {c.curve.name: c for c in out.curves}
+    by_name = {c.curve.name: c for c in (*out.curves, *out.derived)}
     curves = [(by_name[n], _fit(out, by_name[n])) for n in names]
     low = max(_span(c, f)[0] for c, f in curves)
     high = min(_span(c, f)[1] for c, f in curves)

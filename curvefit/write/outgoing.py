@@ -90,10 +90,15 @@ class FitOut:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Outgoing:
-    """All curves, fits and findings of a reading on their way out."""
+    """All curves, fits and findings of a reading on their way out.
+
+    derived : curves that stand on no line of the page but were made of others for a fit (the
+    efficiency of a hill chart's impellers).
+    """
 
     reading: Reading
     curves: tuple[CurveOut, ...]
+    derived: tuple[CurveOut, ...]
     fits: tuple[FitOut, ...]
     findings: tuple[Finding, ...]
     points: int | None
@@ -112,15 +117,20 @@ def outgoing(
     chosen = choose_units(units)
     pumps = {p.name: p for p in reading.pumps}
     stated: list[Finding] = []
-    curves = []
-    for curve in reading.curves:
+
+    def leaving(curve: Curve) -> CurveOut:
         pump = pumps.get(curve.pump)
         out = out_units(curve, chosen, pump)
         if out.density is not None:
             stated.append(density_finding(curve, out, bool(pump and pump.density_si)))
-        curves.append(_curve_out(reading, curve, out, pump, points))
+        return _curve_out(reading, curve, out, pump, points)
+
+    curves = tuple(leaving(c) for c in reading.curves)
+    read = {c.name for c in reading.curves}
+    made = {c.name: c for f in reading.fits for c in f.curves if c.name not in read}
+    derived = tuple(leaving(c) for c in made.values())
     fits = tuple(_fit_out(f, chosen, pumps) for f in reading.fits)
-    return Outgoing(reading, tuple(curves), fits, reading.findings + tuple(stated), points)
+    return Outgoing(reading, curves, derived, fits, reading.findings + tuple(stated), points)
 
 
 def findings_of(curve: Curve, findings: Sequence[Finding]) -> tuple[Finding, ...]:

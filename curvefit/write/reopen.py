@@ -98,7 +98,8 @@ class _Opened:
         try:
             pumps = self.each(document, "pumps", _pump)
             curves = self.each(document, "curves", _curve)
-            by_name = {c.name: c for c in curves}
+            derived = self.each(document, "derived_curves", _curve)
+            by_name = {c.name: c for c in (*curves, *derived)}
             fits = self.each(document, "fits", lambda row: _fit(row, by_name))
             findings = self.each(document, "findings", _finding)
         except (KeyError, TypeError, ValueError, IndexError, AttributeError, InputError) as error:
