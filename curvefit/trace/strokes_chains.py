@@ -16,6 +16,7 @@ Array = NDArray[np.float64]
 TOUCH = 0.6  #: px between ends that are one point
 DASH_GAP = 2.2  #: longest gap in units of the dashes on both sides
 LONGEST_GAP = 70.0  #: px
+LONGEST_DASH = 140.0  #: px
 LABEL_GAP = 260.0  #: px, where a word stands in the gap
 BENT = 28.0  #: degrees by which a line may turn over a gap
 CORNER = 50.0  #: … and where its pieces touch
@@ -126,7 +127,8 @@ def _links(ends: list[End], lengths: Array, words: Array) -> list[tuple[float, i
             continue
         la, lb = lengths[ends[a].piece], lengths[ends[b].piece]
         lean = max(_degrees(ahead[a], gap / size), _degrees(-ahead[b], gap / size))
-        dashes = not same and size < min(DASH_GAP * min(la, lb) + 4.0, LONGEST_GAP)
+        dashes = not same and max(la, lb) < LONGEST_DASH
+        dashes = dashes and size < min(DASH_GAP * min(la, lb) + 4.0, LONGEST_GAP)
         label = min(la, lb) > 1.5 * size and _word_in(words, at[a], at[b])
         if (dashes or label) and turn < BENT and lean < 0.8 * BENT:
             found.append((0.1 + size / 40 + lean / 15, a, b))

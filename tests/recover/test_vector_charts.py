@@ -358,3 +358,28 @@ def test_a_stretch_is_left_out(tmp_path):
     assert not ((x > 0.4) & (x < 0.6)).any()
     assert x.max() > 0.85 or other.flat[-1, 0] > cut.flat[-1, 0]
     assert len(other.flat) == len(traces[1].flat)
+
+
+def test_solid_lines_that_end_near_each_other_stay_two(tmp_path):
+    """A line of equal efficiency leaves the field and comes back a little further on."""
+    scene = Scene()
+    scene.axes("lines")
+    t = np.linspace(0, 1, 60)
+    scene.curve(np.column_stack([0.60 - 0.04 * t**2, 0.7 - 0.25 * t]), "dashed", "0.5 w")
+    scene.curve(np.column_stack([0.575 + 0.25 * t, 0.44 - 0.01 * t]), "dashed", "0.5 w")
+    traces = read(scene, tmp_path)[3]
+    assert len(traces) == 2
+    assert all(t.dash == "dashed" for t in traces)
+
+
+def test_a_picture_of_a_chart_is_not_traced_by_strokes(tmp_path):
+    """Rules and a logo elsewhere on the page do not make a vector chart of a picture."""
+    scene = Scene()
+    scene.axes("lines", "lines")
+    t = np.linspace(0, 2 * np.pi, 40)
+    logo = np.column_stack([30 + 12 * np.cos(t), 300 + 9 * np.sin(2 * t)])
+    scene.draw("2 w 0 0 1 RG", logo)
+    page, evidence, panel, traces = read(scene, tmp_path)
+    assert page.vector
+    assert not has_curves(panel)
+    assert traces == ()
