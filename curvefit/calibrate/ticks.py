@@ -107,8 +107,9 @@ def tick_rows(
         reach = max(3, round(0.0025 * max(length, depth)))
         inner = view[m + half + 2 : m + half + 2 + reach]
         outer = view[max(m - half - 1 - reach, 0) : m - half - 1]
-        rows += _row(side, "inside", inner.mean(0), m, length)
-        rows += _row(side, "outside", outer.mean(0), m, length)
+        floor = max(14.0, 0.15 * float(np.median(view[m])))
+        rows += _row(side, "inside", inner.mean(0), m, length, floor)
+        rows += _row(side, "outside", outer.mean(0), m, length, floor)
         if side in ("bottom", "left"):
             box = view[m + round(0.02 * depth) : m + round(0.98 * depth)]
             for other in (side, "top" if side == "bottom" else "right"):
@@ -124,7 +125,7 @@ def tick_rows(
                 ("outside", view[at - thick - 1 - reach : at - thick - 1]),
                 ("inside", view[at + thick + 2 : at + thick + 2 + reach]),
             ):
-                rows += _row(side, kind, strip.mean(0), m, length, offset)
+                rows += _row(side, kind, strip.mean(0), m, length, 14.0, offset)
     return tuple(rows)
 
 
@@ -194,10 +195,11 @@ def _row(
     profile: NDArray[np.float32],
     margin: int,
     length: float,
-    offset: float = 0,
+    floor: float,
+    offset: float = 0.0,
 ) -> list[TickRow]:
     """The peaks of a strip's profile as a row of ticks; none if there are fewer than two."""
-    at, weight, width = _peaks(profile.astype(float), 14.0, 0.2)
+    at, weight, width = _peaks(profile.astype(float), floor, 0.2)
     return _kept(side, kind, at - margin, weight, width, length, offset)
 
 

@@ -54,10 +54,12 @@ def find_text(flat: Image, zone_of: NDArray[np.int16], frame: Image, ticks: Imag
     letters = letters_of(dark, _TALLEST * long_side)
     at_side = np.unique(letters.label[cv2.dilate(frame, np.ones((3, 3), np.uint8)) > 0])
     at_tick = np.unique(letters.label[cv2.dilate(ticks, np.ones((7, 7), np.uint8)) > 0])
-    crumb = (letters.bar | letters.speck) & np.isin(letters.index, at_tick)
-    letters = letters.of(~np.isin(letters.index, at_side) & ~crumb)
     middle = ((letters.boxes[:, :2] + letters.boxes[:, 2:]) / 2).astype(int)
-    lines = text_lines(letters, zone_of[middle[:, 1], middle[:, 0]].astype(np.int64))
+    zones = zone_of[middle[:, 1], middle[:, 0]].astype(np.int64)
+    crumb = (letters.bar | letters.speck) & np.isin(letters.index, [*at_tick, *at_side])
+    crumb |= (zones > 0) & np.isin(letters.index, at_side)
+    letters, zones = letters.of(~crumb), zones[~crumb]
+    lines = text_lines(letters, zones)
     text = np.zeros(int(letters.label.max()) + 1, bool)
     text[letters.index] = True
     other = (letters.label > 0) & ~text[letters.label]
