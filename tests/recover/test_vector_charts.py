@@ -379,7 +379,7 @@ def test_a_picture_of_a_chart_is_not_traced_by_strokes(tmp_path):
     t = np.linspace(0, 2 * np.pi, 40)
     logo = np.column_stack([30 + 12 * np.cos(t), 300 + 9 * np.sin(2 * t)])
     scene.draw("2 w 0 0 1 RG", logo)
-    page, evidence, panel, traces = read(scene, tmp_path)
+    page, _, panel, traces = read(scene, tmp_path)
     assert page.vector
     assert not has_curves(panel)
     assert traces == ()
