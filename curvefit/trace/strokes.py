@@ -27,7 +27,7 @@ class Settings:
     """Tolerances; lengths in px at 300 to the inch, or as a share of the box's width.
 
     shortest : share, the shortest curve. leader : share of the diagonal up to which a straight
-    line is a pointer. straight : px off its chord. hatch : so many parallel straight lines are a
+    line is a pointer. straight, exact : px off its chord, of few points or of many. hatch : so many parallel straight lines are a
     hatching. ruled : share of a closed outline along the edges that makes it a frame.
     pale : lightness from which a stroke is a halo. edge : px that a line on the frame may lie out.
     many_fills : with more filled shapes than this in the box, only long ones are looked at.
@@ -36,6 +36,7 @@ class Settings:
     shortest: float = 0.05
     leader: float = 0.25
     straight: float = 0.3
+    exact: float = 0.05
     hatch: int = 5
     ruled: float = 0.6
     pale: float = 0.93
@@ -242,8 +243,9 @@ def _is_curve(chain: Chain, panel: Panel, s: Settings) -> bool:
     if closed and (size < 3 * s.shortest * width or _corners(xy) > 2):
         return False  # a marker, a sign, the outline of an area
     diagonal = float(np.hypot(width, height))
-    plain = len(xy) <= 4 and not chain.first.dash
-    if plain and _bow(xy) < s.straight and size < s.leader * diagonal:
+    plain = chain.pieces <= 3 and not chain.first.dash
+    ruled = _bow(xy) < (s.straight if len(xy) <= 4 else s.exact)
+    if plain and ruled and size < s.leader * diagonal:
         return False  # a pointer to a label
     return not (length.sum() > 12 * size)  # scribble: a sign, a filled-in area
 

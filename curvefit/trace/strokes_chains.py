@@ -19,6 +19,7 @@ LONGEST_GAP = 70.0  #: px
 LONGEST_DASH = 140.0  #: px
 LABEL_GAP = 260.0  #: px, where a word stands in the gap
 BENT = 28.0  #: degrees by which a line may turn over a gap
+ARC = 80.0  #: … where a label stands in the gap and both ends bend alike
 CORNER = 50.0  #: … and where its pieces touch
 
 
@@ -126,11 +127,14 @@ def _links(ends: list[End], lengths: Array, words: Array) -> list[tuple[float, i
                 found.append((turn / 90, a, b))
             continue
         la, lb = lengths[ends[a].piece], lengths[ends[b].piece]
-        lean = max(_degrees(ahead[a], gap / size), _degrees(-ahead[b], gap / size))
+        leans = _degrees(ahead[a], gap / size), _degrees(gap / size, -ahead[b])
+        lean = max(leans)
         dashes = not same and max(la, lb) < LONGEST_DASH
         dashes = dashes and size < min(DASH_GAP * min(la, lb) + 4.0, LONGEST_GAP)
         label = min(la, lb) > 1.5 * size and _word_in(words, at[a], at[b])
-        if (dashes or label) and turn < BENT and lean < 0.8 * BENT:
+        straight = turn < BENT and lean < 0.8 * BENT
+        arc = turn < ARC and abs(leans[0] - leans[1]) < ARC / 5 and turn > 0.8 * sum(leans)
+        if ((dashes or label) and straight) or (label and arc):
             found.append((0.1 + size / 40 + lean / 15, a, b))
     return found
 

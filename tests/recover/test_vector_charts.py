@@ -149,6 +149,7 @@ def test_what_is_no_curve_is_left_out(tmp_path):
     scene.text(200, 120, "n = 2900")
     scene.line(198, 125, 170, 190, "0.5 w")
     scene.ops.append("170 190 m 168 184 l 174 185 l h f")
+    scene.ops.append("210 230 m 220 235 230 240 270 260 c S")
     for k in range(1, 9):
         x, y = scene.points(curve_between(0, 0.9)[18 * k])
         scene.line(x - 3, y - 3, x + 3, y + 3)
