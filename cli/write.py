@@ -138,8 +138,10 @@ def _selected(
         return opened
     d = None if diameter is None else parse_quantity(diameter, "length", "mm")
     n = None if speed is None else parse_quantity(speed, "speed", "/min")
-    kept = select(opened.curves, pump, curve, d, n)
-    names = {c.name for c in kept}
+    drawn = {c.name for c in opened.curves}
+    derived = [f.curve for f in opened.fits if f.curve.name not in drawn]
+    names = {c.name for c in select((*opened.curves, *derived), pump, curve, d, n)}
+    kept = tuple(c for c in opened.curves if c.name in names)
     fits = tuple(f for f in opened.fits if {c.name for c in f.curves} <= names)
     return replace(opened, curves=kept, fits=fits)
 

@@ -47,7 +47,8 @@ def curves_csv(out: Outgoing) -> str:
     writer = csv.writer(text, lineterminator="\r\n")
     writer.writerow([name for name, _, _ in COLUMNS])
     for curve in (*out.curves, *out.derived):
-        writer.writerows(_traced(out, curve))
+        if curve in out.curves:
+            writer.writerows(_traced(out, curve))
         for fit in out.fits_of(curve.curve):
             writer.writerows(_fitted(out, curve, fit))
     return text.getvalue()

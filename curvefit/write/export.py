@@ -149,8 +149,9 @@ def _grids(out: Outgoing, how: Sampling) -> dict[str, Array]:
             allowed = how.tolerance * max(float(np.ptp(curve.value)), 1e-300)
             grids[curve.curve.name] = fewest_points([function], low, high, [allowed])
     if how.common:
-        for pump in {c.curve.pump for c in out.curves}:
-            names = [c.curve.name for c in out.curves if c.curve.pump == pump]
+        every = (*out.curves, *out.derived)
+        for pump in {c.curve.pump for c in every}:
+            names = [c.curve.name for c in every if c.curve.pump == pump]
             grids |= _shared(out, [n for n in names if n in grids], grids, how)
     return grids
 

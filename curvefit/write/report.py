@@ -69,7 +69,7 @@ def report(out: Outgoing, picture: Picture) -> str:
             picture=base64.b64encode(_bounded(picture)).decode(),
             picture_text=f"The page with {len(out.reading.panels)} plot boxes and "
             f"{len(out.curves)} curves drawn over it",
-            curves=[_curve(out, c) for c in out.curves],
+            curves=[_curve(out, c) for c in (*out.curves, *out.derived)],
             axes=[_axis(p, a) for p in out.reading.panels for a in p.axes],
             number=page.number,
             file=name,
@@ -134,7 +134,7 @@ def _finding(finding: Finding) -> dict[str, str]:
 
 def _curve(out: Outgoing, curve: CurveOut) -> dict[str, Any]:
     c, flow, value = curve.curve, unit(curve.units.flow).print, unit(curve.units.value).print
-    guess = " ?" if c.guessed else ""
+    guess = " (derived)" if curve in out.derived else " ?" if c.guessed else ""
     u = curve.u[np.isfinite(curve.u)]
     fits = out.fits_of(c)
     title = QUANTITIES[curve.units.quantity].title

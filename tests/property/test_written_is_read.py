@@ -87,6 +87,20 @@ def test_the_table_comes_back(made_reading, tmp_path_factory, flow, name):
         assert np.array_equal(a.flags, b.flags)
 
 
+def test_a_curve_that_only_its_fit_gives_comes_back(made_reading):
+    reading = made_reading()
+    lone = replace(reading.curves[2], name="efficiency at 210 mm", diameter_si=0.21)
+    fits = (*reading.fits, replace(reading.fits[2], curves=(lone,), name="derived"))
+    back = again(replace(reading, fits=fits))
+    assert [c.name for c in back.curves] == [c.name for c in reading.curves]
+    curve = back.fits[-1].curve
+    assert (curve.name, curve.quantity, curve.unit) == (lone.name, "efficiency", "%")
+    assert curve.diameter_si == pytest.approx(0.21)
+    close(curve.value_si, lone.value_si, 1e-7)
+    table = curves_csv(outgoing(replace(reading, fits=fits)))
+    assert table.count(",efficiency at 210 mm,") == len(fits[-1].band.flow_si)
+
+
 @slow
 @given(st.data())
 def test_labels_of_any_text_survive(made_reading, data):
