@@ -345,13 +345,14 @@ def _logs(curve: Curve, reference: dict[str, float]) -> Array:
 def _line(
     curve: Curve, settings: Settings
 ) -> tuple[NDArray[np.intp], Array, tuple[Array, Array], int]:
-    """Thinned points, their covariance's root, and the degree that the curve asks for."""
+    """Thinned points, what makes their errors independent, the degree that the curve asks for."""
     kept = thinned(curve.flow_si, min(48, settings.thin))
     flow, value = curve.flow_si[kept], curve.value_si[kept]
     u = line_uncertainty(curve)[kept]
     top = min(6, len(flow) - 5)
     fitted = average(flow, value, u, tuple(range(min(3, top), top + 1)), settings)
-    return kept, fitted.noise.scale * fitted.noise.whitener, (flow, value), fitted.best.degree
+    whitener = np.linalg.inv(fitted.noise.scale * fitted.noise.whitener)
+    return kept, whitener, (flow, value), fitted.best.degree
 
 
 def _causes(curves: Sequence[Curve]) -> tuple[str, ...]:

@@ -25,7 +25,7 @@ FEWEST = 3  #: crossings that a head curve needs for an efficiency of its own
 
 
 #: deviations from the law tried while weights and degree are still sought
-ROUGH = TAUS[4::3]
+ROUGH = TAUS[3:6:2]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -148,7 +148,7 @@ def _line(met: Sequence[Crossing], log: Array) -> Line:
     """Crossings and the origin; all equally weighted at first."""
     flow = np.array([0.0, *(x[0] for x in met)])
     level = np.array([0.0, *(x[1] for x in met)])
-    return Line(log, flow, level, np.eye(len(flow)) * 0.003, np.zeros((len(flow), 0)))
+    return Line(log, flow, level, np.eye(len(flow)) / 0.003, np.zeros((len(flow), 0)))
 
 
 def _weighted(joint: Joint, line: Line, index: int, met: Sequence[Crossing]) -> Line:
@@ -157,7 +157,7 @@ def _weighted(joint: Joint, line: Line, index: int, met: Sequence[Crossing]) -> 
     down, _, _ = predict(joint, line.logs, line.flow - step, index)
     slope = (up - down) / (2 * step)
     u = np.hypot(slope * np.array([0.0, *(x[2] for x in met)]), OWN)
-    return replace(line, whitener=np.diag(u))
+    return replace(line, whitener=np.diag(1 / u))
 
 
 def _best(lines: Sequence[Line], met: Sequence[Sequence[Crossing]]) -> _Model:
@@ -175,14 +175,14 @@ def _best(lines: Sequence[Line], met: Sequence[Sequence[Crossing]]) -> _Model:
         squares = 0.0
         for i, line in enumerate(weighted):
             miss = (predict(joint, line.logs, line.flow, i)[0] - line.value)[1:]
-            squares += float(np.sum((miss / np.diag(line.whitener)[1:]) ** 2))
+            squares += float(np.sum((miss * np.diag(line.whitener)[1:]) ** 2))
         criterion = points * np.log(squares / points + 0.1) + 2 * terms
         criterion += 2 * terms * (terms + 1) / max(points - terms - 1, 1)
         scale = float(np.sqrt(max(1.0, squares / max(points - terms, 1))))
         found.append((criterion, joint, weighted, scale))
     found.sort(key=lambda x: x[0])
     _, joint, weighted, scale = found[0]
-    wider = [replace(x, whitener=scale * x.whitener) for x in weighted]
+    wider = [replace(x, whitener=x.whitener / scale) for x in weighted]
     return _Model(_fit(wider, joint.degree), tuple(wider), found[1][1] if found[1:] else None)
 
 

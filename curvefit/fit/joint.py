@@ -21,7 +21,7 @@ __all__ = ["Joint", "Line", "Solution", "coefficients_at", "fit_joint", "predict
 Array = NDArray[np.float64]
 
 #: deviations of a curve from the law that are tried, and where their prior falls off
-TAUS = np.geomspace(2e-4, 0.06, 10)
+TAUS = np.geomspace(2e-4, 0.05, 8)
 PRIOR_TAU = 0.005
 
 
@@ -29,7 +29,8 @@ PRIOR_TAU = 0.005
 class Line:
     """One thinned curve: log ratios (j,) of its diameter and/or speed to the reference.
 
-    whitener : (m, m) lower triangle of the trace covariance; calibration : (m, c) common causes.
+    whitener : (m, m) inverse of the root of the trace covariance: it makes errors independent and
+    of size one; calibration : (m, c) common causes.
     """
 
     logs: Array
@@ -226,7 +227,7 @@ def _model(
     t = (2.0 * x - joint.low - joint.high) / span
     basis = np.polynomial.legendre.legvander(t, joint.degree)
     shape = parameters[:k]
-    slope = np.polynomial.legendre.legval(t, np.polynomial.legendre.legder(shape)) * 2.0 / span
+    slope = basis[:, :-1] @ np.polynomial.legendre.legder(shape) * 2.0 / span
     own = np.exp(beta)
     scale = _value_scale(joint, logs, b) * own
     value = scale * (basis @ shape)
@@ -263,9 +264,7 @@ def _system(
     rows = []
     for i, line in enumerate(lines):
         value, jacobian = _model(joint, parameters, line.logs, line.flow, i)
-        white = np.linalg.solve(
-            line.whitener, np.concatenate([jacobian, (line.value - value)[:, None]], axis=1)
-        )
+        white = line.whitener @ np.concatenate([jacobian, (line.value - value)[:, None]], axis=1)
         full = np.zeros((len(line.flow), p + 1))
         full[:, :shared] = white[:, :shared]
         full[:, shared + 2 * i : shared + 2 * i + 2] = white[:, shared : shared + 2]
@@ -310,7 +309,7 @@ def _response(joint: Joint, lines: Sequence[Line], parameters: Array, inverse: A
     pull = np.zeros((len(parameters), lines[0].calibration.shape[1]))
     for i, line in enumerate(lines):
         _, jacobian = _model(joint, parameters, line.logs, line.flow, i)
-        white = np.linalg.solve(line.whitener, np.concatenate([jacobian, line.calibration], axis=1))
+        white = line.whitener @ np.concatenate([jacobian, line.calibration], axis=1)
         part = white[:, : shared + 2].T @ white[:, shared + 2 :]
         pull[:shared] += part[:shared]
         pull[shared + 2 * i : shared + 2 * i + 2] += part[shared:]

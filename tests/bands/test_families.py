@@ -86,7 +86,7 @@ def predicted(curves, left):
 @pytest.mark.parametrize("quantity", ["head", "efficiency"])
 def test_a_diameter_left_out_is_predicted(bank, quantity):
     rng = np.random.default_rng(31)
-    rows = [predicted(chart(rng, bank, quantity)[0], k % 5)[:2] for k in range(60)]
+    rows = [predicted(chart(rng, bank, quantity)[0], k % 5)[:2] for k in range(25)]
     rms, held = np.array(rows).T
     assert np.median(rms) < 0.001
     assert rms.max() < 0.005
@@ -97,7 +97,7 @@ def test_a_diameter_left_out_is_predicted(bank, quantity):
 def test_a_family_that_departs_from_every_law_says_so(bank):
     """Each curve off by half a per cent of its own: the band between them must grow to hold it."""
     rng = np.random.default_rng(32)
-    rows = [predicted(chart(rng, bank, wobble=0.005)[0], 1 + k % 3) for k in range(60)]
+    rows = [predicted(chart(rng, bank, wobble=0.005)[0], 1 + k % 3) for k in range(25)]
     held = [r[1] for r in rows]
     widths = [np.mean(r[2].band.high_si - r[2].band.low_si) for r in rows]
     exact = predicted(chart(rng, bank)[0], 2)[2]
@@ -108,7 +108,7 @@ def test_a_family_that_departs_from_every_law_says_so(bank):
 def test_exponents_are_found_with_their_intervals(bank):
     rng = np.random.default_rng(33)
     held = []
-    for _ in range(60):
+    for _ in range(30):
         curves, truth = chart(rng, bank)
         family = fit_family([c for c, _ in curves])
         (a, ua, na), (b, ub, nb) = family.exponents.values()

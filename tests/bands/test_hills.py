@@ -33,8 +33,8 @@ class Hill:
     def line(self, level):
         """Points (flow, head) of equal efficiency, over the diameters, a branch each."""
         branches = ([], [])
-        for d in np.linspace(0.166, 0.214, 160):
-            flow = np.linspace(0.004, 0.055 * (d / 0.21) ** self.flow_power, 1500)
+        for d in np.linspace(0.166, 0.214, 80):
+            flow = np.linspace(0.004, 0.055 * (d / 0.21) ** self.flow_power, 500)
             eta = self.efficiency(flow, d)
             peak = int(np.argmax(eta))
             if eta[peak] <= level:
@@ -87,7 +87,7 @@ def test_crossings_are_where_the_lines_meet():
 def test_efficiencies_from_lines_hold_the_truth(seed):
     rng = np.random.default_rng(seed)
     held, rms, count = [], [], 0
-    for _ in range(20):
+    for _ in range(8):
         hill, curves = chart(rng)
         fits = efficiency_on_heads(curves)
         count += len(fits)
@@ -97,7 +97,7 @@ def test_efficiencies_from_lines_hold_the_truth(seed):
             true = hill.efficiency(one.band.flow_si[at], one.curve.diameter_si)
             rms.append(np.sqrt(np.mean((one.band.value_si[at] - true) ** 2)))
             held.append(np.mean((one.band.low_si[at] <= true) & (true <= one.band.high_si[at])))
-    assert count >= 80
+    assert count >= 32
     assert np.median(rms) < 0.002
     assert np.max(rms) < 0.01
     assert np.mean(held) > 0.88
