@@ -55,6 +55,7 @@ def name_axes(
 
 
 def _candidates(text: Sequence[Spot]) -> list[Candidate]:
+    """Every word, and every two that follow each other, as a title."""
     single = [
         Candidate(read_title(s.word.text), s.bounds, s.quarter, s.height, (s.word,)) for s in text
     ]
@@ -63,33 +64,39 @@ def _candidates(text: Sequence[Spot]) -> list[Candidate]:
         for j, b in enumerate(text):
             if i == j or single[i].title.strength == 3 or single[j].title.strength == 3:
                 continue
-            if a.quarter != b.quarter or not _together(a, b):
+            if not _together(a, b):
                 continue
             joined = read_title(f"{a.word.text} {b.word.text}")
             if joined.strength > max(single[i].title.strength, single[j].title.strength):
                 x0, y0, x1, y1 = a.bounds
                 u0, v0, u1, v1 = b.bounds
                 bounds = (min(x0, u0), min(y0, v0), max(x1, u1), max(y1, v1))
-                out.append(Candidate(joined, bounds, a.quarter, a.height, (a.word, b.word)))
+                longer = a if len(a.word.text) >= len(b.word.text) else b
+                out.append(
+                    Candidate(joined, bounds, longer.quarter, longer.height, (a.word, b.word))
+                )
     return out
 
 
 def _together(a: Spot, b: Spot) -> bool:
     """Whether b follows a on the line, or starts the next line."""
+    if a.quarter != b.quarter and min(len(a.word.text), len(b.word.text)) > 1:
+        return False
+    quarter = (a if len(a.word.text) >= len(b.word.text) else b).quarter  # a lone letter has none
     h = max(a.height, b.height)
-    ax0, ay0, ax1, ay1 = _reading(a)
-    bx0, by0, bx1, by1 = _reading(b)
-    follows = 0 <= bx0 - ax1 + 0.3 * h < 1.8 * h and abs(ay0 + ay1 - by0 - by1) < h
+    ax0, ay0, ax1, ay1 = _reading(a, quarter)
+    bx0, by0, bx1, by1 = _reading(b, quarter)
+    follows = 0 <= bx0 - ax1 + 0.3 * h < 2.4 * h and abs(ay0 + ay1 - by0 - by1) < 1.2 * h
     below = 0 <= by0 - ay1 + 0.3 * h < 1.1 * h and min(ax1, bx1) > max(ax0, bx0)
-    return follows or below
+    return follows or (below and a.quarter == b.quarter)
 
 
-def _reading(s: Spot) -> tuple[float, float, float, float]:
-    """Bounds in the word's own frame: x along the line, y down the lines."""
+def _reading(s: Spot, quarter: int) -> tuple[float, float, float, float]:
+    """Bounds in a frame of text: x along the line, y down the lines."""
     x0, y0, x1, y1 = s.bounds
-    if s.quarter == 1:
+    if quarter == 1:
         return -y1, x0, -y0, x1
-    if s.quarter == 3:
+    if quarter == 3:
         return y0, -x1, y1, -x0
     return x0, y0, x1, y1
 
@@ -152,6 +159,7 @@ def _named(axis: Axis, c: Candidate | None, column: Column) -> Axis:
             own = read_title(suffix)
             if own.dimension == title.dimension:
                 title = replace(title, unit=own.unit, printed_unit=own.printed_unit)
+    title = _percent(title, axis)
     return replace(
         axis,
         quantity=title.quantity,
@@ -161,6 +169,15 @@ def _named(axis: Axis, c: Candidate | None, column: Column) -> Axis:
         title=title.text if c is not None else "",
         guessed=title.guessed,
     )
+
+
+def _percent(title: Title, axis: Axis) -> Title:
+    """An efficiency scale that runs to tens can only be one of per cent."""
+    if title.unit is None and title.quantity in ("efficiency", "overall_efficiency"):
+        top = float(max(axis.offset, axis.offset + axis.slope))
+        if axis.scale == "linear" and 10 < top <= 200:
+            return replace(title, unit="%", printed_unit="%")
+    return title
 
 
 def _suffix(column: Column) -> str:
