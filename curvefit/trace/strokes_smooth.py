@@ -39,7 +39,7 @@ def smooth(xy: Array, bridged: NDArray[np.bool_]) -> tuple[Array, Array, NDArray
     keep = np.r_[True, step > 1e-6]
     xy, bridged = xy[keep], bridged[keep]
     s = arc_length(xy)
-    breaks = _corners(xy, s)
+    breaks = _corners(xy, bridged)
     points, sigmas, gaps = [], [], []
     for first, stop in pairwise(breaks):
         part = slice(first, stop + 1)
@@ -52,15 +52,15 @@ def smooth(xy: Array, bridged: NDArray[np.bool_]) -> tuple[Array, Array, NDArray
     return np.concatenate(points), np.concatenate(sigmas), np.concatenate(gaps), spacing
 
 
-def _corners(xy: Array, s: Array) -> list[int]:
-    """Indices of the ends and of every corner of the line."""
+def _corners(xy: Array, bridged: NDArray[np.bool_]) -> list[int]:
+    """Indices of the ends and of every corner of the line; where nothing is drawn is none."""
     if len(xy) < 3:
         return [0, len(xy) - 1]
     d = np.diff(xy, axis=0)
     angle = np.unwrap(np.arctan2(d[:, 1], d[:, 0]))
     turn = np.degrees(np.abs(np.diff(angle)))
     usual = np.median(turn)
-    sharp = (turn > CORNER) & (turn > 6 * usual)
+    sharp = (turn > CORNER) & (turn > 6 * usual) & ~bridged[1:-1] & ~bridged[2:]
     return [0, *(np.nonzero(sharp)[0] + 1).tolist(), len(xy) - 1]
 
 
@@ -72,14 +72,14 @@ def _run(xy: Array, s: Array, bridged: NDArray[np.bool_]) -> tuple[Array, Array,
     chord = np.column_stack([np.interp(at, s, xy[:, k]) for k in (0, 1)])
     gap = bridged[np.clip(np.searchsorted(s, at - 1e-9), 1, len(s) - 1)] & (at > 0)
     if len(s) < 4:
-        return chord, np.full(len(at), 2 * FLOOR), gap
+        return chord, np.where(gap, 0.03 * _span(at, s), 2 * FLOOR), gap
     noise = _scatter(xy, s)
     curve = CubicSpline(s, xy, axis=0)(at)
     between = np.hypot(*(curve - chord).T)
-    sane = between < 0.5 + 6 * noise + 0.02 * _span(at, s)
+    sane = (between < 0.5 + 6 * noise + 0.02 * _span(at, s)) | gap
     curve = np.where(sane[:, None], curve, chord)
     sigma = np.hypot(np.hypot(FLOOR, noise), between / 3)
-    sigma = np.where(gap, np.maximum(sigma, 0.004 * _span(at, s)), sigma)
+    sigma = np.where(gap, np.hypot(sigma, 0.006 * _span(at, s)), sigma)
     return curve, sigma, gap
 
 

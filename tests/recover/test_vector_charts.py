@@ -228,6 +228,31 @@ def test_islands_and_labelled_lines(tmp_path):
     assert (off < 3 * line.sigma[bridged] + 0.2).all()
 
 
+def test_a_ring_that_its_label_interrupts_is_closed_over_it(tmp_path):
+    scene = Scene()
+    scene.axes()
+    angle = np.linspace(0.15, 2 * np.pi - 0.5, 120)
+    scene.draw("0.8 w", scene.points(_ellipse(angle)))
+    x, y = scene.points(_ellipse(np.array([-0.17])))[0]
+    scene.text(x + 3, y - 9, "80 %", turn="0 1 -1 0")
+    (ring,) = read(scene, tmp_path)[3]
+    assert ring.closed
+    bridged = (ring.flags & BRIDGED) > 0
+    assert 0.05 < bridged.mean() < 0.2
+    w, h = ring.panel.warp.size
+    true = _ellipse(np.linspace(0, 2 * np.pi, 20001)) * [w, -h] + [0, h]
+    from scipy.spatial import cKDTree
+
+    off = cKDTree(true).query(ring.flat)[0]
+    assert off[~bridged].max() < 0.05
+    assert (off[bridged] < 3 * ring.sigma[bridged]).all()
+    assert off[bridged].max() < 4
+
+
+def _ellipse(angle):
+    return np.column_stack([0.6 + 0.15 * np.cos(angle), 0.6 + 0.2 * np.sin(angle)])
+
+
 @pytest.mark.parametrize("turn", [0, 90, 180, 270])
 def test_a_page_drawn_turned_is_set_upright(tmp_path, turn):
     """/Rotate turns the shown page: the words tell how to turn it back."""
