@@ -18,7 +18,6 @@ __all__ = [
     "ended",
     "findings_text",
     "quantity_text",
-    "range_text",
     "say",
     "say_error",
     "table",
@@ -109,19 +108,6 @@ def quantity_text(value: float | None, unit: str, digits: int = 4) -> str:
     return f"{value:.{digits}g} {known(unit).print}".rstrip()
 
 
-def range_text(low: float, high: float, unit: str) -> str:
-    """A range with its unit, both ends to a ten-thousandth of the larger one."""
-    from math import floor, log10
-
-    from curvefit.units import unit as known
-
-    largest = max(abs(low), abs(high), 1e-300)
-    places = 3 - floor(log10(largest))
-    ends = (f"{round(v, places) + 0.0:.{max(places, 0)}f}" for v in (low, high))
-    short = (e.rstrip("0").rstrip(".") if "." in e else e for e in ends)
-    return f"{' to '.join(short)} {known(unit).print}".rstrip()
-
-
 def table(head: Sequence[str], rows: Iterable[Sequence[str]]) -> str:
     """A plain table of aligned columns, two blanks between them."""
     cells = [list(head), *(list(map(plain, r)) for r in rows)]
@@ -137,6 +123,7 @@ def curve_table(reading: Reading, units: Mapping[str, str | None] | None = None)
 
     from curvefit.records import QUANTITIES
     from curvefit.write.outgoing import outgoing
+    from curvefit.write.wording import range_text
 
     rows = []
     for c in outgoing(reading, units).curves:
@@ -157,16 +144,19 @@ def curve_table(reading: Reading, units: Mapping[str, str | None] | None = None)
 
 def findings_text(findings: Sequence[Finding], most: int = 40) -> str:
     """Findings in words: what, where, and what to do; the worst first."""
+    from curvefit.write.wording import sentence
+
     rank = {"error": 0, "warning": 1, "info": 2}
     words = {"error": "Error", "warning": "Warning", "info": "Note"}
     lines: list[str] = []
     for f in sorted(findings, key=lambda f: rank[f.severity])[:most]:
         parts = (("panel", f.where.panel), ("axis", f.where.axis), ("curve", f.where.curve))
         place = ", ".join(f"{word} {value}" for word, value in parts if value is not None)
-        text = f"{words[f.severity]} {f.code}{f' ({place})' if place else ''}: {f.message}"
-        lines += textwrap.wrap(plain(text) + ".", _WIDTH, subsequent_indent="    ")
+        head = f"{words[f.severity]} {f.code}{f' ({place})' if place else ''}"
+        text = f"{head}: {sentence(plain(f.message))}"
+        lines += textwrap.wrap(text, _WIDTH, subsequent_indent="    ")
         if f.remedy:
-            remedy = plain(f.remedy) + "."
+            remedy = sentence(plain(f.remedy))
             lines += textwrap.wrap(remedy, _WIDTH, initial_indent="    ", subsequent_indent="    ")
     if len(findings) > most:
         lines.append(f"… and {len(findings) - most} more, in the report.")

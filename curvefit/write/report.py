@@ -19,7 +19,8 @@ from curvefit.units import from_si, unit
 from curvefit.write.curves_json import equation
 from curvefit.write.outgoing import CurveOut, FitOut, Outgoing
 from curvefit.write.overlay import Picture, jpeg
-from curvefit.write.svg import curve_plot, residual_plot
+from curvefit.write.svg import Array, curve_plot, residual_plot
+from curvefit.write.wording import range_text, sentence
 
 __all__ = ["report"]
 
@@ -127,8 +128,8 @@ def _finding(finding: Finding) -> dict[str, str]:
         "word": _WORDS[finding.severity],
         "code": finding.code,
         "place": ", ".join(f"{word} {value}" for word, value in known if value is not None),
-        "message": finding.message,
-        "remedy": finding.remedy,
+        "message": sentence(finding.message),
+        "remedy": sentence(finding.remedy) if finding.remedy else "",
     }
 
 
@@ -153,13 +154,17 @@ def _curve(out: Outgoing, curve: CurveOut) -> dict[str, Any]:
         "label": c.label or "–",
         "diameter": _measure(c.diameter_si, c.diameter_unit),
         "speed": _measure(curve.speed_si, "/min"),
-        "flow_range": f"{curve.flow.min():.4g} … {curve.flow.max():.4g} {flow}",
-        "value_range": f"{curve.value.min():.4g} … {curve.value.max():.4g} {value}",
+        "flow_range": _range(curve.flow, curve.units.flow),
+        "value_range": _range(curve.value, curve.units.value),
         "uncertainty": f"{np.median(u):.2g} {value}" if len(u) else "unknown",
         "points": len(curve.flow),
         "fits": [_fit(f) for f in fits],
         "plots": plots,
     }
+
+
+def _range(values: Array, code: str) -> str:
+    return range_text(float(values.min()), float(values.max()), code, " … ")
 
 
 def _low(title: str) -> str:
@@ -175,11 +180,10 @@ def _fit(out: FitOut) -> dict[str, Any]:
         text = written_out(out.coefficients, symbol, digits=6)
     half = np.nanmedian(out.high - out.low) / 2 if np.isfinite(out.high - out.low).any() else None
     wide = "unknown" if half is None else f"± {half:.2g} {value} (median)"
-    low, high = out.flow_range
     return {
         "equation": f"{text}   (Q in {flow}, {symbol} in {value})",
-        "summary": f"For {low:.4g} to {high:.4g} {flow}. Residual {out.residual_rms:.2g} {value} "
-        f"root mean square. {band.kind.capitalize()} {100 * band.confidence:g} % band {wide}; "
+        "summary": f"For {range_text(*out.flow_range, out.units.flow)}. "
+        f"Residual {out.residual_rms:.2g} {value} root mean square. {band.kind.capitalize()} {100 * band.confidence:g} % band {wide}; "
         f"{fit.effective_points:.3g} effective points.",
         "rows": _coefficients(out),
         "reason": fit.reason,

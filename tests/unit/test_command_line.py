@@ -296,6 +296,6 @@ def test_the_demo_chart_is_the_one_that_its_comment_says():
     ],
 )
 def test_a_range_shows_what_its_larger_end_can_carry(low, high, text):
-    from curvefit_cli.show import range_text
+    from curvefit.write.wording import range_text
 
     assert range_text(low, high, "m3/h") == text
