@@ -183,7 +183,8 @@ def _fit(out: FitOut) -> dict[str, Any]:
     return {
         "equation": f"{text}   (Q in {flow}, {symbol} in {value})",
         "summary": f"For {range_text(*out.flow_range, out.units.flow)}. "
-        f"Residual {out.residual_rms:.2g} {value} root mean square. {band.kind.capitalize()} {100 * band.confidence:g} % band {wide}; "
+        f"Residual {out.residual_rms:.2g} {value} root mean square. "
+        f"{band.kind.capitalize()} {100 * band.confidence:g} % band {wide}; "
         f"{fit.effective_points:.3g} effective points.",
         "rows": _coefficients(out),
         "reason": fit.reason,

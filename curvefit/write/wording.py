@@ -25,7 +25,7 @@ def range_text(low: float, high: float, unit: str, joint: str = " to ") -> str:
 
 
 def sentence(text: str) -> str:
-    """The text with a capital at its start and a mark at its end.
+    """The text with a capital at its start (but for words like gpm) and a mark at its end.
 
     Examples
     --------
@@ -35,4 +35,5 @@ def sentence(text: str) -> str:
     text = text.strip()
     if text and text[-1] not in ".!?…:":
         text += "."
-    return text[:1].upper() + text[1:]
+    first = text.partition(" ")[0]
+    return text[:1].upper() + text[1:] if set(first) & set("aeiou") else text
