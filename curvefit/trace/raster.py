@@ -9,12 +9,13 @@ from numpy.typing import NDArray
 
 from curvefit.geometry import resample
 from curvefit.records import Panel
+from curvefit.trace.bundle import Member, untangled
 from curvefit.trace.centre import Line, centred, width_along
 from curvefit.trace.ends import settled
 from curvefit.trace.grid import Inked, without_lines
 from curvefit.trace.ink import MARGIN, Flat, Layer, hues, straightened, stroke_width
-from curvefit.trace.linked import linked_lines, without
-from curvefit.trace.sift import is_frame, without_doubles
+from curvefit.trace.linked import Loose, linked_lines, without
+from curvefit.trace.sift import is_frame, own_ink, without_doubles
 from curvefit.trace.text import lettering, markers, spread
 from curvefit.trace.track import Track, Tracking, across, best_track, peel
 
@@ -31,6 +32,8 @@ class Settings:
     tracking: Tracking = field(default_factory=Tracking)
     shortest: float = 0.05  #: ink that a line must show
     loose: float = 0.035  #: ink that a line in any direction must show
+    long: float = 0.4  #: length across of a line that needs no second look
+    contact: float = 0.03  #: contact of two lines that makes a bundle
     at_most: int = 40  #: lines of one ink
 
 
@@ -42,6 +45,7 @@ class Found:
     colour: tuple[float, float, float]
     loose: bool = False
     closed: bool = False
+    bundled: Member | None = None
 
 
 def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
@@ -64,20 +68,33 @@ def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
             x for x in _follow(layer, width, tolerances) if not frame(x) and _convincing(x, least)
         ]
         lines = [lines[i] for i in without_doubles(lines, least)]
-        found += [Found(line, colour) for line in lines]
-        shortest = tolerances.loose * panel.warp.size[0]
-        around = [f.line for f in found]
-        found += [
-            Found(x.line, colour, True, x.closed)
-            for x in linked_lines(panel, layer, around, width, shortest)
-            if not frame(x.line)
-        ]
-    found = [
-        f for f in found if not is_frame(f.line, inked.rows, inked.cols, flat.dark.shape, MARGIN)
-    ]
-    least = 0.6 * tolerances.shortest * panel.warp.size[0]
-    kept = without_doubles([f.line for f in found], least)
-    return [found[i] for i in kept]
+        lines, loose = _sorted_out(panel, layer, lines, width, tolerances)
+        alone, members = untangled(lines, layer, tolerances.contact * panel.warp.size[0])
+        found += [Found(line, colour) for line in alone]
+        found += [Found(m.line, colour, bundled=m) for m in members]
+        found += [Found(x.line, colour, True, x.closed) for x in loose if not frame(x.line)]
+    tied = [f for f in found if f.bundled is not None]
+    known = [f.line for f in tied]
+    free = [f for f in found if f.bundled is None and own_ink(f.line, known) >= least]
+    kept = without_doubles([f.line for f in free], least)
+    return tied + [free[i] for i in kept]
+
+
+def _sorted_out(
+    panel: Panel, layer: Layer, lines: list[Line], width: float, settings: Settings
+) -> tuple[list[Line], list[Loose]]:
+    """Long lines first; short ones only where linking in any direction does not see more."""
+    size = panel.warp.size[0]
+    long = [x for x in lines if np.ptp(x.xy[:, 0]) > settings.long * size]
+    short = [x for x in lines if np.ptp(x.xy[:, 0]) <= settings.long * size]
+    loose = linked_lines(panel, layer, long, width, settings.loose * size)
+    for line in short:
+        over = [x for x in loose if own_ink(line, [x.line]) < 0.4 * line.good.sum()]
+        if any(x.line.good.sum() > 1.2 * line.good.sum() for x in over):
+            continue
+        loose = [x for x in loose if all(x is not o for o in over)]
+        long.append(line)
+    return long, loose
 
 
 def _layer(flat: Flat, inked: Inked, member: Image, letters: Mask, blots: Mask) -> Layer:
@@ -109,7 +126,7 @@ def _follow(layer: Layer, width: float, settings: Settings) -> list[Line]:
         track = best_track(across(small, known, settings.tracking), settings.tracking)
         if track is None or track.score < settings.shortest * size[0]:
             break
-        line, own = _refined(without(layer, lines), track, scale, width)
+        line, own = _refined(layer, lines, track, scale, width)
         if line is None:
             peel(small, known, track.x, track.y, 0.5 * own * k + 0.3)
             continue
@@ -120,7 +137,7 @@ def _follow(layer: Layer, width: float, settings: Settings) -> list[Line]:
 
 
 def _refined(
-    layer: Layer, track: Track, scale: NDArray[np.float64], width: float
+    layer: Layer, lines: list[Line], track: Track, scale: NDArray[np.float64], width: float
 ) -> tuple[Line | None, float]:
     """The track at sub-pixel precision between its true ends, and the width of its stroke."""
     rough = (np.stack([track.x, track.y], 1) + 0.5) * scale - 0.5
@@ -128,6 +145,7 @@ def _refined(
     if not np.isfinite(own):
         own = width
     own = float(np.clip(own, 0.4 * width, 2.5 * width))
+    layer = without(layer, lines)
     line = centred(layer.lines, layer.known, rough, own)
     return settled(layer, line, 0.08 * layer.ink.shape[1]), own
 

@@ -5,15 +5,16 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from curvefit.errors import Location
 from curvefit.notes import CurveNotes
-from curvefit.records import BRIDGED, CROSSING, Panel, Trace
-from curvefit.trace.centre import Line
+from curvefit.records import BRIDGED, BUNDLED, CROSSING, Finding, Panel, Trace
 from curvefit.trace.ink import MARGIN
 from curvefit.trace.raster import Found, lines_of
 
 __all__ = ["traces_of"]
 
 Array = NDArray[np.float64]
+SURE = 0.2  #: by how much the best pairing in a bundle must beat the next
 FLOOR = 0.06  #: px, what no fit sees: rasterising, resampling, the drawing's own resolution
 
 
@@ -25,7 +26,7 @@ def traces_of(panel: Panel, curve_notes: tuple[CurveNotes, ...]) -> tuple[Trace,
 
 def _trace(panel: Panel, found: Found, name: str) -> Trace:
     line = found.line
-    sigma, flags = _doubt(line)
+    sigma, flags = _doubt(found)
     flat = line.xy - MARGIN
     if flat[0, 0] > flat[-1, 0]:
         flat, sigma, flags = flat[::-1], sigma[::-1], flags[::-1]
@@ -44,6 +45,7 @@ def _trace(panel: Panel, found: Found, name: str) -> Trace:
         colour=found.colour,
         path=path,
         closed=found.closed,
+        findings=_said(panel, found, name),
     )
 
 
@@ -59,14 +61,43 @@ def _increasing(x: Array) -> NDArray[np.bool_]:
     return np.asarray(x > before + 1e-6)
 
 
-def _doubt(line: Line) -> tuple[Array, NDArray[np.uint8]]:
+def _doubt(found: Found) -> tuple[Array, NDArray[np.uint8]]:
     """Standard uncertainty and flags of every point."""
     from scipy.ndimage import distance_transform_edt, uniform_filter1d
 
+    line = found.line
     away = distance_transform_edt(~line.good) if line.good.any() else np.full(len(line.xy), 50.0)
-    wander = 0.012 * np.clip(away - 2.0, 0, None)
-    sigma = np.sqrt((1.3 * line.sigma) ** 2 + FLOOR**2 + (0.15 * line.scatter) ** 2 + wander**2)
     missing = uniform_filter1d((line.ink < 0.4).astype(float), 5) > 0.5
     crossing = ~line.good & ~missing & (line.side > 0.3)
     flags = np.where(missing & (line.known > 0.4), BRIDGED, 0) | np.where(crossing, CROSSING, 0)
+    wander = 0.012 * np.clip(away - 2.0, 0, None)
+    if found.bundled is not None:
+        merged, spread = found.bundled.merged, found.bundled.spread
+        loose = merged & (spread > 0.3 * line.width)
+        sure = found.bundled.margin >= SURE
+        share = 0.1 * line.width + (0.15 if sure else 0.6) * np.where(loose, spread, 0.0)
+        wander = np.where(merged, share, np.minimum(wander, 0.3))
+        flags = np.where(loose, BUNDLED, np.where(merged, CROSSING, flags))
+    sigma = np.sqrt((1.3 * line.sigma) ** 2 + FLOOR**2 + (0.15 * line.scatter) ** 2 + wander**2)
     return sigma, flags.astype(np.uint8)
+
+
+def _said(panel: Panel, found: Found, name: str) -> tuple[Finding, ...]:
+    """The finding that a pairing could not be established."""
+    if found.bundled is None or found.bundled.margin >= SURE:
+        return ()
+    box = panel.warp.to_page(found.line.xy[found.bundled.merged] - MARGIN)
+    where = Location(
+        panel=panel.name, curve=name, box_px=(*map(float, box.min(0)), *map(float, box.max(0)))
+    )
+    return (
+        Finding(
+            "warning",
+            "trace.pairing",
+            "Lines run together here and which one goes on as which could not be established: "
+            f"the best pairing is smoother than the next by {found.bundled.margin:.0%}, "
+            f"{SURE:.0%} are needed.",
+            where,
+            "Draw the line with `path` in the notes of this curve.",
+        ),
+    )

@@ -1,0 +1,424 @@
+"""Lines that run together: who goes on as whom, and where each one is inside the common ink."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from itertools import permutations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from curvefit.trace.centre import Line
+from curvefit.trace.column import Run, columns_of, run_around, slope_of
+from curvefit.trace.ink import Layer
+
+__all__ = ["Member", "untangled"]
+
+Array = NDArray[np.float64]
+Bool = NDArray[np.bool_]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Member:
+    """One line of a bundle; merged : (n,) where it shares its ink; spread : (n,) [px], how far
+    apart the bundle is there; margin : of the pairing against the next best, 1 is certain."""
+
+    line: Line
+    merged: Bool
+    spread: Array
+    margin: float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Strand:
+    """A tracked line by columns, with the run of ink around it."""
+
+    x: Array
+    y: Array
+    slope: Array
+    run: Run
+    clean: Bool
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Arm:
+    """A stretch of a strand that stands alone."""
+
+    x: Array
+    y: Array
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Zone:
+    """A stretch of common ink: columns, edges; arms that come in from the left and go on right."""
+
+    x: Array
+    top: Array
+    bottom: Array
+    left: tuple[int, ...]
+    right: tuple[int, ...]
+
+
+def untangled(lines: list[Line], layer: Layer, least: float) -> tuple[list[Line], list[Member]]:
+    """Lines that stand alone as they are, and the members of bundles told apart.
+
+    Parameters
+    ----------
+    lines : single-valued lines of one ink.
+    least : contact of two lines that makes a bundle [px].
+
+    Notes
+    -----
+    Stretches of clean single strokes (arms) are kept. Between them, in common ink, arms of the
+    left and of the right are paired so that cubic curves through both fit the arms and the edges
+    of the common ink best. Inside, the upper edge belongs to the upper line and the lower edge
+    to the lower one; what lies between is left to smoothness.
+    """
+    alone: list[Line] = []
+    members: list[Member] = []
+    for group in _groups(lines, least):
+        if len(group) == 1:
+            alone.append(lines[group[0]])
+            continue
+        told = _told_apart([lines[i] for i in group], layer)
+        if told:
+            members += told
+        else:
+            alone += [lines[i] for i in group]
+    return alone, members
+
+
+def _groups(lines: list[Line], least: float) -> list[list[int]]:
+    """Indices of lines that touch for a while, or of which one ends on the other."""
+    group = list(range(len(lines)))
+    shapes = [columns_of(line) for line in lines]
+    slopes = [slope_of(x, y) for x, y in shapes]
+    for i in range(len(lines)):
+        for j in range(i):
+            if _touch(shapes[i], slopes[i], shapes[j], slopes[j], lines[i].width, least):
+                old, new = group[i], group[j]
+                group = [new if g == old else g for g in group]
+    return [[i for i, g in enumerate(group) if g == k] for k in sorted(set(group))]
+
+
+def _touch(
+    a: tuple[Array, Array], sa: Array, b: tuple[Array, Array], sb: Array, width: float, least: float
+) -> bool:
+    low, high = max(a[0][0], b[0][0]), min(a[0][-1], b[0][-1])
+    if high - low >= least:
+        x = np.arange(low, high + 1)
+        apart = np.abs(np.interp(x, *a) - np.interp(x, *b))
+        steep = np.sqrt(1 + np.interp(x, a[0], sa) ** 2)
+        if (apart < 1.5 * width * steep).sum() > least:
+            return True
+    for (x, y), s, (ox, oy), os in ((a, sa, b, sb), (b, sb, a, sa)):
+        for end in (0, -1):
+            inside = ox[0] - 12 <= x[end] <= ox[-1] + 12
+            inner = min(12, len(x) - 1) * (1 if end == 0 else -1) + end
+            turn = abs(s[inner] - float(np.interp(x[end], ox, os)))
+            near = abs(y[end] - float(np.interp(x[end], ox, oy)))
+            if inside and near < 2.5 * width * np.hypot(1, s[inner]) and turn < 0.25:
+                return True
+    return False
+
+
+def _told_apart(lines: list[Line], layer: Layer) -> list[Member]:
+    width = float(np.median([line.width for line in lines]))
+    strands = _strands(lines, layer, width)
+    edge_width = _edge_width(strands, width)
+    arms, zones = _arms_and_zones(strands, layer.lines.shape, width)
+    if not arms or not zones:
+        return []
+    follows: dict[int, list[int]] = {i: [] for i in range(len(arms))}
+    margin = dict.fromkeys(range(len(arms)), 1.0)
+    for zone in zones:
+        pairs, sure = _paired(zone, arms, edge_width)
+        for a, b in pairs:
+            follows[b].append(a)
+            margin[b] = min(margin[b], sure)
+    last = [i for i in follows if not any(i in before for before in follows.values())]
+    out = []
+    for end in last:
+        chain, sure = [end], margin[end]
+        while follows[chain[0]] and follows[chain[0]][0] not in chain:
+            before = follows[chain[0]][0]
+            sure = min(sure, margin[before])
+            chain.insert(0, before)
+        out.append((chain, sure))
+    return _placed(out, arms, zones, edge_width, width)
+
+
+def _strands(lines: list[Line], layer: Layer, width: float) -> list[_Strand]:
+    found = []
+    shapes = [columns_of(line) for line in lines]
+    for k, (x, y) in enumerate(shapes):
+        slope = slope_of(x, y)
+        run = run_around(layer, x, y, 4 * width + 6)
+        steep = np.sqrt(1 + slope * slope)
+        single = np.abs(run.height - width * steep) < 0.3 * width * steep + 0.4
+        single &= np.abs(0.5 * (run.top + run.bottom) - y) < 0.6 * width * steep
+        for j, (ox, oy) in enumerate(shapes):
+            if j != k:
+                other = np.interp(x, ox, oy, left=np.inf, right=np.inf)
+                single &= np.abs(other - y) > 1.35 * width * steep
+        found.append(_Strand(x, y, slope, run, single))
+    return found
+
+
+def _edge_width(strands: list[_Strand], width: float) -> float:
+    """Width of a stroke as its edges show it, from clean stretches."""
+    heights = [s.run.height[s.clean] / np.sqrt(1 + s.slope[s.clean] ** 2) for s in strands]
+    every = np.concatenate(heights)
+    return float(np.median(every)) if len(every) > 20 else width
+
+
+def _arms_and_zones(
+    strands: list[_Strand], shape: tuple[int, ...], width: float
+) -> tuple[list[_Arm], list[_Zone]]:
+    """Clean stretches, and the connected areas of common ink between them."""
+    import cv2
+
+    mask = np.zeros(shape, np.uint8)
+    arms: list[_Arm] = []
+    least = int(max(15, 3 * width))
+    for s in strands:
+        alone = _without_short(s.clean, least)
+        edges = np.flatnonzero(np.diff(np.r_[0, alone.astype(int), 0]))
+        for a, b in zip(edges[::2], edges[1::2], strict=True):
+            keep = s.clean[a:b]
+            centre = 0.5 * (s.run.top[a:b] + s.run.bottom[a:b])
+            arms.append(_Arm(s.x[a:b][keep], centre[keep]))
+        for k in np.nonzero(~alone & np.isfinite(s.run.top))[0]:
+            column = int(s.x[k])
+            mask[int(s.run.top[k]) : int(s.run.bottom[k]) + 1, max(column - 4, 0) : column + 5] = 1
+    count, labels = cv2.connectedComponents(mask, connectivity=4)
+    zones = []
+    for zone in range(1, count):
+        left = tuple(i for i, arm in enumerate(arms) if _at(labels, arm, -1, zone, width))
+        right = tuple(i for i, arm in enumerate(arms) if _at(labels, arm, 0, zone, width))
+        columns = np.nonzero((labels == zone).any(0))[0]
+        if len(left) + len(right) < 2 or not len(columns):
+            continue
+        x, top, bottom = _edges_inside(strands, labels, zone)
+        if len(x) > 3:
+            zones.append(_Zone(x, top, bottom, left, right))
+    return arms, zones
+
+
+def _without_short(clean: Bool, least: int) -> Bool:
+    """Clean stretches of at least `least` columns, small holes in them closed."""
+    out = clean.copy()
+    for value, limit in ((False, 8), (True, least)):
+        edges = np.flatnonzero(np.diff(np.r_[not value, out == value, not value].astype(int)))
+        for a, b in zip(edges[::2], edges[1::2], strict=False):
+            inner = a > 0 and b < len(out)
+            if b - a < limit and (value or inner):
+                out[a:b] = not value
+    return out
+
+
+def _at(labels: NDArray[np.int32], arm: _Arm, end: int, zone: int, width: float) -> bool:
+    """Whether an arm's end (0 its left, −1 its right) lies at a zone."""
+    x, y = int(arm.x[end]), round(arm.y[end])
+    beyond = slice(x, x + 14) if end else slice(max(x - 13, 0), x + 1)
+    reach = int(width) + 2
+    return bool((labels[max(y - reach, 0) : y + reach + 1, beyond] == zone).any())
+
+
+def _edges_inside(
+    strands: list[_Strand], labels: NDArray[np.int32], zone: int
+) -> tuple[Array, Array, Array]:
+    """Upper and lower edge of the common ink in each column of a zone."""
+    edges: dict[int, tuple[float, float]] = {}
+    for s in strands:
+        rows = np.clip(np.round(s.y).astype(int), 0, labels.shape[0] - 1)
+        inside = (labels[rows, s.x.astype(int)] == zone) & np.isfinite(s.run.top)
+        for x, top, bottom in zip(
+            s.x[inside], s.run.top[inside], s.run.bottom[inside], strict=True
+        ):
+            old = edges.get(int(x), (np.inf, -np.inf))
+            edges[int(x)] = (min(old[0], top), max(old[1], bottom))
+    x = np.array(sorted(edges), float)
+    return x, np.array([edges[int(k)][0] for k in x]), np.array([edges[int(k)][1] for k in x])
+
+
+def _paired(
+    zone: _Zone, arms: list[_Arm], edge_width: float
+) -> tuple[list[tuple[int, int]], float]:
+    """Arms of the left with arms of the right, and how sure that is (0–1)."""
+    left, right = zone.left, zone.right
+    if not left or not right:
+        return [], 1.0
+    if len(right) > 4 or len(left) > 4:
+        return [(a, b) for a, b in zip(left, right, strict=False)], 0.0
+    trials = [
+        (_misfit(zone, arms, choice, edge_width), choice)
+        for choice in _choices(left, right)
+        if all(arms[a].x[-1] < arms[b].x[0] + 15 for a, b in choice)
+    ]
+    if not trials:
+        return [], 0.0
+    trials.sort(key=lambda t: t[0])
+    best = trials[0]
+    if len(trials) == 1:
+        return best[1], 1.0
+    margin = 1.0 - best[0] / max(trials[1][0], 1e-9)
+    return best[1], float(margin)
+
+
+def _choices(left: tuple[int, ...], right: tuple[int, ...]) -> list[list[tuple[int, int]]]:
+    """All ways to let every arm on the right come from one on the left, or the other way round."""
+    if len(left) >= len(right):
+        return [list(zip(order, right, strict=True)) for order in permutations(left, len(right))]
+    short = [[*pick] for pick in _products(left, len(right)) if set(pick) == set(left)]
+    return [list(zip(pick, right, strict=True)) for pick in short]
+
+
+def _products(items: tuple[int, ...], count: int) -> list[tuple[int, ...]]:
+    from itertools import product
+
+    return list(product(items, repeat=count))
+
+
+def _misfit(
+    zone: _Zone, arms: list[_Arm], pairs: list[tuple[int, int]], edge_width: float
+) -> float:
+    """Mean squared distance [px²] of cubics from the paired arms and the zone's edges."""
+    centre, scale = zone.x.mean(), max(np.ptp(zone.x), 40.0)
+    window = 1.2 * np.ptp(zone.x) + 60.0
+    heights, total, count = [], 0.0, 0
+    for a, b in pairs:
+        before = arms[a].x > zone.x[0] - window
+        after = arms[b].x < zone.x[-1] + window
+        x = np.r_[arms[a].x[before], arms[b].x[after]]
+        y = np.r_[arms[a].y[before], arms[b].y[after]]
+        if len(x) < 8:
+            return 1e6
+        fit = np.polynomial.Polynomial.fit((x - centre) / scale, y, 3)
+        total += float(((fit((x - centre) / scale) - y) ** 2).sum())
+        count += len(x)
+        heights.append((fit((zone.x - centre) / scale), fit.deriv()((zone.x - centre) / scale)))
+    half = [0.5 * edge_width * np.sqrt(1 + (d / scale) ** 2) for _, d in heights]
+    top = np.min([h - k for (h, _), k in zip(heights, half, strict=True)], axis=0)
+    bottom = np.max([h + k for (h, _), k in zip(heights, half, strict=True)], axis=0)
+    off = np.minimum((top - zone.top) ** 2, 25) + np.minimum((bottom - zone.bottom) ** 2, 25)
+    return total / count + float(off.mean()) + 0.01
+
+
+def _placed(
+    chains: list[tuple[list[int], float]],
+    arms: list[_Arm],
+    zones: list[_Zone],
+    edge_width: float,
+    width: float,
+) -> list[Member]:
+    """Every member over its whole length: arms as measured, common ink by its edges."""
+    parts = []
+    for chain, sure in chains:
+        x = np.concatenate([arms[i].x for i in chain])
+        y = np.concatenate([arms[i].y for i in chain])
+        ends = [chain[0], chain[-1]]
+        own = [z for z in zones if set(chain) & (set(z.left) | set(z.right))]
+        low = min([x[0], *[z.x[0] for z in own if ends[0] in z.right]])
+        high = max([x[-1], *[z.x[-1] for z in own if ends[1] in z.left]])
+        parts.append((x, y, own, low, high, sure))
+    curves = [_Curve(x, y, low, high, width) for x, y, _, low, high, _ in parts]
+    for _ in range(6):
+        wanted = [[(c.x, c.y)] for c in curves]
+        for zone in zones:
+            inside = [k for k, p in enumerate(parts) if any(z is zone for z in p[2])]
+            _share_edges(zone, inside, curves, edge_width, wanted)
+        for curve, data in zip(curves, wanted, strict=True):
+            curve.fit(np.concatenate([d[0] for d in data]), np.concatenate([d[1] for d in data]))
+    return [
+        _member(k, curves, parts[k][2], parts[k][5], edge_width, width) for k in range(len(parts))
+    ]
+
+
+class _Curve:
+    """A smooth height over columns, fitted to points."""
+
+    def __init__(self, x: Array, y: Array, low: float, high: float, width: float) -> None:
+        self.x, self.y, self.width = x, y, width
+        self.at = np.arange(np.ceil(low), np.floor(high) + 1)
+        self.height = np.interp(self.at, x, y)
+        self.sigma = np.ones_like(self.at)
+        self.seen = np.zeros(len(self.at), bool)
+        self.scatter = 0.1
+        self.fit(x, y)
+
+    def fit(self, x: Array, y: Array) -> None:
+        """Smooth through the mean of the points in each column."""
+        from curvefit.trace.spline import smooth
+
+        column = np.round(x - self.at[0]).astype(int)
+        ok = (column >= 0) & (column < len(self.at)) & np.isfinite(y)
+        count = np.bincount(column[ok], minlength=len(self.at))
+        mean = np.bincount(column[ok], y[ok], minlength=len(self.at)) / np.maximum(count, 1)
+        self.seen = count > 0
+        base = np.interp(self.at, self.at[self.seen], mean[self.seen])
+        fitted = smooth(self.at, mean, self.seen.astype(float), max(20.0, 4 * self.width), 4.0)
+        self.height = fitted.value if np.isfinite(fitted.value).all() else base
+        self.sigma, self.scatter = fitted.sigma, fitted.scatter
+
+    def value(self, x: Array) -> Array:
+        """Height at columns, NaN outside."""
+        return np.interp(x, self.at, self.height, left=np.nan, right=np.nan)
+
+    def half(self, x: Array, edge_width: float) -> Array:
+        """Half of the stroke's vertical extent at columns [px]."""
+        slope = np.gradient(self.height)
+        return 0.5 * edge_width * np.sqrt(1 + np.interp(x, self.at, slope) ** 2)
+
+
+def _share_edges(
+    zone: _Zone,
+    inside: list[int],
+    curves: list[_Curve],
+    edge_width: float,
+    wanted: list[list[tuple[Array, Array]]],
+) -> None:
+    """Give the zone's upper edge to its upper line in each column, the lower edge to the lower."""
+    if not inside:
+        return
+    heights = np.array([curves[k].value(zone.x) for k in inside])
+    some = np.isfinite(heights).any(0)
+    if not some.any():
+        return
+    filled_low = np.where(np.isfinite(heights), heights, np.inf)
+    filled_high = np.where(np.isfinite(heights), heights, -np.inf)
+    upper, lower = filled_low.argmin(0), filled_high.argmax(0)
+    for row, k in enumerate(inside):
+        half = curves[k].half(zone.x, edge_width)
+        for owner, y in ((upper, zone.top + half), (lower, zone.bottom - half)):
+            mine = some & (owner == row) & np.isfinite(heights[row])
+            wanted[k].append((zone.x[mine], y[mine]))
+
+
+def _member(
+    k: int, curves: list[_Curve], own: list[_Zone], sure: float, edge_width: float, width: float
+) -> Member:
+    curve = curves[k]
+    merged = np.zeros(len(curve.at), bool)
+    spread = np.zeros(len(curve.at))
+    for zone in own:
+        inside = (curve.at >= zone.x[0]) & (curve.at <= zone.x[-1])
+        merged |= inside
+        height = np.interp(curve.at, zone.x, zone.bottom - zone.top)
+        spread = np.where(
+            inside, np.maximum(height - 2 * curve.half(curve.at, edge_width), 0), spread
+        )
+    slope = np.gradient(curve.height)
+    steep = np.sqrt(1 + slope * slope)
+    n = len(curve.at)
+    line = Line(
+        np.stack([curve.at, curve.height], 1),
+        curve.sigma / steep,
+        curve.seen & ~merged,
+        np.ones(n),
+        np.ones(n),
+        np.zeros(n),
+        width,
+        curve.scatter,
+    )
+    return Member(replace(line), merged, spread, sure)
