@@ -9,8 +9,8 @@ __all__ = ["ink_of", "stroke_reach"]
 
 
 def stroke_reach(shape: tuple[int, ...]) -> int:
-    """Widest stroke still taken for ink [px], odd: eight thousandths of the long side, at least 9."""
-    return max(9, int(round(0.008 * max(shape[:2]))) // 2 * 2 + 1)
+    """Widest stroke still taken for ink [px], odd: 0.8 % of the long side, at least 9."""
+    return max(9, round(0.008 * max(shape[:2])) // 2 * 2 + 1)
 
 
 def ink_of(pixels: NDArray[np.uint8], reach: int | None = None) -> NDArray[np.uint8]:

@@ -5,9 +5,9 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from curvefit.geometry import Warp, homography, project
+from curvefit.geometry import Warp, homography
 
-__all__ = ["follow", "meeting", "warp_of"]
+__all__ = ["follow", "meeting", "side_lines", "straight", "warp_of"]
 
 Array = NDArray[np.float64]
 
@@ -101,7 +101,7 @@ def _smooth(t: Array, centre: Array, weight: Array) -> NDArray[np.bool_]:
 
 
 def straight(xy: Array) -> Array:
-    """The line a·x + b·y = c through points, (3,): a, b a unit normal (orthogonal least squares)."""
+    """The line a·x + b·y = c nearest to points, (3,); a, b are its unit normal."""
     middle = xy.mean(0)
     normal = np.linalg.svd(xy - middle, full_matrices=False)[2][1]
     return np.r_[normal, normal @ middle]
@@ -141,9 +141,3 @@ def side_lines(
         lines.append(chord)
     moved = np.array([meeting(lines[i - 1], lines[i]) for i in range(4)])
     return moved, found
-
-
-def on_page(matrix: Array, box: tuple[float, float, float, float]) -> Array:
-    """Corners (4, 2) on the page of a box (left, top, right, bottom) of the straightened page."""
-    x0, y0, x1, y1 = box
-    return project(np.linalg.inv(matrix), [[x0, y0], [x1, y0], [x1, y1], [x0, y1]])

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from curvefit.calibrate.evidence import TickRow
 from curvefit.geometry import Warp
 
-__all__ = ["Flat", "flatten", "tick_bars", "tick_rows"]
+__all__ = ["FARTHEST", "Flat", "Side", "flatten", "tick_bars", "tick_rows"]
 
 Array = NDArray[np.float64]
 Image = NDArray[np.uint8]
@@ -21,7 +21,7 @@ SIDES: tuple[Side, ...] = ("bottom", "top", "left", "right")
 
 _SNAP = 0.35  # [px]: programs that draw on whole pixels put a line up to half a pixel off
 _FAINT = 40  # ink above this counts no more in a grid profile: a pale grid weighs as a dark curve
-_FAR = 0.34  # a scale of its own line stands no further outside than this share of the box
+FARTHEST = 0.34  # a scale of its own line stands no further outside than this share of the box
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -117,16 +117,22 @@ def tick_rows(
         u = _SNAP / length
         rows.append(_tick_row(side, "end", [0.0, 1.0], [u, u], [1.0, 1.0]))
         for offset in spines.get(side, []):
-            at = m - round(offset)
-            if at - reach - 2 < 0:
+            at = _line_near(view, m - round(offset))
+            if at - reach - 8 < 0:
                 continue
             thick = _half_width(view, at)
             for kind, strip in (
                 ("outside", view[at - thick - 1 - reach : at - thick - 1]),
                 ("inside", view[at + thick + 2 : at + thick + 2 + reach]),
             ):
-                rows += _row(side, kind, strip.mean(0), m, length, 14.0, offset)
+                rows += _row(side, kind, strip.mean(0), m, length, 14.0, float(m - at))
     return tuple(rows)
+
+
+def _line_near(view: NDArray[np.float32], row: int) -> int:
+    """The darkest row within 4 px of one."""
+    lo = max(row - 4, 0)
+    return lo + int(np.argmax(np.median(view[lo : row + 5], axis=1))) if row > 0 else row
 
 
 def tick_bars(flat: Flat, rows: tuple[TickRow, ...]) -> list[Array]:

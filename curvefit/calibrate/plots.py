@@ -1,0 +1,143 @@
+"""The plot boxes of a sheet with their warps and ticks, before the page's turn is known."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from curvefit.calibrate.boxes import Box, find_boxes
+from curvefit.calibrate.evidence import TickRow
+from curvefit.calibrate.sheet import Settings, Sheet
+from curvefit.calibrate.sides import side_lines, warp_of
+from curvefit.calibrate.ticks import FARTHEST, Side, flatten, tick_bars, tick_rows
+from curvefit.geometry import Warp, project
+from curvefit.notes import PanelNotes
+
+__all__ = ["Plot", "clockwise", "find_plots"]
+
+Array = NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Plot:
+    """A plot box as it lies on the page. corners : (4, 2) page px, clockwise from the top left.
+
+    bars : outlines (4, 2) of its outside ticks, straightened panel px.
+    """
+
+    corners: Array
+    box: Box
+    warp: Warp
+    ticks: tuple[TickRow, ...]
+    bars: list[Array]
+
+
+def find_plots(sheet: Sheet, notes: Sequence[PanelNotes], s: Settings) -> list[Plot]:
+    """The plot boxes of a page, given ones among them, from top to bottom.
+
+    A box whose corners are given replaces one found at the same place; one that a note drops is
+    left out.
+    """
+    boxes = _seen_boxes(sheet, s)
+    plots = [_plot(sheet, corners, box, [b for _, b in boxes]) for corners, box in boxes]
+    for note in notes:
+        if note.corners is not None:
+            given = _given(sheet, note, [b for _, b in boxes])
+            plots = [p for p in plots if _overlap(p.box, given.box) < 0.3] + [given]
+        elif note.drop and note.box is not None:
+            dropped = _flat_box(sheet, _corners_of(note.box))
+            plots = [p for p in plots if _overlap(p.box, dropped) < 0.3]
+    return _in_reading_order(plots)
+
+
+def _seen_boxes(sheet: Sheet, s: Settings) -> list[tuple[Array, Box]]:
+    """Corners on the page (sub-pixel) of each box that lines make."""
+    long_side = max(sheet.flat.shape)
+    reach = 4.0 * max(1.0, long_side / s.work) + 1
+    found = []
+    for box in find_boxes(sheet.across, sheet.upright, 0.3 * s.shortest * long_side):
+        if box.area > s.smallest * sheet.flat.size:
+            rough = project(np.linalg.inv(sheet.matrix), box.corners)
+            found.append((side_lines(sheet.ink, rough, box.seen, reach)[0], box))
+    return found
+
+
+def _plot(sheet: Sheet, corners: Array, box: Box, others: list[Box]) -> Plot:
+    warp = warp_of(corners)
+    flat = flatten(sheet.ink, warp, int(min(FARTHEST * max(warp.size) + 16, 700)))
+    rows = tick_rows(flat, box.seen, _spines(sheet, box, others))
+    return Plot(corners, box, warp, rows, tick_bars(flat, rows))
+
+
+def _given(sheet: Sheet, note: PanelNotes, others: list[Box]) -> Plot:
+    assert note.corners is not None
+    corners = clockwise(note.corners)
+    return _plot(sheet, corners, _flat_box(sheet, corners), others)
+
+
+def clockwise(corners: Sequence[tuple[float, float]]) -> Array:
+    """Four corners, (4, 2), clockwise from the page's own top left, whatever its turn."""
+    xy = np.array(corners, float)
+    out = xy - xy.mean(0)
+    return np.asarray(xy[np.argsort(np.arctan2(out[:, 1], out[:, 0]))])
+
+
+def _corners_of(box: tuple[float, float, float, float]) -> Array:
+    x0, y0, x1, y1 = box
+    return np.array([[x0, y0], [x1, y0], [x1, y1], [x0, y1]], float)
+
+
+def _flat_box(sheet: Sheet, corners: Array) -> Box:
+    flat = project(sheet.matrix, corners)
+    (left, top), (right, bottom) = flat.min(0), flat.max(0)
+    return Box(float(left), float(top), float(right), float(bottom), (True, True, True, True))
+
+
+def _overlap(a: Box, b: Box) -> float:
+    """Area that two boxes share over the area that they cover."""
+    wide = min(a.right, b.right) - max(a.left, b.left)
+    tall = min(a.bottom, b.bottom) - max(a.top, b.top)
+    both = max(wide, 0.0) * max(tall, 0.0)
+    return both / max(a.area + b.area - both, 1e-9)
+
+
+def _spines(sheet: Sheet, box: Box, others: list[Box]) -> dict[Side, list[float]]:
+    """How far outside each side [px] further scale lines stand: as long as the side, apart."""
+    out: dict[Side, list[float]] = {}
+    for lines, low, high, lo, hi, names in (
+        (sheet.upright, box.left, box.right, box.top, box.bottom, ("left", "right")),
+        (sheet.across, box.top, box.bottom, box.left, box.right, ("top", "bottom")),
+    ):
+        far = FARTHEST * max(box.right - box.left, box.bottom - box.top)
+        for line in lines:
+            covers = min(line.hi, hi) - max(line.lo, lo)
+            if covers < 0.8 * (hi - lo) or line.length > 1.2 * (hi - lo):
+                continue
+            if any(_holds(b, line, lines is sheet.upright) for b in others if b is not box):
+                continue
+            for side, offset in ((names[0], low - line.at), (names[1], line.at - high)):
+                if 8 < offset < far:
+                    out.setdefault(side, []).append(offset)  # type: ignore[arg-type]
+    return out
+
+
+def _holds(box: Box, line: object, upright: bool) -> bool:
+    """Whether a line is part of another box."""
+    at = line.at  # type: ignore[attr-defined]
+    middle = (line.lo + line.hi) / 2  # type: ignore[attr-defined]
+    return box.distance(at, middle) < 4 if upright else box.distance(middle, at) < 4
+
+
+def _in_reading_order(plots: list[Plot]) -> list[Plot]:
+    """From top to bottom; boxes that stand side by side from left to right."""
+    rows: list[list[Plot]] = []
+    for plot in sorted(plots, key=lambda p: (p.box.top + p.box.bottom) / 2):
+        middle = (plot.box.top + plot.box.bottom) / 2
+        if rows and rows[-1][0].box.top < middle < rows[-1][0].box.bottom:
+            rows[-1].append(plot)
+        else:
+            rows.append([plot])
+    return [p for row in rows for p in sorted(row, key=lambda p: p.box.left)]
