@@ -271,7 +271,8 @@ class _Writing:
         r = 0.35 * self.size
         centre = self.to_picture(panel.corners.mean(0))
         for axis in panel.axes:
-            colour = COLOURS[0] if axis.by == "read" else COLOURS[2]
+            further = axis.name.rpartition(".")[2].isdigit()  # a second scale on this side
+            colour = COLOURS[3] if further else COLOURS[0]
             for mark in axis.marks:
                 x, y = self.to_picture(mark.xy)
                 if not mark.used or mark.value is None:
