@@ -68,7 +68,7 @@ def choose(
         asked = choice.family == "piecewise"
         if asked or (share > settings.poor and choice.degree is None and not choice.without):
             knots = np.stack([pieces.knots, pieces.values], axis=1)
-            chosen = Equation("piecewise", _clipped(pieces, grid), knots=knots)
+            chosen = Equation("piecewise", pieces.value(grid), knots=knots)
             if asked:
                 return chosen, tuple(candidates), "the piecewise cubic was asked for"
             said.append(
@@ -181,12 +181,6 @@ def power_names(quantity: str, constant: float, factor: float, exponent: float) 
     if quantity in ("head", "differential_pressure"):
         return {"H0": constant, "a": -factor, "n": exponent}
     return {"c0": constant, "c1": factor, "n": exponent}
-
-
-def _clipped(pieces: Piecewise, grid: Array) -> Array:
-    """The piecewise cubic inside its knots, the smooth one outside."""
-    inside = (grid >= pieces.knots[0]) & (grid <= pieces.knots[-1])
-    return np.where(inside, pieces.value(grid), pieces.smooth(grid))
 
 
 def at_points(equation: Equation, flow: Array) -> Array:

@@ -12,7 +12,7 @@ from curvefit.errors import ChartError
 from curvefit.fit.average import average
 from curvefit.fit.bands import spread, sup_t
 from curvefit.fit.choice import Choice, Settings
-from curvefit.fit.joint import Joint, Line, coefficients_at, fit_joint, predict
+from curvefit.fit.joint import Joint, Line, centre, coefficients_at, fit_joint, predict
 from curvefit.fit.quantiles import normal_two_sided
 from curvefit.fit.said import finding, where
 from curvefit.fit.traced import line_uncertainty, thinned
@@ -253,7 +253,7 @@ class Family:
     def _residual(self) -> float:
         squares, count = 0.0, 0
         for i, line in enumerate(self.lines):
-            value, _, _ = predict(self.joint, line.logs, line.flow, i)
+            value = centre(self.joint, line.logs, line.flow, i)
             squares += float(np.sum((value - line.value) ** 2))
             count += len(line.flow)
         return float(np.sqrt(squares / count))
@@ -351,7 +351,7 @@ def _line(
     u = line_uncertainty(curve)[kept]
     top = min(6, len(flow) - 5)
     fitted = average(flow, value, u, tuple(range(min(3, top), top + 1)), settings)
-    whitener = np.linalg.inv(fitted.noise.scale * fitted.noise.whitener)
+    whitener = np.asarray(np.linalg.inv(fitted.noise.scale * fitted.noise.whitener), float)
     return kept, whitener, (flow, value), fitted.best.degree
 
 

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from curvefit.fit.bands import spread
 from curvefit.fit.choice import Choice, Settings
 from curvefit.fit.family import SAME, member_key
-from curvefit.fit.joint import TAUS, Joint, Line, coefficients_at, fit_joint, predict
+from curvefit.fit.joint import TAUS, Joint, Line, centre, coefficients_at, fit_joint, predict
 from curvefit.fit.quantiles import normal_two_sided
 from curvefit.fit.said import finding
 from curvefit.records import BUNDLED, Band, Curve, Fit
@@ -153,8 +153,8 @@ def _line(met: Sequence[Crossing], log: Array) -> Line:
 
 def _weighted(joint: Joint, line: Line, index: int, met: Sequence[Crossing]) -> Line:
     step = 1e-4 * float(line.flow.max())
-    up, _, _ = predict(joint, line.logs, line.flow + step, index)
-    down, _, _ = predict(joint, line.logs, line.flow - step, index)
+    up = centre(joint, line.logs, line.flow + step, index)
+    down = centre(joint, line.logs, line.flow - step, index)
     slope = (up - down) / (2 * step)
     u = np.hypot(slope * np.array([0.0, *(x[2] for x in met)]), OWN)
     return replace(line, whitener=np.diag(1 / u))
@@ -174,7 +174,7 @@ def _best(lines: Sequence[Line], met: Sequence[Sequence[Crossing]]) -> _Model:
             joint = _fit(weighted, degree, ROUGH)
         squares = 0.0
         for i, line in enumerate(weighted):
-            miss = (predict(joint, line.logs, line.flow, i)[0] - line.value)[1:]
+            miss = (centre(joint, line.logs, line.flow, i) - line.value)[1:]
             squares += float(np.sum((miss * np.diag(line.whitener)[1:]) ** 2))
         criterion = points * np.log(squares / points + 0.1) + 2 * terms
         criterion += 2 * terms * (terms + 1) / max(points - terms - 1, 1)
@@ -205,11 +205,11 @@ def _efficiency(
     grid = np.linspace(low, high, settings.grid)
     value, factors, _ = predict(joint, line.logs, grid, index)
     if model.rival is not None:
-        other, _, _ = predict(model.rival, line.logs, grid, index)
+        other = centre(model.rival, line.logs, grid, index)
         factors = np.concatenate([factors, (other - value)[None]])
     calibration = _calibration(head, grid, value)
     half = normal_two_sided(choice.confidence) * spread(factors, calibration)
-    residual = predict(joint, line.logs, line.flow, index)[0] - line.value
+    residual = centre(joint, line.logs, line.flow, index) - line.value
     flow = np.array([x[0] for x in met])
     keep = np.r_[True, np.diff(flow) > 0]
     label = head.label or head.name

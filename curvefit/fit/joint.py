@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 from curvefit.fit.quantiles import t_two_sided
 from curvefit.models import plain_from_legendre
 
-__all__ = ["Joint", "Line", "Solution", "coefficients_at", "fit_joint", "predict"]
+__all__ = ["Joint", "Line", "Solution", "centre", "coefficients_at", "fit_joint", "predict"]
 
 Array = NDArray[np.float64]
 
@@ -170,13 +170,20 @@ def predict(
         rows.append(np.sqrt(weight) * widen * own)
         common.append((known @ solution.response[at]).T)
         centres.append(value)
-    centre = weights @ np.stack(centres)
-    spread = [np.sqrt(w) * (c - centre)[None] for w, c in zip(weights, centres, strict=True)]
+    middle = weights @ np.stack(centres)
+    spread = [np.sqrt(w) * (c - middle)[None] for w, c in zip(weights, centres, strict=True)]
     stacked = np.concatenate([*rows, *spread])
     _, sizes, turned = np.linalg.svd(stacked, full_matrices=False)
     keep = sizes > 1e-6 * sizes[0] if len(sizes) and sizes[0] > 0 else sizes > 0
     factors = sizes[keep, None] * turned[keep]
-    return centre, factors, np.asarray(np.tensordot(weights, np.stack(common), 1))
+    return middle, factors, np.asarray(np.tensordot(weights, np.stack(common), 1))
+
+
+def centre(joint: Joint, logs: Array, flow: Array, index: int | None = None) -> Array:
+    """The values (n,) alone that :func:`predict` gives."""
+    weights = np.array([s.weight for s in joint.solutions])
+    values = [_model(joint, s.parameters, logs, flow, index)[0] for s in joint.solutions]
+    return np.asarray(weights @ np.stack(values) / weights.sum())
 
 
 def coefficients_at(joint: Joint, logs: Array, index: int | None = None) -> Array:

@@ -13,12 +13,12 @@ from curvefit.fit.average import Average, Member
 from curvefit.fit.quantiles import chi_square
 from curvefit.models import bernstein_from_legendre, extrema, plain_from_legendre
 
-__all__ = ["breaks_shape", "hold_shape"]
+__all__ = ["TURN", "breaks_shape", "hold_shape"]
 
 Array = NDArray[np.float64]
 
 #: first direction of the one turn that a quantity may take; 0: either
-_TURN = {
+TURN = {
     "head": 1,
     "differential_pressure": 1,
     "efficiency": 1,
@@ -31,7 +31,7 @@ _TURN = {
 
 def breaks_shape(quantity: str, coefficients: Array, low: float, high: float) -> str:
     """What is wrong with the course of a polynomial (plain coefficients); "" where nothing is."""
-    turn = _TURN.get(quantity)
+    turn = TURN.get(quantity)
     if turn is None:
         return ""
     at = extrema(coefficients, low, high)
@@ -66,7 +66,7 @@ def hold_shape(quantity: str, member: Member, fitted: Average) -> tuple[Array, b
     if n != degree + 1:  # terms held at zero: no cone form, leave the free fit
         return member.coefficients, False
     from_bernstein = np.linalg.inv(bernstein)
-    turns = (_TURN[quantity],) if _TURN[quantity] else (1, -1)
+    turns = (TURN[quantity],) if TURN[quantity] else (1, -1)
     best: tuple[float, Array, int] | None = None
     target = member.root @ member.free
     for turn in turns:

@@ -13,6 +13,7 @@ from curvefit.fit.equations import Equation, at_points, choose
 from curvefit.fit.piecewise import Piecewise, fit_piecewise
 from curvefit.fit.quantiles import normal_two_sided
 from curvefit.fit.said import finding, where
+from curvefit.fit.shape import TURN
 from curvefit.records import Band, Curve, Finding, Fit
 
 __all__ = ["band_grid", "fit_traced", "line_uncertainty", "on_grid", "outside_finding", "thinned"]
@@ -56,7 +57,7 @@ def fit_traced(
     centre, factors = (
         _from_average(fitted, grid)
         if pieces is None
-        else (pieces.smooth(grid), pieces.factors(grid))
+        else (pieces.value(grid), pieces.factors(grid))
     )
     equation, candidates, reason = choose(
         curve, choice, settings, fitted, pieces, (flow, value, u), grid, said
@@ -193,14 +194,14 @@ def _pieces_if_needed(
 ) -> Piecewise | None:
     """The piecewise cubic where it is asked for or where polynomials miss the line."""
     if choice.family == "piecewise":
-        return fit_piecewise(flow, value, u, settings)
+        return fit_piecewise(flow, value, u, settings, TURN.get(curve.quantity))
     if len(flow) < 24:
         return None
     missed = value - fitted.basis(flow) @ fitted.coefficients
     rms, span = float(np.sqrt(np.mean(missed**2))), float(np.ptp(value))
     if rms < max(0.3 * settings.poor * span, settings.poor_sigmas * float(np.median(u))):
         return None
-    pieces = fit_piecewise(flow, value, u, settings)
+    pieces = fit_piecewise(flow, value, u, settings, TURN.get(curve.quantity))
     better = float(np.sqrt(np.mean((value - pieces.value(flow)) ** 2)))
     return pieces if better < 0.6 * rms else None
 
