@@ -64,22 +64,26 @@ def no_unit(trace: Trace, panel: Panel, flow: Axis | None, value: Axis) -> Findi
 
 
 def of_choice(line: Line, choice: Choice) -> None:
-    """Mark a quantity as a guess where the next best was nearly as good."""
+    """Mark a quantity as a guess where the next best was nearly as good.
+
+    An axis that does not say its quantity is a warning, unless its unit leaves little choice and
+    its lines have the very shape (said once, by the first of its lines).
+    """
     needed = ChoiceSettings().margin
-    unread = choice.axis.quantity is None or (choice.axis.guessed and choice.named is None)
-    if choice.axis.quantity is None or choice.margin < needed:
-        line.doubts |= {"quantity"} | ({"axis"} if choice.margin < needed else set())
-    if choice.margin >= needed and not (unread and choice.axis.quantity is None):
+    unread, close = choice.axis.quantity is None, choice.margin < needed
+    if not unread and not close:
         return
+    line.doubts |= {"quantity", "axis"} if close else {"quantity"}
+    likely = not close and choice.axis.unit is not None and choice.margin > 2 * needed
     why = (
-        f"the axis {choice.axis.name} does not say what it shows"
-        if choice.margin >= needed
-        else f"label, shape and colour favour it by {max(choice.margin, 0):.1f} only,"
+        f"label, shape and colour favour it by {max(choice.margin, 0):.1f} only,"
         f" {needed:.1f} needed"
+        if close
+        else f"the axis {choice.axis.name} does not say what it shows"
     )
     line.findings.append(
         Finding(
-            "warning",
+            "info" if likely else "warning",
             "curve.guess",
             f"this line was taken as {_words(choice.quantity)} on {choice.axis.name}: {why}",
             remedy=f"a [[curve]] note with {_at(line.trace)} and quantity or axis settles it",
@@ -183,15 +187,15 @@ def of_family(group: Sequence[Line]) -> None:
     if len(group) < 2:
         return
     named = [x for x in group if _mark(x) is not None]
-    for line in group:
-        if _mark(line) is not None:
-            continue
+    unnamed = [x for x in group if _mark(x) is None]
+    for line in unnamed if named else unnamed[:1]:  # where none has a label, once is enough
+        which = "this one has none" if named else "they cannot be told apart"
         line.findings.append(
             Finding(
                 "warning",
                 "curve.unlabelled",
                 f"{len(group)} {_words(line.quantity)} lines stand in panel {line.panel.name},"
-                f" {len(named)} have a readable label; this one has none",
+                f" {len(named)} have a readable label: {which}",
                 remedy=f"a [[curve]] note with {_at(line.trace)} and diameter or speed names it",
             )
         )

@@ -196,8 +196,8 @@ def _chain(
     cost, dealt = min(states.values(), key=lambda s: s[0])
     if all(d is None for d in dealt):
         return None
-    if kind == "letter" and len({d[1].text for d in dealt if d is not None}) < len(dealt):
-        return None  # scraps of grid and line read as letters are never one of each
+    if kind == "letter" and sum(d is not None for d in dealt) < 0.6 * len(dealt):
+        return None  # scraps of grid and line are read as letters too
     cost += 0.3 * (kind == "letter") + 0.4 * (kind == "percent")
     cost += 0.15 * (stand != "any")
     got = tuple(None if d is None else (labels[d[0]], d[1]) for d in dealt)
@@ -233,8 +233,8 @@ def _law(
     settings: Settings,
 ) -> float | None:
     """Cost of two neighbours' labels by order and affinity; None where the order is wrong."""
-    if kind == "letter":
-        return 0.0
+    if kind == "letter":  # trims are named in order
+        return 0.0 if more.text < less.text else None
     if more.value is None or less.value is None:
         return 0.0
     if more.value <= less.value * 1.001:

@@ -165,10 +165,11 @@ def odd_ones(base: Sequence[Line], settings: Settings) -> list[Line]:
     Notes
     -----
     Among the heads at a common flow, ln D runs smoothly with ln H; the line through the others
-    (Theil–Sen) foretells each diameter. Four lines at least, so that the odd one can be told.
+    (Theil–Sen) foretells each diameter. Of three lines none can be told to be the odd one: the
+    middle one stands for them where one step is more than twice as steep as the other.
     """
     known = [x for x in base if x.diameter is not None]
-    if len(known) < 4 or base[0].quantity != "head":
+    if len(known) < 3 or base[0].quantity != "head":
         return []
     low = max(float(x.values.flow[0]) for x in known)
     high = min(float(x.values.flow[-1]) for x in known)
@@ -179,6 +180,11 @@ def odd_ones(base: Sequence[Line], settings: Settings) -> list[Line]:
     if min(head) <= 0:
         return []
     x, y = np.log(head), np.log([float(k.diameter or 1.0) for k in known])
+    if len(known) == 3:
+        i, j, k = np.argsort(x)
+        steps = [(y[j] - y[i]) / max(x[j] - x[i], 1e-9), (y[k] - y[j]) / max(x[k] - x[j], 1e-9)]
+        off = abs(y[j] - np.interp(x[j], x[[i, k]], y[[i, k]])) > settings.law
+        return [known[j]] if off and max(steps) > 2.0 * min(steps) else []
     odd = []
     for i, line in enumerate(known):
         rest = np.arange(len(known)) != i

@@ -62,15 +62,21 @@ def iso_lines(panel: Panel, traces: Sequence[Trace], labels: Sequence[Label]) ->
         return []
     marked = [w for w in labels if any(m.plain and m.kind in _QUANTITY for m in w.meanings)]
     found = [t for t in traces if t.path]
+    if len(quantities) > 1 and not _levelled(found, marked):
+        return []
     if len(quantities) == 1:
         for one, other in _parted([t for t in traces if not t.path]):
             iso, heads = (one, other) if _head_like(one) < _head_like(other) else (other, one)
-            levelled = any(_near(w, t) < Settings().reach for w in marked for t in iso)
+            levelled = _levelled(iso, marked)
             unlike = all(_other_style(t, h) for t in iso for h in heads)
             if levelled or (len(iso) > 1 and (unlike or _head_like(iso) < 0.6 * _head_like(heads))):
                 found += iso
         found += _lone_levels(traces, found, labels)
     return [t for t in traces if any(t is f for f in found)]
+
+
+def _levelled(traces: Sequence[Trace], marked: Sequence[Label]) -> bool:
+    return any(_near(w, t) < Settings().reach for w in marked for t in traces)
 
 
 def _lone_levels(
@@ -93,11 +99,20 @@ def _lone_levels(
             if any(m.plain and m.kind in _QUANTITY for m in w.meanings)
         )
         falls = trace.flat[-1, 1] > trace.flat[0, 1]
+        arc = short and any(_between(trace, t) for t in others)
         if falls and not short:  # as heads do
             continue
-        if (kin and unlike) or (marked and (unlike or short)):
+        if (arc and (marked or isos)) or (kin and unlike) or (marked and (unlike or short)):
             found.append(trace)
     return found
+
+
+def _between(trace: Trace, other: Trace) -> bool:
+    """Whether a line starts and ends on another one, as an arc of equal efficiency does."""
+    x, y = trace.flat[[0, -1]].T
+    if x[0] < other.flat[0, 0] or x[1] > other.flat[-1, 0]:
+        return False
+    return bool((np.abs(y - np.interp(x, *other.flat.T)) < 8.0).all())
 
 
 def _parted(traces: Sequence[Trace]) -> list[tuple[list[Trace], list[Trace]]]:

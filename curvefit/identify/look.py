@@ -13,7 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from curvefit.identify.placing import Label, label_of
+from curvefit.identify.placing import Label, label_of, on_scale
 from curvefit.records import Page, Panel, Trace, Word
 
 __all__ = ["again", "along", "at_ends", "missing"]
@@ -145,9 +145,8 @@ def along(
         for k, trace in enumerate(_ends_first(traces)):
             if k == 2 and not found:
                 break
-            hits = [
-                w for w in _read_strips(panel, place(panel, trace, height), height) if wanted(w)
-            ]
+            read = _read_strips(panel, place(panel, trace, height), height)
+            hits = [w for w in read if wanted(w) and not on_scale(w, panel)]
             found += [max(hits, key=lambda w: w.word.score)] if hits else []
         every += found
         if place is _behind and len(found) == len(traces) > 1:
@@ -198,15 +197,15 @@ def _below(panel: Panel, trace: Trace, height: float) -> list[_Strip]:
 
 
 def _beside(panel: Panel, trace: Trace, height: float, shift: float) -> list[_Strip]:
-    """Strips nine heights long beside a line: the first third of it and the last."""
+    """Strips nine heights long beside a line: along the first fifth of it and the last."""
     import cv2
 
     x, y = trace.flat.T
     width = 9.0 * height
     starts = np.arange(x[0] - height, x[-1] - width, 4.5 * height)
-    third = (x[-1] - x[0]) / 3
+    part = (x[-1] - x[0]) / 5
     strips = []
-    for start in starts[(starts < x[0] + third) | (starts > x[-1] - third - width)][:10]:
+    for start in starts[(starts < x[0] + part) | (starts > x[-1] - part - width)][:8]:
         across = np.arange(start, start + width)
         middle = np.interp(across, x, y) + shift * height
         up = np.arange(-0.75 * height, 0.75 * height)

@@ -13,7 +13,16 @@ from curvefit.identify.wording import Meaning, meanings
 from curvefit.records import Panel, Trace, Word
 from curvefit.units import fold
 
-__all__ = ["Label", "Spot", "label_of", "labels_of", "same_place", "spot", "text_height"]
+__all__ = [
+    "Label",
+    "Spot",
+    "label_of",
+    "labels_of",
+    "on_scale",
+    "same_place",
+    "spot",
+    "text_height",
+]
 
 Array = NDArray[np.float64]
 
@@ -63,14 +72,64 @@ def labels_of(panel: Panel) -> tuple[Label, ...]:
     width, height = panel.warp.size
     size = text_height(panel)
     found = []
-    for word in panel.words:
+    for word in (*panel.words, *_joined(panel)):
         label = label_of(panel, word)
         x, y = label.centre
         inside = 0 < x < width and 0 < y < height
         near = -0.1 * width < x < 1.25 * width and -6 * size < y < height + size
-        if near and 0.45 < label.height / size < 2.2 and (inside or not _is_title(word, titles)):
+        fits = 0.45 < label.height / size < 2.2 and not on_scale(label, panel)
+        if near and fits and (inside or not _is_title(word, titles)):
             found.append(label)
     return tuple(found)
+
+
+def on_scale(label: Label, panel: Panel) -> bool:
+    """Whether a bare number stands where the numbers of an axis do, so that it is one of them."""
+    if any(m.plain for m in label.meanings) or not any(c.isdigit() for c in label.text):
+        return False
+    width, height = panel.warp.size
+    (x, y), (hx, hy) = label.centre, label.half
+    sides = {a.side for a in panel.axes}
+    beside = (x + hx < 0 and "left" in sides) or (x - hx > width and "right" in sides)
+    return beside or (y - hy > height and "bottom" in sides) or (y + hy < 0 and "top" in sides)
+
+
+def _joined(panel: Panel) -> list[Word]:
+    """Words of one label that stand apart ("50" "Hz", "6" "1/2\""), put together."""
+    words = [w for w in panel.words if len(w.text.strip()) < 12]
+    following = _following(words)
+    found: list[Word] = []
+    for i, first in enumerate(words):
+        whole, k = first, following[i]
+        for _ in range(2):
+            if k < 0:
+                break
+            box = np.array([whole.box[0], words[k].box[1], words[k].box[2], whole.box[3]])
+            text = f"{whole.text.strip()} {words[k].text.strip()}"
+            whole = Word(text, box, min(whole.score, words[k].score))
+            if any(c.isdigit() for c in text) and len(text) < 16:
+                found.append(whole)
+            k = following[k]
+    return found
+
+
+def _following(words: Sequence[Word]) -> list[int]:
+    """For each word the one that follows on its line, a blank apart; −1 for none."""
+    if len(words) < 2:
+        return [-1] * len(words)
+    boxes = np.array([w.box for w in words])
+    start, end = (boxes[:, 0] + boxes[:, 3]) / 2, (boxes[:, 1] + boxes[:, 2]) / 2
+    height = np.maximum(np.hypot(*(boxes[:, 3] - boxes[:, 0]).T), 1e-9)
+    along = (end - start) / np.maximum(np.hypot(*(end - start).T), 1e-9)[:, None]
+    step = start[None] - end[:, None]  # from the end of i to the start of j
+    gap = (step * along[:, None]).sum(2) / height[:, None]
+    aside = np.abs(step[..., 1] * along[:, None, 0] - step[..., 0] * along[:, None, 1])
+    alike = (height[None] > 0.5 * height[:, None]) & (height[None] < 2.0 * height[:, None])
+    same = (along[:, None] * along[None]).sum(2) > 0.9
+    fits = (gap > -0.3) & (gap < 0.9) & (aside < 0.35 * height[:, None]) & alike & same
+    np.fill_diagonal(fits, False)
+    best = np.where(fits, gap, np.inf).argmin(1)
+    return [int(j) if fits[i, j] else -1 for i, j in enumerate(best)]
 
 
 def text_height(panel: Panel) -> float:

@@ -33,43 +33,45 @@ def with_units(panel: Panel, panels: Sequence[Panel]) -> tuple[Panel, tuple[Find
         if axis.unit is not None or axis.quantity is None:
             axes.append(axis)
             continue
-        code = _likely_unit(axis, panel, panels)
+        code, sure = _likely_unit(axis, panel, panels)
         if code is None:
             axes.append(axis)
             continue
         axes.append(replace(axis, unit=code, guessed=True))
-        if axis.quantity not in ("efficiency", "overall_efficiency"):
-            findings.append(_unit_guess(axis, code, panel))
+        findings.append(_unit_guess(axis, code, sure, panel))
     same = all(a is b for a, b in zip(axes, panel.axes, strict=True))
     return panel if same else replace(panel, axes=tuple(axes)), tuple(findings)
 
 
-def _likely_unit(axis: Axis, panel: Panel, panels: Sequence[Panel]) -> str | None:
+def _likely_unit(axis: Axis, panel: Panel, panels: Sequence[Panel]) -> tuple[str | None, bool]:
+    """The unit that an axis has most likely, and whether another axis bears it out."""
     dimension = _DIMENSIONS[str(axis.quantity)]
     if dimension == "ratio":
         top = float(np.max(np.abs(axis.value(np.array([0.0, 1.0])))))
-        return "%" if top > 2.0 else "1"
+        return ("%" if top > 2.0 else "1"), True
     everywhere = [a for p in (panel, *panels) for a in p.axes if a.unit is not None]
     same = [a.unit for a in everywhere if a.quantity == axis.quantity]
     if same:
-        return same[0]
+        return same[0], True
     if dimension in ("length", "power"):
         alike = [a.unit for a in everywhere if a.unit and unit(a.unit).dimension == dimension]
         if alike:
-            return alike[0]
-        gallons = any("gal" in str(a.unit) or "ft" in str(a.unit) for a in everywhere)
-        return (_IMPERIAL if gallons else _METRIC)[dimension]
+            return alike[0], True
+        imperial = any(u in str(a.unit) for a in everywhere for u in ("gal_us", "ft_i", "HP"))
+        borne_out = any(a.unit in ("kW", "m", "[HP]", "[ft_i]") for a in everywhere)
+        return (_IMPERIAL if imperial else _METRIC)[dimension], borne_out
     if dimension == "flow":
-        return None  # m³/h, l/s and l/min are all common: not to be guessed
-    return _METRIC.get(dimension)
+        return None, False  # m³/h, l/s and l/min are all common: not to be guessed
+    return _METRIC.get(dimension), False
 
 
-def _unit_guess(axis: Axis, code: str, panel: Panel) -> Finding:
+def _unit_guess(axis: Axis, code: str, sure: bool, panel: Panel) -> Finding:
     return Finding(
-        "warning",
+        "info" if sure else "warning",
         "axis.unit-guessed",
         f"no unit could be read for the {str(axis.quantity).replace('_', ' ')} axis;"
-        f" {unit(code).print} was taken",
+        f" {unit(code).print} was taken"
+        + (", as the other axes of the page have it" if sure and code != "%" else ""),
         Location(panel=panel.name, axis=axis.name),
         f'give unit = "{unit(code).print}" (or the right one) for this axis in the notes',
     )

@@ -95,10 +95,12 @@ def settle(
     settings = settings or Settings()
     known = [v for v in values if v is not None]
     step = series_step(known)
-    if len(known) < 3 or not rows:
+    if len(known) < 2 or not rows:
         return list(values)
-    low, high = min(known), max(known)
-    series = [] if step is None else [k * step for k in range(1, int(1 / step)) if k * step < 0.96]
+    low, high = min(k for k in known if k > 0.5 * max(known)), max(known)
+    usual = step or 0.05
+    series = [k * usual for k in range(1, int(0.96 / usual) + 1)]
+    series = [s for s in series if low - 2 * usual <= s <= high + 2 * usual]
     options: list[dict[float | None, float]] = []
     for value, text in zip(values, texts, strict=True):
         costs: dict[float | None, float] = {None: settings.unknown}
@@ -106,14 +108,14 @@ def settle(
             level = round(level, 6)
             if text and _misread(text, level):
                 costs[level] = settings.misread
-            elif not text and low <= level <= high:
+            elif not text and step is not None and low <= level <= high:
                 costs[level] = settings.silent
         if value is not None:
             off = step is not None and not _on(value, step)
             outer = off and value < high - 1.5 * (step or 0)  # extra levels stand about the peak
             costs[value] = settings.outer if outer else settings.off_series * off
             others = [abs(value - k) for k in known if abs(value - k) > 1e-9]
-            if step is not None and others and min(others) > 2.5 * step:
+            if others and min(others) > max(2.5 * usual, 0.12):
                 costs[value] = settings.apart
         options.append(costs)
     chosen = list(values)
