@@ -77,7 +77,8 @@ def scales(
     axes = [_axis(evidence, f) for f in found]
     used = {id(lb.word) for f in found for lb in f.progression.labels if lb.word is not None}
     rest = [s for s in all_spots if id(s.word) not in used]
-    axes, titles, said = name_axes(axes, [f.column for f in found], rest, evidence.warp.size)
+    again = None if evidence.read is None else lambda boxes: _lines(evidence, boxes)
+    axes, _, said = name_axes(axes, [f.column for f in found], rest, evidence.warp.size, again)
     findings += said
     axes, said = given_axes(evidence, panel_name, notes, axes)
     findings += said
@@ -88,6 +89,13 @@ def scales(
     words = tuple(s.word for s in rest)
     kept = [f for f in findings if f.where.axis is None or not _given(f.where.axis, axes)]
     return tuple(axes), words, tuple(kept)
+
+
+def _lines(evidence: Evidence, boxes: Sequence[Array]) -> list[str]:
+    """The text in boxes given in panel px."""
+    if evidence.read is None:
+        return [""] * len(boxes)
+    return [t if score > 0.5 else "" for t, score in evidence.read([evidence.warp.to_page(b) for b in boxes])]
 
 
 def _given(name: str, axes: Sequence[Axis]) -> bool:

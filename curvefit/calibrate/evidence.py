@@ -47,7 +47,7 @@ class Evidence:
     turn : quarter turns clockwise that set the page upright (0–3).
     words : the words in and near the box, page px, tick numbers among them.
     look : reads the numbers afresh where they should stand: boxes (4, 2) page px → (text, score)
-        each; None where there are no pixels to look at.
+        each; None where there are no pixels to look at. read : the same for text of any kind.
     exact : True for a vector page.
     """
 
@@ -59,3 +59,4 @@ class Evidence:
     look: Callable[[Sequence[Array]], list[tuple[str, float]]] | None = None
     exact: bool = False
     findings: tuple[Finding, ...] = ()
+    read: Callable[[Sequence[Array]], list[tuple[str, float]]] | None = None

@@ -2,15 +2,20 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 
-from curvefit.calibrate.rows import Column, Spot
+import numpy as np
+from numpy.typing import NDArray
+
+from curvefit.calibrate.rows import Column, Spot, outward
 from curvefit.calibrate.titles import Title, read_title
 from curvefit.errors import Location
 from curvefit.records import Axis, Finding, Word
 
 __all__ = ["name_axes"]
+
+Array = NDArray[np.float64]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -29,6 +34,7 @@ def name_axes(
     columns: Sequence[Column],
     text: Sequence[Spot],
     size: tuple[float, float],
+    read: Callable[[Sequence[Array]], list[str]] | None = None,
 ) -> tuple[list[Axis], set[int], list[Finding]]:
     """The axes with quantity and unit from the titles about the box.
 
@@ -37,6 +43,20 @@ def name_axes(
     axes, ids of the words that are titles, findings
     """
     candidates = [c for c in _candidates(text) if c.title.strength]
+    chosen, used = _matched(axes, columns, candidates, size)
+    named = [_named(axis, chosen.get(i), columns[i]) for i, axis in enumerate(axes)]
+    if read is not None:
+        named = _read_again(named, columns, text, size, read)
+    return named, used, []
+
+
+def _matched(
+    axes: Sequence[Axis],
+    columns: Sequence[Column],
+    candidates: Sequence[Candidate],
+    size: tuple[float, float],
+) -> tuple[dict[int, Candidate], set[int]]:
+    """To each axis the title that stands nearest; each word serves once."""
     offers = [
         (_cost(axis, column, c, size), i, k)
         for i, (axis, column) in enumerate(zip(axes, columns, strict=True))
@@ -50,8 +70,61 @@ def name_axes(
             continue
         chosen[i] = c
         used |= {id(w) for w in c.words}
-    named = [_named(axis, chosen.get(i), columns[i]) for i, axis in enumerate(axes)]
-    return named, used, []
+    return chosen, used
+
+
+def _read_again(
+    axes: list[Axis],
+    columns: Sequence[Column],
+    text: Sequence[Spot],
+    size: tuple[float, float],
+    read: Callable[[Sequence[Array]], list[str]],
+) -> list[Axis]:
+    """Axes whose title says too little, after the whole line that it stands in is read afresh."""
+    out = list(axes)
+    jobs: list[tuple[int, Spot, Array]] = []
+    for i, (axis, column) in enumerate(zip(axes, columns, strict=True)):
+        if axis.quantity is not None and axis.unit is not None:
+            continue
+        for spot in _beyond(column, text, size)[:2]:
+            jobs.append((i, spot, _whole_line(spot, column.side, size)))
+    texts = read([box for _, _, box in jobs]) if jobs else []
+    for (i, spot, _), line in zip(jobs, texts, strict=True):
+        title = read_title(line)
+        before = 2 * (out[i].unit is not None) + (out[i].quantity is not None)
+        if title.strength > before and _suits(out[i], title):
+            c = Candidate(title, spot.bounds, spot.quarter, spot.height, (spot.word,))
+            out[i] = _named(out[i], c, columns[i])
+    return out
+
+
+def _beyond(column: Column, text: Sequence[Spot], size: tuple[float, float]) -> list[Spot]:
+    """Words outside the numbers of a side, the nearest first, longer ones before crumbs."""
+    found = []
+    flat = column.side in ("bottom", "top")
+    for s in text:
+        near, far = outward(s, column.side, size)
+        x, y = s.middle
+        along = x / size[0] if flat else 1 - y / size[1]
+        if near > column.far - 0.4 * column.height and -0.05 < along < 1.05:
+            if near - column.far < 5 * column.height and any(c.isalpha() for c in s.word.text):
+                short = len(s.word.text) < 2
+                found.append((near + 2 * column.height * short, far, id(s), s))
+    return [f[3] for f in sorted(found)]
+
+
+def _whole_line(spot: Spot, side: str, size: tuple[float, float]) -> Array:
+    """Panel px box (4, 2) of the line that a word stands in, from its own top left."""
+    x0, y0, x1, y1 = spot.bounds
+    reach = 14 * spot.height
+    if side in ("bottom", "top"):
+        m = 0.25 * (y1 - y0)
+        x0, x1 = max(x0 - reach, -0.02 * size[0]), min(x1 + reach, 1.02 * size[0])
+        return np.array([[x0, y0 - m], [x1, y0 - m], [x1, y1 + m], [x0, y1 + m]])
+    m = 0.25 * (x1 - x0)
+    y0, y1 = max(y0 - reach, -0.02 * size[1]), min(y1 + reach, 1.02 * size[1])
+    box = np.array([[x0 - m, y1], [x0 - m, y0], [x1 + m, y0], [x1 + m, y1]])
+    return np.roll(box, -2, axis=0) if spot.quarter == 3 else box
 
 
 def _candidates(text: Sequence[Spot]) -> list[Candidate]:

@@ -18,6 +18,7 @@ from curvefit.calibrate.upright import quarter_turns
 from curvefit.calibrate.words import Lettering, find_text, read_lines
 from curvefit.geometry import project
 from curvefit.notes import PageNotes, PanelNotes
+from curvefit.ocr import NUMERIC
 from curvefit.records import Page, Word
 
 __all__ = ["gather"]
@@ -108,7 +109,8 @@ def _upright_order(plots: list[Plot], turn: int) -> list[Plot]:
 def _evidence(sheet: Sheet, plot: Plot, turn: int, words: tuple[Word, ...]) -> Evidence:
     corners = np.roll(plot.corners, turn, axis=0)
     rows = tuple(_turned(row, turn) for row in plot.ticks)
-    return Evidence(corners, warp_of(corners), turn, rows, words, _look(sheet))
+    look, read = _reader(sheet, NUMERIC), _reader(sheet, None)
+    return Evidence(corners, warp_of(corners), turn, rows, words, look, read=read)
 
 
 def _turned(row: TickRow, turn: int) -> TickRow:
@@ -122,14 +124,16 @@ def _turned(row: TickRow, turn: int) -> TickRow:
     return replace(row, side=side, at=at[order], u=row.u[order], weight=row.weight[order])
 
 
-def _look(sheet: Sheet) -> Callable[[Sequence[Array]], list[tuple[str, float]]]:
-    def look(boxes: Sequence[Array]) -> list[tuple[str, float]]:
-        """Reads the numbers in boxes (4, 2), page px, clockwise from the text's top left."""
-        from curvefit.ocr import NUMERIC, recognise
+def _reader(
+    sheet: Sheet, alphabet: str | None
+) -> Callable[[Sequence[Array]], list[tuple[str, float]]]:
+    def read(boxes: Sequence[Array]) -> list[tuple[str, float]]:
+        """Reads the text in boxes (4, 2), page px, clockwise from the text's top left."""
+        from curvefit.ocr import recognise
 
-        return recognise([_cut(sheet.ink, np.asarray(b, float)) for b in boxes], NUMERIC)
+        return recognise([_cut(sheet.ink, np.asarray(b, float)) for b in boxes], alphabet)
 
-    return look
+    return read
 
 
 def _cut(ink: Image, box: Array) -> Image:

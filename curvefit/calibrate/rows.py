@@ -14,7 +14,7 @@ from curvefit.geometry import Warp
 from curvefit.records import Word
 from curvefit.records.base import Side
 
-__all__ = ["SIDES", "Column", "Spot", "columns", "spots"]
+__all__ = ["SIDES", "Column", "Spot", "columns", "outward", "spots"]
 
 Array = NDArray[np.float64]
 SIDES: tuple[Side, ...] = ("bottom", "left", "right", "top")
@@ -91,7 +91,7 @@ def columns(all_spots: Sequence[Spot], size: tuple[float, float]) -> list[Column
     return out
 
 
-def _outward(s: Spot, side: Side, size: tuple[float, float]) -> tuple[float, float]:
+def outward(s: Spot, side: Side, size: tuple[float, float]) -> tuple[float, float]:
     """The word's edges as distances outside the side."""
     x0, y0, x1, y1 = s.bounds
     w, h = size
@@ -108,7 +108,7 @@ def _along(s: Spot, side: Side, size: tuple[float, float]) -> float:
 
 
 def _beside(s: Spot, side: Side, size: tuple[float, float], height: float) -> bool:
-    near, _ = _outward(s, side, size)
+    near, _ = outward(s, side, size)
     length = size[0] if side in ("bottom", "top") else size[1]
     depth = size[1] if side in ("bottom", "top") else size[0]
     slack = (1.5 if side in ("bottom", "top") else 0.9) * height / length
@@ -123,7 +123,7 @@ def _groups(
 ) -> list[list[tuple[float, float, Spot]]]:
     """Words whose outward stretches overlap."""
     stretches = sorted(
-        ((*_outward(s, side, size), s) for s in beside), key=lambda x: (x[0] + x[1], x[0])
+        ((*outward(s, side, size), s) for s in beside), key=lambda x: (x[0] + x[1], x[0])
     )
     groups: list[list[tuple[float, float, Spot]]] = []
     for near, far, s in sorted(stretches, key=lambda x: x[0]):

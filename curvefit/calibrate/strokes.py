@@ -122,7 +122,7 @@ def _read_from_pixels(
         "the page's lettering is drawn as shapes: its words were read from their picture.",
     )
     exact = _exact(lettered, turned, panel_notes, s)
-    return tuple(replace(e, look=seen[0].look, findings=(said,)) for e in exact)
+    return tuple(replace(e, look=seen[0].look, read=seen[0].read, findings=(said,)) for e in exact)
 
 
 def _others(words: tuple[Word, ...], known: tuple[Word, ...]) -> tuple[Word, ...]:

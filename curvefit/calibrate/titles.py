@@ -314,7 +314,7 @@ def _splits(body: str) -> list[tuple[str, str]]:
     for match in re.finditer(r"[\[\(\{<|]\s*([^\[\]\(\)\{\}]{1,22}?)\s*(?:[\]\)\}>|1l]|$)", body):
         out.append((body[: match.start()] + " " + body[match.end() :], match[1]))
         out.append((body[: match.start()], body[match.start() + 1 :].rstrip(")]}")))
-    for mark in (" in ", " en ", ",", " - ", " – ", "—", "/", ":", ";", "=", "."):
+    for mark in (" in ", " en ", ",", " - ", "- ", " – ", "—", "-", "/", ":", ";", "=", "."):
         k = body.rfind(mark) if mark != "/" else body.find(mark)
         if k > 0:
             out.append((body[:k], body[k + len(mark) :]))
