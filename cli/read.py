@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
@@ -89,7 +89,7 @@ def read_to(
         If nothing could be read; what there is was written before.
     """
     from curvefit.errors import ChartError
-    from curvefit.pipeline import STAGES, read_document
+    from curvefit.pipeline import STAGES, read_document, with_stems
     from curvefit.write import write
 
     folder = out if out is not None else chart.with_name(f"{chart.name}.curvefit")
@@ -101,7 +101,7 @@ def read_to(
     try:
         with Stages(len(STAGES) + 1, quiet, chart.name) as progress:
             readings = read_document(chart, notes_of, page=page, progress=progress)
-            for reading, stem in _named(readings, chart.stem, page):
+            for reading, stem in with_stems(readings, chart.stem, page):
                 reading, code = _judged(reading, strict)
                 progress("write")
                 paths = write(reading, folder, stem, units=units, points=points, inputs=[chart])
@@ -115,46 +115,17 @@ def read_to(
     return worst
 
 
-def _named(
-    readings: Iterator[Reading], stem: str, page: int | None
-) -> Iterator[tuple[Reading, str]]:
-    """Readings with the stem of their files: STEM.pN where a document has several charts pages."""
-    from curvefit.errors import ChartError
-
-    held: Reading | None = None
-    several, failed = False, None
-    try:
-        for reading in readings:
-            if held is not None:
-                several = True
-                yield held, f"{stem}.p{held.page.number}"
-            held = reading
-    except ChartError as error:  # what was read before is not lost
-        failed = error
-    if held is not None:
-        several = several or (page is not None and held.page.pages > 1)
-        yield held, f"{stem}.p{held.page.number}" if several else stem
-    if failed is not None:
-        raise failed
-
-
 def _notes(
     page: Page, chart: Path, folder: Path, named: Path | None, chosen: bool, quiet: bool
 ) -> Notes:
     """The notes for a page: those of --notes, and those given in the output folder before."""
     import sys
 
-    from curvefit.notes import merge, read_notes
+    from curvefit.notes import standing_notes
 
-    notes = read_notes(named, page, named=chosen)
-    for name in (f"{chart.stem}.p{page.number}.notes.toml", f"{chart.stem}.notes.toml"):
-        standing = folder / name
-        if not standing.is_file() or (named is not None and standing.samefile(named)):
-            continue
-        earlier = read_notes(standing, page, named=chosen)
-        if earlier.given:
-            say(f"What {standing} gives is used.", quiet, sys.stderr)
-            notes = merge(notes, earlier)
+    notes, used = standing_notes(page, folder, chart.stem, named, chosen=chosen)
+    for path in used:
+        say(f"What {path} gives is used.", quiet, sys.stderr)
     return notes
 
 

@@ -229,21 +229,17 @@ def _read_one(job: Job) -> Outcome:
     """Reads one input and writes its files; the function that workers run."""
     import time
 
-    from curvefit.notes import read_notes
-    from curvefit.pipeline import read_document
+    from curvefit.notes import standing_notes
+    from curvefit.pipeline import read_document, with_stems
     from curvefit.write import write
 
     start = time.perf_counter()
     folder, stem = Path(job.folder), Path(job.path).stem
     pages: list[dict[str, Any]] = []
     try:
-
-        def notes_of(page: Any) -> Any:
-            own = folder / f"{_stem(stem, page)}.notes.toml"
-            return read_notes(own if own.is_file() else None, page)
-
-        for reading in read_document(job.path, notes_of):
-            files = write(reading, folder, _stem(stem, reading.page), **job.options)
+        readings = read_document(job.path, lambda p: standing_notes(p, folder, stem)[0])
+        for reading, name in with_stems(readings, stem, None):
+            files = write(reading, folder, name, inputs=[job.path], **job.options)
             pages.append(_row(reading, [f.name for f in files]))
         state, error = "done", ""
     except ChartError as caught:
@@ -252,10 +248,6 @@ def _read_one(job: Job) -> Outcome:
         state, error = "failed", f"a defect in curvefit: {caught!r}"
     seconds = time.perf_counter() - start
     return Outcome(job.relative, state, job_key(job), tuple(pages), error, round(seconds, 2))
-
-
-def _stem(stem: str, page: Any) -> str:
-    return stem if page.pages == 1 else f"{stem}.p{page.number}"
 
 
 def _row(reading: Any, files: list[str]) -> dict[str, Any]:

@@ -17,7 +17,7 @@ from curvefit.errors import ChartError, NoChart
 from curvefit.notes import CurveNotes, Notes
 from curvefit.records import Curve, Finding, Fit, Page, Panel, Pump, Reading, Trace
 
-__all__ = ["STAGES", "read_chart", "read_document"]
+__all__ = ["STAGES", "read_chart", "read_document", "with_stems"]
 
 STAGES = ("load", "calibrate", "trace", "identify", "fit", "check")
 Progress = Callable[[str], None]
@@ -90,6 +90,30 @@ def read_document(
         yield replace(reading, seconds=seconds | reading.seconds)
     if missing is not None and not found:
         raise missing
+
+
+def with_stems(
+    readings: Iterator[Reading], stem: str, page: int | None
+) -> Iterator[tuple[Reading, str]]:
+    """Readings with the stem of their files: STEM.pN where a document has several chart pages.
+
+    What was read before an error is given before the error is raised.
+    """
+    held: Reading | None = None
+    several, failed = False, None
+    try:
+        for reading in readings:
+            if held is not None:
+                several = True
+                yield held, f"{stem}.p{held.page.number}"
+            held = reading
+    except ChartError as error:  # what was read before is not lost
+        failed = error
+    if held is not None:
+        several = several or (page is not None and held.page.pages > 1)
+        yield held, f"{stem}.p{held.page.number}" if several else stem
+    if failed is not None:
+        raise failed
 
 
 def read_page(

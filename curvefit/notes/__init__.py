@@ -11,6 +11,7 @@ from curvefit.notes.given import (
 )
 from curvefit.notes.merge import merge, merge_given
 from curvefit.notes.reader import given_entries, notes_from, read_notes
+from curvefit.notes.standing import standing_notes
 
 __all__ = [
     "AxisNotes",
@@ -25,4 +26,5 @@ __all__ = [
     "merge_given",
     "notes_from",
     "read_notes",
+    "standing_notes",
 ]
