@@ -5,6 +5,7 @@ from __future__ import annotations
 import sys
 
 import typer
+from curvefit_cli.batch import batch
 from curvefit_cli.demo import demo
 from curvefit_cli.duty import duty
 from curvefit_cli.fit import fit
@@ -45,6 +46,7 @@ app.command()(read)
 app.command()(fit)
 app.command()(duty)
 app.command()(write)
+app.command()(batch)
 app.command()(demo)
 
 

@@ -50,13 +50,16 @@ class Outcome:
     seconds: float = 0.0
 
 
-def find_charts(inputs: Iterable[str | Path], out: Path) -> list[Job]:
+def find_charts(
+    inputs: Iterable[str | Path], out: Path, options: dict[str, Any] | None = None
+) -> list[Job]:
     """The jobs for files and folders (searched with all their subfolders), sorted.
 
     Parameters
     ----------
     inputs : files and folders
     out : the folder for all results; inputs inside it are passed over
+    options : of the writer: "units", "points"
 
     Raises
     ------
@@ -93,7 +96,7 @@ def find_charts(inputs: Iterable[str | Path], out: Path) -> list[Job]:
         while name.casefold() in taken:
             name, number = f"{relative.as_posix()}.{number}", number + 1
         taken.add(name.casefold())
-        jobs.append(Job(str(path), str(out / name), name))
+        jobs.append(Job(str(path), str(out / name), name, dict(options or {})))
     return jobs
 
 
@@ -240,7 +243,8 @@ def _read_one(job: Job) -> Outcome:
         readings = read_document(job.path, lambda p: standing_notes(p, folder, stem)[0])
         for reading, name in with_stems(readings, stem, None):
             files = write(reading, folder, name, inputs=[job.path], **job.options)
-            pages.append(_row(reading, [f.name for f in files]))
+            thumbnail = _thumbnail(files, name)
+            pages.append(_row(reading, [f.name for f in files], thumbnail))
         state, error = "done", ""
     except ChartError as caught:
         state, error = "failed", str(caught)
@@ -250,7 +254,25 @@ def _read_one(job: Job) -> Outcome:
     return Outcome(job.relative, state, job_key(job), tuple(pages), error, round(seconds, 2))
 
 
-def _row(reading: Any, files: list[str]) -> dict[str, Any]:
+def _thumbnail(files: Sequence[Path], name: str) -> str:
+    """The overlay as a small JPEG in a data address, for the index; "" where there is none."""
+    import base64
+    import io
+
+    from PIL import Image
+
+    overlay = next((f for f in files if f.name == f"{name}.overlay.png"), None)
+    if overlay is None:
+        return ""
+    with Image.open(overlay) as picture:
+        small = picture.convert("RGB")
+        small.thumbnail((320, 240))
+    out = io.BytesIO()
+    small.save(out, "JPEG", quality=70)
+    return "data:image/jpeg;base64," + base64.b64encode(out.getvalue()).decode()
+
+
+def _row(reading: Any, files: list[str], thumbnail: str) -> dict[str, Any]:
     counts = {
         level: sum(f.severity == level for f in reading.findings)
         for level in ("error", "warning", "info")
@@ -263,4 +285,5 @@ def _row(reading: Any, files: list[str]) -> dict[str, Any]:
         "findings": counts,
         "worst": next((f"{f.code}: {f.message}" for f in reading.findings), ""),
         "files": files,
+        "thumbnail": thumbnail,
     }
