@@ -219,6 +219,8 @@ def _grid(side: Side, box: NDArray[np.float32], margin: int, length: float) -> l
 def _kept(
     side: Side, kind: str, at: Array, weight: Array, width: Array, length: float, offset: float
 ) -> list[TickRow]:
+    if side in ("left", "right"):  # seen from below: the image ends at a whole pixel, the box not
+        at = at - (round(length) - length)
     inside = (at > -3) & (at < length + 3)
     at, weight, width = at[inside], weight[inside], width[inside]
     if len(at) < 2:
