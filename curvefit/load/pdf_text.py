@@ -12,10 +12,11 @@ __all__ = ["FIELDS", "Text"]
 
 #: what is said of each character: code point; origin, direction of writing × em, box of its ink,
 #: size of the upright box around its advance and line height [pt]; number of its text object;
-#: 1 where the font tells its letters, 0 where they follow from the customary code
+#: 1 where the font tells its letters, 0 where they follow from the customary code; how far its
+#: text object begins before it [pt]
 FIELDS = (
     *("code", "x", "y", "across", "up", "left", "right", "bottom", "top"),
-    *("wide", "high", "piece", "sure"),
+    *("wide", "high", "piece", "sure", "before"),
 )
 # codes of the ligatures in the TeX text encodings OT1 and T1, where a font has no map of its own
 UNMAPPED = {first + k: 0xFB00 + k for first in (11, 27) for k in range(5)}
@@ -32,6 +33,7 @@ class Text:
         import pypdfium2.raw as raw
 
         self._values = array("d")
+        self._piece: float | None = None
         text = raw.FPDFText_LoadPage(page.raw)
         if text:
             number = max(raw.FPDFText_CountChars(text), 0)
@@ -82,6 +84,27 @@ class Text:
             code = UNKNOWN
         direction = m.a * size, m.b * size
         piece_number = float(at % (1 << 50))
-        self._values.extend(
-            (code, x.value, y.value, *direction, *edges, *advance, piece_number, sure)
-        )
+        before = 0.0
+        if piece_number != self._piece and piece:
+            before = _before(piece, x.value, y.value, direction)
+        self._piece = piece_number
+        self._values.extend((code, x.value, y.value, *direction, *edges, *advance))
+        self._values.extend((piece_number, sure, before))
+
+
+def _before(piece: Any, x: float, y: float, direction: tuple[float, float]) -> float:
+    """How far before its first letter a text object begins [pt]; 0 where that is not known."""
+    import pypdfium2.raw as raw
+
+    edges = [ctypes.c_float() for _ in range(4)]
+    if not raw.FPDFPageObj_GetBounds(piece, *edges):
+        return 0.0
+    left, bottom, right, top = (e.value for e in edges)
+    em = max(abs(direction[0]), abs(direction[1]))
+    if not (left - em < x < right + em and bottom - em < y < top + em):
+        return 0.0  # it lies in a form, and its bounds in the form's own space
+    if abs(direction[1]) < 0.02 * em:
+        return x - left if direction[0] > 0 else right - x
+    if abs(direction[0]) < 0.02 * em:
+        return y - bottom if direction[1] > 0 else top - y
+    return 0.0

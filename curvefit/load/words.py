@@ -36,6 +36,7 @@ class _Line:
         self.text = [chr(int(c)) for c in rows[:, 0]]
         self.u, self.v = place.T
         self.em, self.piece, self.sure = em, rows[:, 11], rows[:, 12] > 0
+        self.before = rows[:, 13] / np.hypot(*rows[:, 3:5].T) * em
         self.end, self.low, self.high, self.start = extent.T
 
 
@@ -46,10 +47,11 @@ def words_of(data: bytes, to_page: Array) -> tuple[tuple[Word, ...], tuple[Findi
     ----------
     data : rows of float64, a character each: code point; x, y of its origin, its direction of
         writing × em, left, right, bottom, top of its ink, width and height of the upright box of
-        its advance, number of its text object, 1 where the font tells its letters; page points
+        its advance, number of its text object, 1 where the font tells its letters,
+        how far before it its text object begins; page points
     to_page : array of shape (3, 3), page points → page px
     """
-    rows = np.frombuffer(data, float).reshape(-1, 13)
+    rows = np.frombuffer(data, float).reshape(-1, 14)
     rows = rows[np.hypot(rows[:, 3], rows[:, 4]) > 0.5]
     if not len(rows):
         return (), ()
@@ -77,8 +79,8 @@ def _said(unknown: int, known: int) -> tuple[Finding, ...]:
         Finding(
             "info",
             "page.text-codes",
-            f"{unknown} of {unknown + known} texts of the PDF use a font that does not tell its "
-            "letters; they are read from their picture or not at all.",
+            f"{unknown} of {unknown + known} texts of the PDF hold letters that the file does not "
+            "tell; they are read from their picture or not at all.",
         ),
     )
 
@@ -215,9 +217,14 @@ def _with_raised(line: _Line, groups: list[list[int]]) -> list[list[int]]:
 def _text(line: _Line, group: list[int]) -> str:
     em = max(line.em[i] for i in group)
     base = float(np.median([line.v[i] for i in group if line.em[i] > SMALL * em]))
-    text, end = "", None
+    text = ""
+    end: float | None = None
     for i in group:
         letter = line.text[i]
+        if end is not None and _missing(line, group, i, text, line.u[i] - end):
+            text, end = text + _lost(line, group, i, end), None
+        elif letter.isdigit() and line.before[i] > 0.42 * line.em[i]:
+            text += _lost(line, group, i, line.u[i] - line.before[i])
         if line.em[i] < SMALL * em and line.v[i] - base > 0.15 * em:
             letter = letter.translate(RAISED)
         wide = end is not None and line.u[i] - end > BLANK * line.em[i]
@@ -227,6 +234,31 @@ def _text(line: _Line, group: list[int]) -> str:
         elif text and not text.endswith(" "):
             text += " "
     return "".join(c for c in text if c not in NOTHING).translate(LIGATURES).strip()
+
+
+def _missing(line: _Line, group: list[int], i: int, text: str, gap: float) -> bool:
+    """Whether a letter has gone lost before a digit: a reader drops one printed over its like.
+
+    The place of a letter is empty, in one text object, and no blank stands there.
+    """
+    k = group.index(i)
+    return (
+        line.text[i].isdigit()
+        and not text[-1:].isspace()
+        and k > 0
+        and line.piece[group[k - 1]] == line.piece[i]
+        and 0.42 * line.em[i] < gap < 0.8 * line.em[i]
+    )
+
+
+def _lost(line: _Line, group: list[int], i: int, place: float) -> str:
+    """The letter of another text that stands where one is missing; unknown if none or several."""
+    em = line.em[i]
+    there = (np.abs(line.u - place) < 0.08 * em) & (np.abs(line.v - line.v[i]) < BASELINE * em)
+    there &= np.abs(line.em / em - 1) < 0.06
+    there[group] = False
+    letters = {line.text[k] for k in np.nonzero(there)[0]}
+    return letters.pop() if len(letters) == 1 else UNKNOWN
 
 
 def _box(line: _Line, group: list[int]) -> Array:

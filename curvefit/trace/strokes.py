@@ -28,7 +28,8 @@ class Settings:
 
     shortest : share, the shortest curve. leader : share of the diagonal up to which a straight
     line is a pointer. straight, exact : px off its chord, of few points or of many.
-    hatch : so many parallel straight lines are a hatching. ruled : share of a closed outline along the edges that makes it a frame.
+    hatch : so many parallel straight lines are a hatching.
+    ruled : share of a closed outline along the edges that makes it a frame.
     pale : lightness from which a stroke is a halo. edge : px that a line on the frame may lie out.
     many_fills : with more filled shapes than this in the box, only long ones are looked at.
     """

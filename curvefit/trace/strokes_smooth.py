@@ -35,9 +35,9 @@ def smooth(xy: Array, bridged: NDArray[np.bool_]) -> tuple[Array, Array, NDArray
     sigma holds the scatter of the drawn points about the smooth line (rounding, points left out
     by the program) and a third of the distance between chord and cubic between them.
     """
-    step = np.hypot(*np.diff(xy, axis=0).T)
-    keep = np.r_[True, step > 1e-6]
-    xy, bridged = xy[keep], bridged[keep]
+    keep = _apart(xy)
+    bridged = np.bitwise_or.reduceat(bridged, keep)  # an empty stretch stays one
+    xy = xy[keep]
     s = arc_length(xy)
     breaks = _corners(xy, bridged)
     points, sigmas, gaps = [], [], []
@@ -50,6 +50,20 @@ def smooth(xy: Array, bridged: NDArray[np.bool_]) -> tuple[Array, Array, NDArray
         gaps.append(g[begin:])
     spacing = float(np.median(np.diff(s)))
     return np.concatenate(points), np.concatenate(sigmas), np.concatenate(gaps), spacing
+
+
+def _apart(xy: Array) -> NDArray[np.intp]:
+    """Indices of points that do not crowd: rounding would bend a cubic between such neighbours."""
+    s = arc_length(xy)
+    step = np.diff(s)
+    least = min(1.0, 0.3 * float(np.median(step[step > 1e-6], axis=0))) if s[-1] > 0 else 0.0
+    keep = [0]
+    for i in range(1, len(s) - 1):
+        if s[i] - s[keep[-1]] > least:
+            keep.append(i)
+    if len(keep) > 1 and s[-1] - s[keep[-1]] <= least:
+        keep.pop()
+    return np.array([*keep, len(s) - 1], np.intp)
 
 
 def _corners(xy: Array, bridged: NDArray[np.bool_]) -> list[int]:

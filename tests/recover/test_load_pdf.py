@@ -363,3 +363,15 @@ def test_lettering_drawn_as_shapes_is_filled_strokes_and_no_words(tmp_path):
     got = read(tmp_path, page(glyph + "1 w 50 50 m 90 70 l S"))
     assert [s.fill for s in got.strokes] == [True, False]
     assert got.words == ()
+
+
+def test_labels_printed_over_each_other_keep_their_digits(tmp_path):
+    """The PDF reader drops a letter that lies on its like in another text: it is put back."""
+    text = " ".join(
+        f"BT /F1 10 Tf {20 + 5.56 * 0.97 * k:.2f} {50 + 0.6 * k:.2f} Td ({label}) Tj ET"
+        for k, label in enumerate(("227", "245", "264"))
+    )
+    got = read(tmp_path, page(text + " BT /F1 10 Tf 20 120 Td (n = 2 900) Tj ET"))
+    texts = sorted(w.text for w in got.words)
+    assert texts == ["227", "245", "264", "n = 2 900"]
+    assert got.findings == ()
