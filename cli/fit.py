@@ -207,6 +207,7 @@ def _family_fits(
     from curvefit.errors import ChartError, InputError
     from curvefit.fit import fit as fit_all
     from curvefit.fit.family import NOMINAL, fit_family
+    from curvefit.fit.hill import efficiency_between
     from curvefit.fit.npsh import npsh_between
 
     if len({c.pump for c in curves}) > 1:
@@ -228,8 +229,10 @@ def _family_fits(
             continue
         families.append(family)
         fits.append(family.at(diameter, speed, choice))
-    hills = [f for f in fit_all(curves, choice, pumps=opened.pumps) if f.family == "affinity"]
-    fits += [f for f in hills if diameter is None or _near(f, diameter)]
+    if not any(c.quantity == "efficiency" for c in curves) and fits:
+        asked = diameter or families[0].reference.get("diameter")
+        hill = efficiency_between(curves, asked, choice) if asked and speed is None else None
+        fits += [hill] if hill is not None else []
     npsh = [c for c in curves if c.quantity == "npsh_required" and c.sigma_si is not None]
     if npsh and fits:
         fits.append(npsh_between(fit_all(npsh, choice), diameter, speed, choice))
@@ -239,11 +242,6 @@ def _family_fits(
             remedy=listing(curves),
         )
     return tuple(fits), tuple(families)
-
-
-def _near(fit: Fit, diameter: float) -> bool:
-    own = fit.curve.diameter_si
-    return own is not None and math.isclose(own, diameter, rel_tol=1e-3)
 
 
 # --- what is told -----------------------------------------------------------------------------

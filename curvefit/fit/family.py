@@ -18,7 +18,7 @@ from curvefit.fit.said import finding, where
 from curvefit.fit.traced import line_uncertainty, thinned
 from curvefit.records import QUANTITIES, Band, Curve, Finding, Fit
 
-__all__ = ["NOMINAL", "Family", "LeftOut", "fit_family", "member_key"]
+__all__ = ["NOMINAL", "Family", "LeftOut", "beyond", "fit_family", "member_key"]
 
 Array = NDArray[np.float64]
 
@@ -191,20 +191,8 @@ class Family:
         for c, name in enumerate(self.reference):
             low, high = drawn[:, c].min(), drawn[:, c].max()
             if logs[c] < low - SAME or logs[c] > high + SAME:
-                shown = _shown(name, self.reference[name] * np.exp(logs[c]))
-                span = " to ".join(
-                    _shown(name, self.reference[name] * np.exp(x)) for x in (low, high)
-                )
-                said.append(
-                    finding(
-                        "warning",
-                        "family.beyond-drawn",
-                        self.curves[0],
-                        f"The {name} {shown} lies beyond those drawn, {span}: the law is carried "
-                        "on, and nothing on the chart confirms it.",
-                        f"Choose a {name} inside the drawn range.",
-                    )
-                )
+                values = (self.reference[name] * np.exp(x) for x in (logs[c], low, high))
+                said.append(beyond(self.curves[0], name, *map(float, values)))
         a = self.joint.exponents[0][: len(self.reference)]
         starts = np.array([line.flow[0] * np.exp(-line.logs @ a) for line in self.lines])
         ends = np.array([line.flow[-1] * np.exp(-line.logs @ a) for line in self.lines])
@@ -310,6 +298,18 @@ def fit_family(curves: Sequence[Curve], settings: Settings | None = None) -> Fam
     start = (np.array([float(r[0]) for r in nominal]), np.array([float(r[1]) for r in nominal]))
     joint = fit_joint(lines, degree, start, quantity in LINEAR)
     return Family(quantity, tuple(members), joint, lines, reference, causes, settings)
+
+
+def beyond(curve: Curve, name: str, asked: float, low: float, high: float) -> Finding:
+    """Says that a diameter or speed lies beyond those drawn."""
+    return finding(
+        "warning",
+        "family.beyond-drawn",
+        curve,
+        f"The {name} {_shown(name, asked)} lies beyond those drawn, {_shown(name, low)} to "
+        f"{_shown(name, high)}: the law is carried on, and nothing on the chart confirms it.",
+        f"Choose a {name} inside the drawn range.",
+    )
 
 
 def member_key(curve: Curve) -> tuple[float | None, float | None]:

@@ -10,13 +10,13 @@ from numpy.typing import NDArray
 
 from curvefit.fit.bands import spread
 from curvefit.fit.choice import Choice, Settings
-from curvefit.fit.family import SAME, member_key
+from curvefit.fit.family import SAME, beyond, member_key
 from curvefit.fit.joint import TAUS, Joint, Line, centre, coefficients_at, fit_joint, predict
 from curvefit.fit.quantiles import normal_two_sided
 from curvefit.fit.said import finding
-from curvefit.records import BUNDLED, Band, Curve, Fit
+from curvefit.records import BUNDLED, Band, Curve, Finding, Fit
 
-__all__ = ["Crossing", "crossings", "efficiency_on_heads"]
+__all__ = ["Crossing", "crossings", "efficiency_between", "efficiency_on_heads"]
 
 Array = NDArray[np.float64]
 
@@ -62,16 +62,92 @@ def efficiency_on_heads(
     alike; along the head curve they move the flow of a crossing, and the band holds that.
     """
     choice, settings = choice or Choice(), settings or Settings()
+    used, model = _modelled(curves)
+    if model is None:
+        return ()
+    fits = [_efficiency(h, x, model, i, choice, settings) for i, (h, x) in enumerate(used)]
+    count = sum(len(x) for _, x in used)
+    said = finding(
+        "info",
+        "fit.efficiency-from-lines",
+        fits[0].curve,
+        f"The efficiencies of {len(fits)} head curves come from their {count} crossings with lines "
+        "of equal efficiency and one law for all; between and beyond the crossings they are as "
+        "good as that law.",
+    )
+    fits[0] = replace(fits[0], findings=(said,))
+    return tuple(fits)
+
+
+def efficiency_between(
+    curves: Sequence[Curve],
+    diameter_si: float,
+    choice: Choice | None = None,
+    settings: Settings | None = None,
+) -> Fit | None:
+    """The efficiency at a diameter that is not drawn, from lines of equal efficiency.
+
+    None where the lines give no efficiency, or the heads are told apart by speed. The fit's curves
+    are those of :func:`efficiency_on_heads`; at a drawn diameter it is that curve's own fit.
+    Beyond the drawn diameters it carries a warning.
+    """
+    choice, settings = choice or Choice(), settings or Settings()
+    used, model = _modelled(curves)
+    drawn = np.array([h.diameter_si or np.nan for h, _ in used])
+    if model is None or np.isnan(drawn).any() or np.ptp(drawn) <= SAME * drawn.max():
+        return None
+    fits = [_efficiency(h, x, model, i, choice, settings) for i, (h, x) in enumerate(used)]
+    nearest = int(np.argmin(np.abs(drawn - diameter_si)))
+    if abs(drawn[nearest] - diameter_si) <= SAME * diameter_si:
+        return fits[nearest]
+    said: tuple[Finding, ...] = ()
+    if not drawn.min() < diameter_si < drawn.max():
+        said = (beyond(used[0][0], "diameter", diameter_si, drawn.min(), drawn.max()),)
+    order = np.argsort(drawn)
+    ends = np.array([f.flow_range_si for f in fits])[order]
+    low, high = (float(np.interp(diameter_si, drawn[order], e)) for e in ends.T)
+    grid = np.linspace(low, high, settings.grid)
+    logs = np.array([np.log(diameter_si / drawn.max())])
+    value, factors = _predicted(model, logs, grid, None)
+    calibration = _calibration(used[nearest][0], grid, value)
+    half = normal_two_sided(choice.confidence) * spread(factors, calibration)
+    return replace(
+        fits[nearest],
+        name=f"efficiency family at {diameter_si * 1e3:.4g} mm",
+        curves=tuple(f.curve for f in fits),
+        flow_range_si=(low, high),
+        band=Band(grid, value, value - half, value + half, "pointwise", choice.confidence),
+        coefficients=coefficients_at(model.joint, logs),
+        parameters={"own_deviation": model.joint.tau, "diameter": diameter_si},
+        factors=factors,
+        calibration=calibration,
+        findings=said,
+    )
+
+
+Used = list[tuple[Curve, "list[Crossing]"]]
+
+
+def _modelled(curves: Sequence[Curve]) -> tuple[Used, _Model | None]:
+    """Heads with enough crossings, and the law of efficiency through them; None without one."""
     isos = [c for c in curves if c.quantity == "iso_efficiency" and c.level_si is not None]
     heads = [c for c in curves if c.quantity == "head" and c.sigma_si is not None]
     met = [(h, crossings(h, isos)) for h in heads]
     used = [(h, x) for h, x in met if len(x) >= FEWEST]
     ratios = _ratios([h for h, _ in used])
     if not isos or len(used) < 2 or ratios is None:
-        return ()
+        return used, None
     lines = [_line(x, log) for (_, x), log in zip(used, ratios, strict=True)]
-    model = _best(lines, [x for _, x in used])
-    return tuple(_efficiency(h, x, model, i, choice, settings) for i, (h, x) in enumerate(used))
+    return used, _best(lines, [x for _, x in used])
+
+
+def _predicted(model: _Model, logs: Array, grid: Array, index: int | None) -> tuple[Array, Array]:
+    """Efficiency and its independent causes, the runner-up degree's difference among them."""
+    value, factors, _ = predict(model.joint, logs, grid, index)
+    if model.rival is not None:
+        other = centre(model.rival, logs, grid, index)
+        factors = np.concatenate([factors, (other - value)[None]])
+    return value, factors
 
 
 class Crossing(tuple[float, float, float]):
@@ -203,10 +279,7 @@ def _efficiency(
     # beyond the crossings nothing on the chart tells the efficiency, but for the origin
     high = min(high, float(line.flow.max()) + 0.1 * float(np.ptp(line.flow)))
     grid = np.linspace(low, high, settings.grid)
-    value, factors, _ = predict(joint, line.logs, grid, index)
-    if model.rival is not None:
-        other = centre(model.rival, line.logs, grid, index)
-        factors = np.concatenate([factors, (other - value)[None]])
+    value, factors = _predicted(model, line.logs, grid, index)
     calibration = _calibration(head, grid, value)
     half = normal_two_sided(choice.confidence) * spread(factors, calibration)
     residual = centre(joint, line.logs, line.flow, index) - line.value
@@ -238,13 +311,6 @@ def _efficiency(
         guessed=head.guessed,
         by=head.by,
     )
-    said = finding(
-        "info",
-        "fit.efficiency-from-lines",
-        curve,
-        f"The efficiency of {label} comes from {len(met)} crossings with lines of equal efficiency "
-        "and one law for all diameters; between and beyond them it is as good as that law.",
-    )
     return Fit(
         name,
         (curve,),
@@ -260,7 +326,6 @@ def _efficiency(
         float(np.sqrt(np.mean(residual**2))),
         float(len(met)),
         reason="one law of efficiency for all diameters, through the crossings",
-        findings=(said,),
     )
 
 

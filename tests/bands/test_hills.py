@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from curvefit.fit import fit
-from curvefit.fit.hill import crossings, efficiency_on_heads
+from curvefit.fit.hill import crossings, efficiency_between, efficiency_on_heads
 from curvefit.records import Curve
 
 DIAMETERS = np.linspace(0.17, 0.21, 5)
@@ -112,10 +112,22 @@ def test_a_hill_chart_gives_what_a_chart_with_efficiency_curves_gives():
     flow = np.linspace(0.02, 0.05, 4000)
     best = flow[np.argmax(hill.efficiency(flow, 0.21))]
     assert largest.derived["bep"]["flow_si"] == pytest.approx(best, rel=0.03)
-    assert all("fit.efficiency-from-lines" in {x.code for x in f.findings} for f in made)
+    assert [x.code for f in made for x in f.findings] == ["fit.efficiency-from-lines"]
 
 
 def test_too_few_lines_give_no_efficiency():
     _, curves = chart(np.random.default_rng(6))
     assert efficiency_on_heads(curves[:5]) == ()
     assert efficiency_on_heads(curves[:1] + curves[5:]) == ()
+
+
+def test_an_efficiency_between_the_drawn_diameters():
+    hill, curves = chart(np.random.default_rng(7))
+    one = efficiency_between(curves, 0.195)
+    true = hill.efficiency(one.band.flow_si, 0.195)
+    assert np.sqrt(np.mean((one.band.value_si - true) ** 2)) < 0.003
+    assert np.mean((one.band.low_si <= true) & (true <= one.band.high_si)) > 0.9
+    assert one.findings == ()
+    assert {f.code for f in efficiency_between(curves, 0.15).findings} == {"family.beyond-drawn"}
+    assert len(efficiency_between(curves, 0.17).curves) == 1
+    assert efficiency_between(curves[:5], 0.195) is None
