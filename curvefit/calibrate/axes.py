@@ -19,6 +19,7 @@ from curvefit.calibrate.evidence import Evidence
 from curvefit.calibrate.given import given_axes
 from curvefit.calibrate.labels import row_readings
 from curvefit.calibrate.naming import name_axes
+from curvefit.calibrate.pitch import pitch_of, too_wide
 from curvefit.calibrate.rows import Column, columns, spots
 from curvefit.calibrate.snap import Scale, snap
 from curvefit.notes import PanelNotes
@@ -84,6 +85,8 @@ def scales(
     findings += said
     for f in found:
         findings += f.doubts
+    if evidence.look is not None or not evidence.exact:
+        findings += too_wide({f.name: pitch_of(f.progression.labels) for f in found})
     order_of = {side: k for k, side in enumerate(("bottom", "top", "left", "right"))}
     axes = sorted(axes, key=lambda a: (order_of[a.side], a.name))
     words = tuple(s.word for s in rest)
@@ -95,7 +98,10 @@ def _lines(evidence: Evidence, boxes: Sequence[Array]) -> list[str]:
     """The text in boxes given in panel px."""
     if evidence.read is None:
         return [""] * len(boxes)
-    return [t if score > 0.5 else "" for t, score in evidence.read([evidence.warp.to_page(b) for b in boxes])]
+    return [
+        t if score > 0.5 else ""
+        for t, score in evidence.read([evidence.warp.to_page(b) for b in boxes])
+    ]
 
 
 def _given(name: str, axes: Sequence[Axis]) -> bool:

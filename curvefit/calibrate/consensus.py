@@ -282,6 +282,10 @@ def _held(
     for _ in range(2):  # once about the proposed line, once about the refitted one
         chosen = [_best(lb, n, log, a, b, settings) for lb, n in zip(labels, allowed, strict=True)]
         chosen = _one_each(labels, chosen, log, a, b)
+        if all(r is None or float(r.value).is_integer() for r in chosen):
+            # numbers without decimals lost no points
+            allowed = [[r for r in n if "put in" not in r.how] for n in allowed]
+            chosen = [r if r is None or "put in" not in r.how else None for r in chosen]
         line = _line(labels, chosen, log)
         if line is None:
             return None
@@ -389,7 +393,10 @@ def _misfit(lb: Label, p: Progression, settings: Settings) -> float:
     if expected is None:
         return settings.stray
     texts = printed(expected, p)
-    return settings.stray * min(min(text_distance(lb.text, t) for t in texts), 2.0) / 2.0
+    # a reader loses characters and swaps them, it hardly ever puts digits in
+    longer = sum(map(str.isdigit, lb.text)) > max(sum(map(str.isdigit, t)) for t in texts)
+    distance = min(min(text_distance(lb.text, t) for t in texts), 2.0)
+    return settings.stray * (distance / 2.0 + 1.5 * longer)
 
 
 def near_value(lb: Label, p: Progression) -> float | None:

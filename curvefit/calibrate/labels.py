@@ -99,16 +99,19 @@ def readings(text: str) -> tuple[Reading, ...]:
 
 
 def row_readings(texts: Sequence[str]) -> list[tuple[Reading, ...]]:
-    """The readings of the numbers of one axis, which are printed alike.
+    """The readings of the numbers of one axis, in their order, which are printed alike.
 
-    A number with a leading zero ("05", "00") proves that the reader loses decimal points, and
-    numbers printed with a point make it likely for those without.
+    A number with a leading zero ("05", or "00" at the end of the axis) proves that the reader
+    loses decimal points; numbers printed with a point make it likely for those without.
     """
     each = [readings(t) for t in texts]
+    if not texts:
+        return []
     plain = [re.sub(r"\D", "", t) if re.fullmatch(r"[-−]?\d+", t.strip()) else "" for t in texts]
-    proven = any(len(p) > 1 and p[0] == "0" for p in plain)
+    proven = any(re.match(r"0+[1-9]", p) for p in plain)
     pointed = sum(bool(re.search(r"\d[.,]\d{1,2}$", t.strip())) for t in texts)
-    lost = 0.08 if proven else 0.15 if pointed >= 0.3 * len(texts) else None
+    hinted = pointed >= 0.3 * len(texts) or any(re.fullmatch("00+", p) for p in plain)
+    lost = 0.08 if proven else 0.15 if hinted else None
     if lost is None:
         return each
     return [tuple(_with_lost_points(r, lost, proven) for r in some) for some in each]

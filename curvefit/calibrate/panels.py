@@ -100,22 +100,21 @@ class _Lazy:
 def _drafts(evidences: Sequence[Evidence], panel_notes: tuple[PanelNotes, ...]) -> list[Draft]:
     """Boxes that are charts or look like one, lettered."""
     ordered = _in_order(evidences)
-    shared = _words_of_boxes(ordered)
-    first = [
-        (replace(e, words=words), *scales(replace(e, words=words), "?", None))
-        for e, words in zip(ordered, shared, strict=True)
-    ]
+    own = [replace(e, words=w) for e, w in zip(ordered, _words_of_boxes(ordered), strict=True)]
+    letters = _letters()
+    first = [(e, *scales(e, letter, None)) for letter, e in zip(letters, own, strict=False)]
     keep = [
-        k for k, (e, axes, _, _) in enumerate(first)
+        k
+        for k, (e, axes, _, _) in enumerate(first)
         if _two_ways(axes) or looks_like_a_chart(e, axes) or _given_box(e, panel_notes)
-    ]  # fmt: skip
+    ]
     drafts = []
-    for letter, k in zip(_letters(), keep, strict=False):
-        e = first[k][0]
+    for letter, k in zip(letters, keep, strict=False):
+        e, axes, words, findings = first[k]
         notes = _notes_for(letter, e, panel_notes)
-        axes, words, findings = scales(e, letter, notes)
-        axes = tuple(axes)
-        drafts.append(Draft(letter, e, notes, axes, words, e.findings + findings))
+        if notes is not None or letter != letters[k]:
+            axes, words, findings = scales(e, letter, notes)
+        drafts.append(Draft(letter, e, notes, tuple(axes), words, e.findings + findings))
     return _with_shared_flow(drafts)
 
 

@@ -153,6 +153,7 @@ def _column(
             pieces.append((at, part.text, s.word, len(split) == 1, s.height))
     if len(pieces) < 2:
         return None
+    pieces.sort(key=lambda p: p[0])
     height = float(np.median([p[4] for p in pieces]))
     read = row_readings([p[1] for p in pieces])
     labels = tuple(

@@ -96,9 +96,36 @@ def snap(
         if best is None or score > best[0]:
             best = (score, kind, values[index], at[pick], u[pick])
     if best is None:
-        return _from_labels(p, side_px, size, exact, s)
+        alone = _from_labels(p, side_px, size, exact, s)
+        return _on_ends(p, rows, alone, side_px, size, exact, s) or alone
     _, kind, vs, at, u = best
     return _fitted(p, vs, at, u, side_px, size, kind, exact, s)
+
+
+def _on_ends(
+    p: Progression,
+    rows: Sequence[TickRow],
+    alone: Scale,
+    side_px: float,
+    size: float,
+    exact: bool,
+    s: Settings,
+) -> Scale | None:
+    """The scale from corner to corner of the box, where the numbers say that it ends there.
+
+    Few faint ticks remain on a bad copy, but a box mostly ends on numbers of its scale: taken if
+    both corners lie at a number within what the numbers allow.
+    """
+    ends = [r for r in rows if r.kind == "end" and len(r.at) == 2]
+    values = p.lattice(-0.5 * size, 1 + 0.5 * size)
+    if not ends or p.exact < 4 or len(values) < 2 or alone.scatter > 0.3:
+        return None
+    places = alone.place(values)
+    k = [int(np.argmin(np.abs(places - t))) for t in ends[0].at]
+    if max(abs(places[i] - t) for i, t in zip(k, ends[0].at, strict=True)) > 0.3 * size:
+        return None
+    u = np.hypot(ends[0].u, 0.5 / side_px)
+    return _fitted(p, values[k], ends[0].at, u, side_px, size, "end", exact, s)
 
 
 def _candidates(rows: Sequence[TickRow], close: float) -> list[tuple[str, Array, Array, Array]]:

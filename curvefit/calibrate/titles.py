@@ -349,7 +349,7 @@ def _folded() -> dict[str, Unit]:
 
 def _unit(printed: str) -> tuple[Unit, bool] | None:
     """The unit that a text names, and whether it does so without look-alikes."""
-    text = printed.strip().strip("[](){}|,;:").strip()
+    text = _bared(printed)
     if not text or len(text) > 22:
         return None
     try:
@@ -371,6 +371,17 @@ def _unit(printed: str) -> tuple[Unit, bool] | None:
         if re.fullmatch(pattern, folded) or re.fullmatch(pattern, fold(text)):
             return parse(code), False
     return None
+
+
+def _bared(printed: str) -> str:
+    """A unit without the brackets about it; "gpm (US)" keeps its own."""
+    text = printed.strip().strip("[]{}|,;:").strip()
+    while text and text[0] in "([" and text.count("(") + text.count("[") >= 1:
+        text = text[1:].strip(" ,;:|")
+    for opening, closing in ("()", "[]"):
+        while text.endswith(closing) and text.count(closing) > text.count(opening):
+            text = text[:-1].strip(" ,;:|")
+    return text
 
 
 def _quantity(name: str, dimension: str | None) -> tuple[str | None, bool]:
@@ -425,7 +436,7 @@ def _joined(
     multiplier: float,
     named: bool,
 ) -> Title | None:
-    factor, shown = multiplier, printed.strip().strip("[](){}")
+    factor, shown = multiplier, _bared(printed)
     if not u.coded:  # metric horsepower: numbers are handed on in kW
         factor *= u.factor / parse(u.code).factor
     if not exact:
