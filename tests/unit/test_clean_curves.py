@@ -337,3 +337,22 @@ def test_a_table_can_be_written_again(folder, tmp_path, capsys):
     assert code == 0
     assert "traced points" in said
     assert (out / "pump.points.txt").is_file()
+
+
+def test_the_templates_of_the_readme_work(opened):
+    import re
+    from pathlib import Path
+    from xml.etree import ElementTree
+
+    readme = (Path(__file__).resolve().parents[2] / "README.md").read_text(encoding="utf-8")
+    heads, sets = re.findall(r"```jinja\n(.*?)```", readme, re.S)
+    curves, _ = clean_curves(opened, None, Sampling(points=4))
+    known = variables(opened, curves)
+    lines = fill(heads, known).splitlines()
+    assert lines[1] == 'PUMP 1 "head Ø210" 4'
+    assert len(lines) == 1 + 2 * 5
+    tree = ElementTree.fromstring(fill(sets, known))
+    assert [len(c) for c in tree] == [4] * 4
+    assert float(tree[0][0].text) == pytest.approx(opened.fits[0].coefficients[0])
+    for name in (*known, *known["curves"][0], *known["pumps"][0]):
+        assert f"`{name}`" in readme, name
