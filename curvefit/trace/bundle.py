@@ -20,11 +20,13 @@ Bool = NDArray[np.bool_]
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Member:
-    """One line of a bundle; merged : (n,) where it shares its ink; spread : (n,) [px], how far
-    apart the bundle is there; margin : of the pairing against the next best, 1 is certain."""
+    """One line of a bundle; merged : (n,) where it shares its ink; inner : (n,) where it shows no
+    edge of its own; spread : (n,) [px], how far apart the bundle is there; margin : of the pairing
+    against the next best, 1 is certain."""
 
     line: Line
     merged: Bool
+    inner: Bool
     spread: Array
     margin: float
 
@@ -70,7 +72,7 @@ def untangled(lines: list[Line], layer: Layer, least: float) -> tuple[list[Line]
     Notes
     -----
     Stretches of clean single strokes (arms) are kept. Between them, in common ink, arms of the
-    left and of the right are paired so that cubic curves through both fit the arms and the edges
+    left and of the right are paired so that quartics through both fit the arms and the edges
     of the common ink best. Inside, the upper edge belongs to the upper line and the lower edge
     to the lower one; what lies between is left to smoothness.
     """
@@ -124,19 +126,38 @@ def _touch(
 
 def _told_apart(lines: list[Line], layer: Layer) -> list[Member]:
     width = float(np.median([line.width for line in lines]))
-    strands = _strands(lines, layer, width)
-    edge_width = _edge_width(strands, width)
-    arms, zones = _arms_and_zones(strands, layer.lines.shape, width)
+    strands, edge_width = _strands(lines, layer, width)
+    for _ in range(3):  # a clean bit inside common ink would split it: it joins the common ink
+        arms, zones = _arms_and_zones(strands, layer.lines.shape, width)
+        inner = [arms[i] for z in zones for i in set(z.left) & set(z.right)]
+        ported = {i for z in zones for i in z.left} & {i for z in zones for i in z.right}
+        inner += [arms[i] for i in ported if len(arms[i].x) < max(25, 4 * width)]
+        if not inner:
+            break
+        for strand in strands:
+            for arm in inner:
+                strand.clean[np.isin(strand.x, arm.x) & (_away(strand, arm) < width)] = False
     if not arms or not zones:
         return []
+    measured = len(arms)
     follows: dict[int, list[int]] = {i: [] for i in range(len(arms))}
     margin = dict.fromkeys(range(len(arms)), 1.0)
-    for zone in zones:
+    for k, zone in enumerate(zones):
+        if not zone.left and len(zone.right) > 1:
+            zone = zones[k] = _with_far_side(zone, arms, edge_width, len(zone.right))
+            follows |= {i: [] for i in zone.left}
+            margin |= dict.fromkeys(zone.left, 1.0)
         pairs, sure = _paired(zone, arms, edge_width)
         for a, b in pairs:
-            follows[b].append(a)
-            margin[b] = min(margin[b], sure)
-    last = [i for i in follows if not any(i in before for before in follows.values())]
+            if _bent(arms[a], arms[b]) > 0.35:
+                a = min(range(len(arms)), key=lambda i: _bent(arms[i], arms[b]))
+            if _bent(arms[a], arms[b]) < 2.0:
+                follows[b].append(a)
+                margin[b] = min(margin[b], sure)
+    made = {i for i in follows if i >= measured}
+    last = [
+        i for i in follows if i < measured and not any(i in before for before in follows.values())
+    ]
     out = []
     for end in last:
         chain, sure = [end], margin[end]
@@ -145,31 +166,32 @@ def _told_apart(lines: list[Line], layer: Layer) -> list[Member]:
             sure = min(sure, margin[before])
             chain.insert(0, before)
         out.append((chain, sure))
-    return _placed(out, arms, zones, edge_width, width)
+    return _placed(out, arms, zones, made, edge_width, width)
 
 
-def _strands(lines: list[Line], layer: Layer, width: float) -> list[_Strand]:
-    found = []
+def _strands(lines: list[Line], layer: Layer, width: float) -> tuple[list[_Strand], float]:
+    """Every line by columns, and the width of a stroke as its edges show it."""
+    from scipy.ndimage import median_filter
+
     shapes = [columns_of(line) for line in lines]
+    slopes = [slope_of(x, y) for x, y in shapes]
+    runs = [run_around(layer, x, y, 4 * width + 6) for x, y in shapes]
+    across = [run.height / np.sqrt(1 + s * s) for run, s in zip(runs, slopes, strict=True)]
+    every = np.concatenate(across)
+    every = every[np.isfinite(every)]
+    edge_width = float(np.quantile(every, 0.15)) if len(every) > 20 else width
+    found = []
     for k, (x, y) in enumerate(shapes):
-        slope = slope_of(x, y)
-        run = run_around(layer, x, y, 4 * width + 6)
-        steep = np.sqrt(1 + slope * slope)
-        single = np.abs(run.height - width * steep) < 0.3 * width * steep + 0.4
-        single &= np.abs(0.5 * (run.top + run.bottom) - y) < 0.6 * width * steep
+        steep = np.sqrt(1 + slopes[k] ** 2)
+        usual = median_filter(np.nan_to_num(across[k], nan=99.0), 9, mode="nearest")
+        single = np.isfinite(across[k]) & (np.abs(usual - edge_width) < 0.15 * edge_width + 0.4)
+        single &= np.abs(0.5 * (runs[k].top + runs[k].bottom) - y) < 0.6 * width * steep
         for j, (ox, oy) in enumerate(shapes):
             if j != k:
                 other = np.interp(x, ox, oy, left=np.inf, right=np.inf)
-                single &= np.abs(other - y) > 1.35 * width * steep
-        found.append(_Strand(x, y, slope, run, single))
-    return found
-
-
-def _edge_width(strands: list[_Strand], width: float) -> float:
-    """Width of a stroke as its edges show it, from clean stretches."""
-    heights = [s.run.height[s.clean] / np.sqrt(1 + s.slope[s.clean] ** 2) for s in strands]
-    every = np.concatenate(heights)
-    return float(np.median(every)) if len(every) > 20 else width
+                single &= np.abs(other - y) > 1.25 * width * steep
+        found.append(_Strand(x, y, slopes[k], runs[k], single))
+    return found, edge_width
 
 
 def _arms_and_zones(
@@ -190,7 +212,7 @@ def _arms_and_zones(
             arms.append(_Arm(s.x[a:b][keep], centre[keep]))
         for k in np.nonzero(~alone & np.isfinite(s.run.top))[0]:
             column = int(s.x[k])
-            mask[int(s.run.top[k]) : int(s.run.bottom[k]) + 1, max(column - 4, 0) : column + 5] = 1
+            mask[int(s.run.top[k]) : int(s.run.bottom[k]) + 1, max(column - 8, 0) : column + 9] = 1
     count, labels = cv2.connectedComponents(mask, connectivity=4)
     zones = []
     for zone in range(1, count):
@@ -199,10 +221,17 @@ def _arms_and_zones(
         columns = np.nonzero((labels == zone).any(0))[0]
         if len(left) + len(right) < 2 or not len(columns):
             continue
-        x, top, bottom = _edges_inside(strands, labels, zone)
+        x, top, bottom = _edges_inside(strands, arms, labels, zone, width)
+        if len(x) < 4:
+            x, top, bottom = _edges_inside(strands, [], labels, zone, width)
         if len(x) > 3:
             zones.append(_Zone(x, top, bottom, left, right))
     return arms, zones
+
+
+def _away(strand: _Strand, arm: _Arm) -> Array:
+    """Vertical distance of a strand from an arm, infinite beside it."""
+    return np.abs(strand.y - np.interp(strand.x, arm.x, arm.y, left=np.inf, right=np.inf))
 
 
 def _without_short(clean: Bool, least: int) -> Bool:
@@ -226,13 +255,19 @@ def _at(labels: NDArray[np.int32], arm: _Arm, end: int, zone: int, width: float)
 
 
 def _edges_inside(
-    strands: list[_Strand], labels: NDArray[np.int32], zone: int
+    strands: list[_Strand],
+    arms: list[_Arm],
+    labels: NDArray[np.int32],
+    zone: int,
+    width: float,
 ) -> tuple[Array, Array, Array]:
     """Upper and lower edge of the common ink in each column of a zone."""
     edges: dict[int, tuple[float, float]] = {}
     for s in strands:
         rows = np.clip(np.round(s.y).astype(int), 0, labels.shape[0] - 1)
         inside = (labels[rows, s.x.astype(int)] == zone) & np.isfinite(s.run.top)
+        for arm in arms:  # who stands alone here has no part in the common ink
+            inside &= (_away(s, arm) > width) | ~np.isin(s.x, arm.x)
         for x, top, bottom in zip(
             s.x[inside], s.run.top[inside], s.run.bottom[inside], strict=True
         ):
@@ -266,6 +301,43 @@ def _paired(
     return best[1], float(margin)
 
 
+def _bent(a: _Arm, b: _Arm) -> float:
+    """How badly one cubic runs through two arms, one after the other [px²]."""
+    if a.x[-1] > b.x[0] + 15:
+        return float("inf")
+    window = 1.2 * abs(b.x[0] - a.x[-1]) + 60.0
+    before, after = a.x > a.x[-1] - window, b.x < b.x[0] + window
+    x, y = np.r_[a.x[before], b.x[after]], np.r_[a.y[before], b.y[after]]
+    if len(x) < 8:
+        return float("inf")
+    fit = np.polynomial.Polynomial.fit(x, y, 3)
+    # among equals the nearest
+    return float(((fit(x) - y) ** 2).mean() + 1e-4 * max(b.x[0] - a.x[-1], 0))
+
+
+def _with_far_side(zone: _Zone, arms: list[_Arm], edge_width: float, count: int) -> _Zone:
+    """The zone with arms made from its edges where it is wide again beyond its narrowest place.
+
+    Lines that run together from their start on may cross inside the common ink: it is then wide,
+    narrow, and wide again. The edges of the far part are an upper and a lower arm.
+    """
+    from scipy.ndimage import gaussian_filter1d
+
+    slope = np.gradient(gaussian_filter1d(0.5 * (zone.top + zone.bottom), 6.0), zone.x)
+    steep = np.sqrt(1 + slope * slope)
+    spread = gaussian_filter1d(zone.bottom - zone.top - edge_width * steep, 5.0)
+    narrow = int(spread[len(spread) // 4 :].argmin()) + len(spread) // 4
+    wide = (np.arange(len(spread)) < narrow) & (spread > 0.6 * spread[:narrow].max(initial=0))
+    if wide.sum() < 30 or spread[wide].mean() < 0.35 * edge_width + 2 * max(spread[narrow], 0.3):
+        return zone
+    x, half = zone.x[wide], 0.5 * edge_width * steep[wide]
+    upper, lower = zone.top[wide] + half, zone.bottom[wide] - half
+    first = len(arms)
+    for share in np.linspace(0, 1, count):
+        arms.append(_Arm(x, upper + share * (lower - upper)))
+    return replace(zone, left=tuple(range(first, len(arms))))
+
+
 def _choices(left: tuple[int, ...], right: tuple[int, ...]) -> list[list[tuple[int, int]]]:
     """All ways to let every arm on the right come from one on the left, or the other way round."""
     if len(left) >= len(right):
@@ -283,7 +355,7 @@ def _products(items: tuple[int, ...], count: int) -> list[tuple[int, ...]]:
 def _misfit(
     zone: _Zone, arms: list[_Arm], pairs: list[tuple[int, int]], edge_width: float
 ) -> float:
-    """Mean squared distance [px²] of cubics from the paired arms and the zone's edges."""
+    """Mean squared distance [px²] of quartics from the paired arms and the zone's edges."""
     centre, scale = zone.x.mean(), max(np.ptp(zone.x), 40.0)
     window = 1.2 * np.ptp(zone.x) + 60.0
     heights, total, count = [], 0.0, 0
@@ -294,14 +366,14 @@ def _misfit(
         y = np.r_[arms[a].y[before], arms[b].y[after]]
         if len(x) < 8:
             return 1e6
-        fit = np.polynomial.Polynomial.fit((x - centre) / scale, y, 3)
+        fit = np.polynomial.Polynomial.fit((x - centre) / scale, y, 4)
         total += float(((fit((x - centre) / scale) - y) ** 2).sum())
         count += len(x)
         heights.append((fit((zone.x - centre) / scale), fit.deriv()((zone.x - centre) / scale)))
     half = [0.5 * edge_width * np.sqrt(1 + (d / scale) ** 2) for _, d in heights]
     top = np.min([h - k for (h, _), k in zip(heights, half, strict=True)], axis=0)
     bottom = np.max([h + k for (h, _), k in zip(heights, half, strict=True)], axis=0)
-    off = np.minimum((top - zone.top) ** 2, 25) + np.minimum((bottom - zone.bottom) ** 2, 25)
+    off = np.minimum((top - zone.top) ** 2, 6) + np.minimum((bottom - zone.bottom) ** 2, 6)
     return total / count + float(off.mean()) + 0.01
 
 
@@ -309,6 +381,7 @@ def _placed(
     chains: list[tuple[list[int], float]],
     arms: list[_Arm],
     zones: list[_Zone],
+    made: set[int],
     edge_width: float,
     width: float,
 ) -> list[Member]:
@@ -319,17 +392,17 @@ def _placed(
         y = np.concatenate([arms[i].y for i in chain])
         ends = [chain[0], chain[-1]]
         own = [z for z in zones if set(chain) & (set(z.left) | set(z.right))]
-        low = min([x[0], *[z.x[0] for z in own if ends[0] in z.right]])
+        low = min([x[0], *[z.x[0] for z in own if ends[0] in z.right or ends[0] in made]])
         high = max([x[-1], *[z.x[-1] for z in own if ends[1] in z.left]])
         parts.append((x, y, own, low, high, sure))
     curves = [_Curve(x, y, low, high, width) for x, y, _, low, high, _ in parts]
     for _ in range(6):
-        wanted = [[(c.x, c.y)] for c in curves]
+        wanted = [[(c.x, c.y, 1.0)] for c in curves]
         for zone in zones:
             inside = [k for k, p in enumerate(parts) if any(z is zone for z in p[2])]
             _share_edges(zone, inside, curves, edge_width, wanted)
         for curve, data in zip(curves, wanted, strict=True):
-            curve.fit(np.concatenate([d[0] for d in data]), np.concatenate([d[1] for d in data]))
+            curve.fit(data)
     return [
         _member(k, curves, parts[k][2], parts[k][5], edge_width, width) for k in range(len(parts))
     ]
@@ -345,21 +418,23 @@ class _Curve:
         self.sigma = np.ones_like(self.at)
         self.seen = np.zeros(len(self.at), bool)
         self.scatter = 0.1
-        self.fit(x, y)
+        self.fit([(x, y, 1.0)])
 
-    def fit(self, x: Array, y: Array) -> None:
-        """Smooth through the mean of the points in each column."""
+    def fit(self, data: list[tuple[Array, Array, float]]) -> None:
+        """Smooth through the weighted mean of the points in each column."""
         from curvefit.trace.spline import smooth
 
+        x = np.concatenate([d[0] for d in data])
+        y = np.concatenate([d[1] for d in data])
+        weight = np.concatenate([np.full(len(d[0]), d[2]) for d in data])
         column = np.round(x - self.at[0]).astype(int)
         ok = (column >= 0) & (column < len(self.at)) & np.isfinite(y)
-        count = np.bincount(column[ok], minlength=len(self.at))
-        mean = np.bincount(column[ok], y[ok], minlength=len(self.at)) / np.maximum(count, 1)
-        self.seen = count > 0
-        base = np.interp(self.at, self.at[self.seen], mean[self.seen])
-        fitted = smooth(self.at, mean, self.seen.astype(float), max(20.0, 4 * self.width), 4.0)
-        self.height = fitted.value if np.isfinite(fitted.value).all() else base
-        self.sigma, self.scatter = fitted.sigma, fitted.scatter
+        n = len(self.at)
+        total = np.bincount(column[ok], weight[ok], minlength=n)
+        mean = np.bincount(column[ok], (weight * y)[ok], minlength=n) / np.maximum(total, 1e-9)
+        self.seen = total > 0.5
+        fitted = smooth(self.at, mean, np.minimum(total, 1.0), max(20.0, 4 * self.width), 4.0)
+        self.height, self.sigma, self.scatter = fitted.value, fitted.sigma, fitted.scatter
 
     def value(self, x: Array) -> Array:
         """Height at columns, NaN outside."""
@@ -376,38 +451,43 @@ def _share_edges(
     inside: list[int],
     curves: list[_Curve],
     edge_width: float,
-    wanted: list[list[tuple[Array, Array]]],
+    wanted: list[list[tuple[Array, Array, float]]],
 ) -> None:
     """Give the zone's upper edge to its upper line in each column, the lower edge to the lower."""
     if not inside:
         return
     heights = np.array([curves[k].value(zone.x) for k in inside])
-    some = np.isfinite(heights).any(0)
-    if not some.any():
-        return
-    filled_low = np.where(np.isfinite(heights), heights, np.inf)
-    filled_high = np.where(np.isfinite(heights), heights, -np.inf)
-    upper, lower = filled_low.argmin(0), filled_high.argmax(0)
+    for row, k in enumerate(inside):  # who stands alone in a column has no part in its edges
+        heights[row, np.isin(zone.x, curves[k].x)] = np.nan
+    present = np.isfinite(heights)
+    some = present.any(0)
+    upper = np.where(present, heights, np.inf).argmin(0)
+    lower = np.where(present, heights, -np.inf).argmax(0)
     for row, k in enumerate(inside):
         half = curves[k].half(zone.x, edge_width)
         for owner, y in ((upper, zone.top + half), (lower, zone.bottom - half)):
-            mine = some & (owner == row) & np.isfinite(heights[row])
-            wanted[k].append((zone.x[mine], y[mine]))
+            mine = some & (owner == row)
+            wanted[k].append((zone.x[mine], y[mine], 1.0))
+        between = present[row] & (upper != row) & (lower != row)
+        wanted[k].append((zone.x[between], 0.5 * (zone.top + zone.bottom)[between], 0.01))
 
 
 def _member(
     k: int, curves: list[_Curve], own: list[_Zone], sure: float, edge_width: float, width: float
 ) -> Member:
     curve = curves[k]
-    merged = np.zeros(len(curve.at), bool)
-    spread = np.zeros(len(curve.at))
+    at = curve.at
+    merged, inner = np.zeros(len(at), bool), np.zeros(len(at), bool)
+    spread = np.zeros(len(at))
+    others = np.array([c.value(at) for j, c in enumerate(curves) if j != k])
+    between = (others < curve.height).any(0) & (others > curve.height).any(0)
     for zone in own:
-        inside = (curve.at >= zone.x[0]) & (curve.at <= zone.x[-1])
+        inside = (at >= zone.x[0]) & (at <= zone.x[-1]) & ~np.isin(at, curve.x)
         merged |= inside
-        height = np.interp(curve.at, zone.x, zone.bottom - zone.top)
-        spread = np.where(
-            inside, np.maximum(height - 2 * curve.half(curve.at, edge_width), 0), spread
-        )
+        inner |= inside & between
+        height = np.interp(at, zone.x, zone.bottom - zone.top)
+        free = np.maximum(height - 2 * curve.half(at, edge_width), 0)
+        spread = np.where(inside, free, spread)
     slope = np.gradient(curve.height)
     steep = np.sqrt(1 + slope * slope)
     n = len(curve.at)
@@ -421,4 +501,4 @@ def _member(
         width,
         curve.scatter,
     )
-    return Member(replace(line), merged, spread, sure)
+    return Member(line, merged, inner, spread, sure)

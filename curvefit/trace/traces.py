@@ -73,9 +73,9 @@ def _doubt(found: Found) -> tuple[Array, NDArray[np.uint8]]:
     wander = 0.012 * np.clip(away - 2.0, 0, None)
     if found.bundled is not None:
         merged, spread = found.bundled.merged, found.bundled.spread
-        loose = merged & (spread > 0.3 * line.width)
         sure = found.bundled.margin >= SURE
-        share = 0.1 * line.width + (0.15 if sure else 0.6) * np.where(loose, spread, 0.0)
+        loose = merged & (spread > 0.3 * line.width) & (found.bundled.inner | (not sure))
+        share = 0.12 * line.width + (0.3 if sure else 0.6) * np.where(loose, spread, 0.0)
         wander = np.where(merged, share, np.minimum(wander, 0.3))
         flags = np.where(loose, BUNDLED, np.where(merged, CROSSING, flags))
     sigma = np.sqrt((1.3 * line.sigma) ** 2 + FLOOR**2 + (0.15 * line.scatter) ** 2 + wander**2)
