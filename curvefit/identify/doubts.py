@@ -34,7 +34,9 @@ def _words(quantity: str) -> str:
 
 
 def _at(trace: Trace) -> str:
-    x, y = trace.xy[len(trace.flat) // 2]
+    """The key for a notes file, whose pixels are those of the stored picture."""
+    middle = len(trace.flat) // 2
+    ((x, y),) = trace.panel.page.to_stored(trace.xy[middle : middle + 1])
     return f"at = [{x:.0f}, {y:.0f}]"
 
 
