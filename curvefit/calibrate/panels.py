@@ -351,7 +351,7 @@ def _no_chart(page: Page, drafts: Sequence[Draft], failed: Sequence[Draft]) -> N
         remedy = (
             'Take drop = true out of the notes.' if drafts else
             "If there is a chart, give its four corners in the notes: "
-            '[[panel]] corners = [[x, y], …], clockwise from the top left, '
+            '[[panel]] name = "A", corners = [[x, y], …], clockwise from the top left, '
             "and two marks for each axis."
         )  # fmt: skip
         return NoChart(what, where, remedy)
@@ -362,11 +362,9 @@ def _no_chart(page: Page, drafts: Sequence[Draft], failed: Sequence[Draft]) -> N
     said = _unread(d)
     reasons = " ".join(f.message for f in d.findings if f.severity == "error")
     what = f"panel {d.name}: {said.message} {reasons}".strip()
-    lines = " ".join(
-        f'[[panel.axis]] name = "{m}", marks = [{{xy_px = [x, y], value = …}}, {{xy_px = [x, y], value = …}}]'
+    lines = ", ".join(
+        f'{{panel = "{d.name}", side = "{m}", marks = [[x, y, value], [x, y, value]]}}'
         for m in _missing(d)
     )
-    remedy = (
-        f'Give two marks for each missing axis in the notes: [[panel]] name = "{d.name}" {lines}'
-    )
+    remedy = f"Give two marks for each missing axis in the notes: axis = [{lines}]"
     return NoChart(what, replace(where, panel=d.name, box_px=said.where.box_px), remedy)
