@@ -60,12 +60,12 @@ def identity(table: str, row: Mapping[str, Any]) -> str:
         path = row.get("path") if "name" not in row and "at" not in row else None
         return repr((row.get("panel"), row.get("at") or row.get("name"), path))
     if table == "panel":
-        return repr(row.get("name") or row.get("box"))
+        return repr(row.get("name") or row.get("box") or row.get("corners"))
     return repr(row.get("name", "1")) if table == "pump" else table
 
 
 def _panel_key(panel: PanelNotes) -> object:
-    return panel.name if panel.name is not None else panel.box
+    return panel.name if panel.name is not None else panel.box or panel.corners
 
 
 def _curve_key(c: CurveNotes) -> object:

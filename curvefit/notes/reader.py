@@ -191,11 +191,13 @@ def _refuse_unnamed(facts: bool, page: Page | None, named: bool, file: str) -> N
 
 def _panel(entry: Entry) -> PanelNotes:
     name, box = entry.text("name"), entry.box("box")
-    if name is None and box is None:
-        raise entry.wrong(
-            None, "the panel is not named", 'Add name = "A", or box = [left, top, right, bottom].'
-        )
     corners = entry.points("corners", 4, 4)
+    if name is None and box is None and not corners:
+        raise entry.wrong(
+            None,
+            "the panel is not named",
+            'Add name = "A", box = [left, top, right, bottom], or its four corners.',
+        )
     return PanelNotes(
         name=name,
         box=box,
