@@ -409,3 +409,39 @@ def test_a_picture_of_a_chart_is_not_traced_by_strokes(tmp_path):
     assert page.vector
     assert not has_curves(panel)
     assert traces == ()
+
+
+def _shapes(x, y, text, size):
+    """Operators that draw a text as filled outlines, like a program that embeds no fonts."""
+    from matplotlib.font_manager import FontProperties
+    from matplotlib.textpath import TextPath
+
+    path = TextPath((x, y), text, size, prop=FontProperties(family="DejaVu Sans"))
+    rings = path.to_polygons(closed_only=True)
+    return (
+        " ".join(
+            " ".join(f"{a:.2f} {b:.2f} {'l' if i else 'm'}" for i, (a, b) in enumerate(ring)) + " h"
+            for ring in rings
+        )
+        + " f*"
+    )
+
+
+def test_numbers_drawn_as_shapes_are_read_from_their_picture(tmp_path):
+    scene = Scene()
+    scene.axes("rectangle", "lines", numbers=False)
+    for k in range(9):
+        scene.ops.append(_shapes(LEFT + 40 * k - 5, BOTTOM - 18, f"{10 * k}", 9))
+        scene.ops.append(_shapes(LEFT - 24, BOTTOM + 27.5 * k - 3, f"{5 * k}", 9))
+    scene.ops.append(_shapes(170, 12, "Flow [m3/h]", 10))
+    scene.curve(curve_between(0.0, 0.9))
+    page, evidence, _, traces = read(scene, tmp_path)
+    assert page.words == ()
+    assert evidence.exact
+    assert np.abs(evidence.corners - corners_of(scene, page)).max() < 0.02
+    assert [f.code for f in evidence.findings] == ["page.no-text"]
+    texts = [w.text for w in evidence.words]
+    assert {f"{10 * k}" for k in range(1, 9)} <= set(texts)
+    assert evidence.look is not None
+    assert len(traces) == 1  # letters are no curves
+    assert errors(traces[0], curve_between(0.0, 0.9))[0] < 0.006
