@@ -327,7 +327,7 @@ def _summary(fits: Sequence[Fit], units: dict[str, str]) -> str:
         )
         below.append(f"    {one.reason}" + (f"; candidates: {others}" if others else ""))
     head = ("fit", "model", "flow range", "residual", "band, mean half width")
-    return table(head, rows) + "\n\n" + "\n".join(below)
+    return str(table(head, rows)) + "\n\n" + "\n".join(below)
 
 
 def _power_text(fit: Fit, own: Any, symbol: str) -> str:
@@ -352,7 +352,7 @@ def _exponents(family: Family) -> str:
             said, trim = "loss of efficiency per share of diameter", "–"
         rows.append([said, f"{value:.4f} ± {1.96 * u:.4f}", f"{nominal:g}", trim])
     head = (family.quantity, "fitted, 95 %", "nominal", "radial trim")
-    text = table(head, rows)
+    text = str(table(head, rows))
     left = family.leave_one_out()
     if left:
         lines = [

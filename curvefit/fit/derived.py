@@ -13,11 +13,18 @@ import numpy as np
 from numpy.typing import NDArray
 
 from curvefit.fit.said import finding
-from curvefit.laws import NQ_TO_TYPE_NUMBER, NQ_TO_US, specific_speed, suction_specific_speed
+from curvefit.laws import (
+    NQ_TO_TYPE_NUMBER,
+    NQ_TO_US,
+    efficiency,
+    specific_speed,
+    suction_specific_speed,
+)
 from curvefit.models import evaluate
 from curvefit.records import Curve, Finding, Fit, Pump
+from curvefit.units import RHO_WATER
 
-__all__ = ["Point", "at_flow", "best_point", "derive"]
+__all__ = ["Line", "Point", "at_flow", "best_point", "derive", "efficiency_line", "line_of"]
 
 Array = NDArray[np.float64]
 EFFICIENCIES = ("efficiency", "overall_efficiency")
@@ -48,11 +55,30 @@ class Point:
         return Point(self.value, mixed)
 
 
-def _rows(fit: Fit) -> dict[str, Array] | None:
-    """The fit's causes on its grid by name; axes by the axis's name, so that curves share them."""
+@dataclass(frozen=True, slots=True, eq=False)
+class Line:
+    """A fitted or computed curve on a flow grid inside its range; causes by name or not known."""
+
+    grid: Array
+    value: Array
+    causes: dict[str, Array] | None
+    coefficients: Array | None = None
+
+    @property
+    def ends(self) -> tuple[float, float]:
+        """Smallest and largest flow."""
+        return float(self.grid[0]), float(self.grid[-1])
+
+
+def line_of(fit: Fit) -> Line:
+    """The fit's curve inside its range; causes of the axes are named after them, to be shared."""
+    low, high = fit.flow_range_si
+    slack = 1e-9 * (high - low)
+    inside = (fit.band.flow_si >= low - slack) & (fit.band.flow_si <= high + slack)
+    grid, value = fit.band.flow_si[inside], fit.band.value_si[inside]
     if fit.factors is None:
-        return None
-    rows = {f"{fit.name} {i}": row for i, row in enumerate(fit.factors)}
+        return Line(grid, value, None, fit.coefficients)
+    rows = {f"{fit.name} {i}": row[inside] for i, row in enumerate(fit.factors)}
     if fit.calibration is not None:
         curve = fit.curve
         names = [
@@ -60,70 +86,85 @@ def _rows(fit: Fit) -> dict[str, Array] | None:
             for axis, side in ((curve.flow_axis, " flow"), (curve.value_axis, " value"))
             for i in (0, 1)
         ]
-        rows |= dict(zip(names, fit.calibration, strict=True))
-    return rows
+        rows |= dict(zip(names, (row[inside] for row in fit.calibration), strict=True))
+    return Line(grid, value, rows, fit.coefficients)
 
 
-def value_at(fit: Fit, flow: float) -> float:
-    """The fitted value at one flow."""
-    if fit.coefficients is not None:
-        return float(evaluate(fit.coefficients, flow))
-    return float(np.interp(flow, fit.band.flow_si, fit.band.value_si))
+def efficiency_line(head: Line, power: Line, density: float) -> Line | None:
+    """η = ρgQH/P of a head and a shaft-power curve, with the errors of both; None where apart."""
+    low, high = max(head.ends[0], power.ends[0]), min(head.ends[1], power.ends[1])
+    if high <= low:
+        return None
+    grid = np.linspace(low, high, len(head.grid))
+
+    def moved(line: Line, row: Array) -> Array:
+        return np.interp(grid, line.grid, row)
+
+    h, p = moved(head, head.value), moved(power, power.value)
+    if p.min() <= 0 or h.min() <= 0:
+        return None
+    value = efficiency(grid, h, p, density)
+    if head.causes is None or power.causes is None:
+        return Line(grid, value, None)
+    causes = {name: value * moved(head, row) / h for name, row in head.causes.items()}
+    for name, row in power.causes.items():
+        causes[name] = causes.get(name, np.zeros(len(grid))) - value * moved(power, row) / p
+    return Line(grid, value, causes)
 
 
-def at_flow(fit: Fit, flow: Point | float) -> Point | None:
+def at_flow(fit: Fit | Line, flow: Point | float) -> Point | None:
     """The value of a fit at a flow that may itself be uncertain; None outside its range."""
+    line = line_of(fit) if isinstance(fit, Fit) else fit
     place = flow if isinstance(flow, Point) else Point(flow, {})
-    low, high = fit.flow_range_si
+    low, high = line.ends
     slack = 1e-9 * (high - low)
     if not low - slack <= place.value <= high + slack:
         return None
-    grid = fit.band.flow_si
-    rows = _rows(fit)
-    causes = (
-        None
-        if rows is None
-        else {n: float(np.interp(place.value, grid, row)) for n, row in rows.items()}
+    q = place.value
+    causes = line.causes
+    if causes is not None:
+        at = {n: float(np.interp(q, line.grid, row)) for n, row in causes.items()}
+    slope = float(np.interp(q, line.grid, np.gradient(line.value, line.grid)))
+    value = float(
+        np.interp(q, line.grid, line.value)
+        if line.coefficients is None
+        else evaluate(line.coefficients, q)
     )
-    slope = float(np.interp(place.value, grid, np.gradient(fit.band.value_si, grid)))
-    return Point(value_at(fit, place.value), causes).plus(place, slope)
+    return Point(value, None if causes is None else at).plus(place, slope)
 
 
-def best_point(fit: Fit) -> Point | None:
-    """The flow of the largest value of a fit; None where that lies at an end of its range.
+def best_point(fit: Fit | Line) -> Point | None:
+    """The flow of the largest value; None where that lies at an end of the range.
 
     Notes
     -----
     At the peak q* the slope is zero: an error e(q) of the curve moves it by −e′(q*)/v″(q*).
     """
-    low, high = fit.flow_range_si
-    inside = (fit.band.flow_si >= low) & (fit.band.flow_si <= high)
-    grid, value = fit.band.flow_si[inside], fit.band.value_si[inside]
+    line = line_of(fit) if isinstance(fit, Fit) else fit
+    grid, value = line.grid, line.value
+    if len(grid) < 7:
+        return None
     top = int(np.argmax(value))
-    if len(grid) < 7 or top < 2 or top > len(grid) - 3:
+    if top < 2 or top > len(grid) - 3:
         return None
     around = slice(max(0, top - 3), top + 4)
     step = float(grid[1] - grid[0])
     _, b, a = np.polynomial.polynomial.polyfit((grid[around] - grid[top]) / step, value[around], 2)
-    if fit.coefficients is not None:
-        slope = fit.coefficients[1:] * np.arange(1, len(fit.coefficients))
-        flow = float(grid[top])
+    bend = float(2 * a / step**2)
+    flow = float(grid[top] - step * b / (2 * a)) if a < 0 else float(grid[top])
+    if line.coefficients is not None:
+        slope = line.coefficients[1:] * np.arange(1, len(line.coefficients))
         for _ in range(20):
             bend = float(evaluate(slope[1:] * np.arange(1, len(slope)), flow))
             move = -float(evaluate(slope, flow)) / bend if bend < 0 else 0.0
             flow = float(np.clip(flow + move, grid[top - 1], grid[top + 1]))
-            if abs(move) < 1e-14 * high:
+            if abs(move) < 1e-14 * grid[-1]:
                 break
-    else:
-        flow = float(grid[top] - step * b / (2 * a)) if a < 0 else float(grid[top])
-        bend = float(2 * a / step**2)
     if bend >= 0:
         return None
-    rows = _rows(fit)
-    if rows is None:
+    if line.causes is None:
         return Point(flow, None)
-    full = fit.band.flow_si
-    rates = {n: float(np.interp(flow, full, np.gradient(row, full))) for n, row in rows.items()}
+    rates = {n: float(np.interp(flow, grid, np.gradient(r, grid))) for n, r in line.causes.items()}
     return Point(flow, {n: -rate / bend for n, rate in rates.items()})
 
 
@@ -146,15 +187,15 @@ def derive(fits: Sequence[Fit], pumps: Iterable[Pump] = ()) -> tuple[Fit, ...]:
     out = []
     for fit in fits:
         derived = dict(fit.derived)
-        said: list[Finding] = []
         curve = fit.curve
         if _from_shut_off(fit):
             derived["shut_off"] = _shut_off(fit)
-        best = _best_of(fit, fits)
+        best, said = _best_of(fit, fits, known.get(curve.pump))
         if best is not None:
             derived["bep"] = best[1]
             if curve.quantity == "head" and _largest(curve, fits):
-                speeds, said = _specific(fit, best, fits, known.get(curve.pump))
+                speeds, more = _specific(fit, best, fits, known.get(curve.pump))
+                said += more
                 if speeds:
                     derived["specific_speed"] = speeds
         out.append(replace(fit, derived=derived, findings=fit.findings + tuple(said)))
@@ -200,26 +241,48 @@ def companion(curve: Curve, quantities: Sequence[str], fits: Sequence[Fit]) -> F
     return found[0] if len(found) == 1 else None
 
 
-def _best_of(fit: Fit, fits: Sequence[Fit]) -> tuple[Point, dict[str, float | None]] | None:
+Best = tuple[Point, dict[str, float | None]]
+
+
+def _best_of(fit: Fit, fits: Sequence[Fit], pump: Pump | None) -> tuple[Best | None, list[Finding]]:
     """The best efficiency point of the curve's impeller and what the pump does there."""
-    curve = fit.curve
+    curve, said = fit.curve, []
     if len(fit.curves) != 1 or curve.quantity not in ("head", *EFFICIENCIES):
-        return None
-    source = fit if curve.quantity in EFFICIENCIES else companion(curve, EFFICIENCIES[:1], fits)
+        return None, []
+    others = {q: companion(curve, (q,), fits) for q in ("head", "shaft_power", "npsh_required")}
+    source: Line | None = None
+    if curve.quantity in EFFICIENCIES:
+        source = line_of(fit)
+    elif (own := companion(curve, EFFICIENCIES[:1], fits)) is not None:
+        source = line_of(own)
+    elif others["shaft_power"] is not None and not _any_efficiency(curve, fits):
+        density = pump.density_si if pump is not None and pump.density_si else RHO_WATER
+        source = efficiency_line(line_of(fit), line_of(others["shaft_power"]), density)
+        said.append(
+            finding(
+                "info",
+                "derived.efficiency-computed",
+                curve,
+                f"The best efficiency point is that of ρgQH/P with {density:.5g} kg/m³; the chart "
+                "has no efficiency curve for this impeller.",
+            )
+        )
     flow = best_point(source) if source is not None else None
     if source is None or flow is None:
-        return None
+        return None, []
     known: dict[str, float | None] = {"flow_si": flow.value, "u_flow_si": flow.u}
-    rows = [("efficiency", source)]
-    for quantity in ("head", "shaft_power", "npsh_required"):
-        other = companion(curve, (quantity,), fits)
-        if other is not None:
-            rows.append((quantity, other))
-    for quantity, other in rows:
-        at = at_flow(other, flow)
+    lines = {"efficiency": source}
+    lines |= {q: line_of(f) for q, f in others.items() if f is not None}
+    for quantity, line in lines.items():
+        at = at_flow(line, flow)
         if at is not None:
             known |= {f"{quantity}_si": at.value, f"u_{quantity}_si": at.u}
-    return flow, known
+    return (flow, known), said
+
+
+def _any_efficiency(curve: Curve, fits: Sequence[Fit]) -> bool:
+    """Whether the pump has efficiency curves at all, though none is this impeller's alone."""
+    return any(f.curve.quantity in EFFICIENCIES and f.curve.pump == curve.pump for f in fits)
 
 
 def _largest(curve: Curve, fits: Sequence[Fit]) -> bool:
@@ -232,7 +295,7 @@ def _largest(curve: Curve, fits: Sequence[Fit]) -> bool:
 
 def _specific(
     fit: Fit,
-    best: tuple[Point, dict[str, float | None]],
+    best: Best,
     fits: Sequence[Fit],
     pump: Pump | None,
 ) -> tuple[dict[str, float | None], list[Finding]]:

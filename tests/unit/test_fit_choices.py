@@ -11,6 +11,7 @@ from curvefit.fit import Choice, fit, fit_curve, points
 from curvefit.fit.bands import sup_t
 from curvefit.fit.points import read_points
 from curvefit.fit.quantiles import chi_square, f_quantile, normal_two_sided, t_two_sided
+from curvefit.laws import shaft_power
 from curvefit.models import evaluate, extrema, power
 from curvefit.records import BUNDLED, Curve, Pump
 
@@ -235,6 +236,32 @@ def test_derived_numbers_of_one_pump():
     assert found["head"].derived["shut_off"]["head_si"] == pytest.approx(30, abs=0.02)
     staged = fit(curves, pumps=(replace(pump, stages=4),))[0]
     assert staged.derived["specific_speed"]["nq"] == pytest.approx(speeds["nq"] * 4**0.75)
+
+
+def test_a_best_point_from_head_and_power():
+    """No efficiency curve: η = ρgQH/P, and the errors of the common flow axis count once."""
+    q = FLOW[20:]
+    head, eta = 30 - 9 * (q / 0.04) ** 2, 0.8 * (1 - (1 - q / 0.036) ** 2)
+    power_ = shaft_power(q, head, eta)
+    axis = np.zeros((len(q), 4))
+    axis[:, 1] = -1e-4 * np.gradient(head, q)
+    other = np.zeros((len(q), 4))
+    other[:, 1] = -1e-4 * np.gradient(power_, q)
+    curves = [
+        traced("head", head, 1e-3, flow=q, calibration_si=axis, flow_axis="A.bottom",
+               value_axis="A.left"),
+        traced("shaft_power", power_, 0.5, flow=q, calibration_si=other, flow_axis="A.bottom",
+               value_axis="A.right"),
+    ]  # fmt: skip
+    found = fit(curves)[0]
+    best = found.derived["bep"]
+    assert best["flow_si"] == pytest.approx(0.036, abs=3e-4)
+    assert best["efficiency_si"] == pytest.approx(0.8, abs=2e-3)
+    assert best["shaft_power_si"] == pytest.approx(shaft_power(0.036, 30 - 9 * 0.81, 0.8), rel=5e-3)
+    # a shift δ of the flow axis moves H and P together but not the Q of ρgQH/P: by hand, the peak
+    # of η(q + δ)·q/(q + δ) moves by δ/2 for this parabola
+    assert best["u_flow_si"] == pytest.approx(0.5e-4, rel=0.02)
+    assert "derived.efficiency-computed" in codes(found)
 
 
 def test_no_best_point_where_the_peak_is_not_drawn():
