@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated
+from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 from curvefit_cli.options import (
@@ -111,6 +111,7 @@ def read_to(
     except ChartError as error:
         if error.exit_code == UNTRUSTED and error.partial is not None:
             _write_partial(error, chart, folder, page is not None or done > 0)
+        _place_as_stored(error)
         raise
     return worst
 
@@ -182,6 +183,25 @@ def first_place(reading: Reading) -> str:
     from curvefit.errors import Location
 
     return str(Location(file=reading.page.file, page=reading.page.number))
+
+
+def _place_as_stored(error: ChartError) -> None:
+    """Turns the place of an error into pixels of the stored picture, as notes and files have it."""
+    from curvefit.records import Reading
+
+    box = error.where.box_px
+    if box is None or not isinstance(error.partial, Reading):
+        return
+    ends = error.partial.page.to_stored(_corners(box))
+    low, high = ends.min(0), ends.max(0)
+    error.where = replace(error.where, box_px=(*map(float, low), *map(float, high)))
+
+
+def _corners(box: tuple[float, float, float, float]) -> Any:
+    import numpy as np
+
+    left, top, right, bottom = box
+    return np.array([[left, top], [right, top], [right, bottom], [left, bottom]])
 
 
 def _write_partial(error: ChartError, chart: Path, folder: Path, named: bool) -> None:

@@ -188,6 +188,19 @@ def test_nothing_read_ends_with_4_and_a_partial_file(curvefit, reads, chart, mad
     assert doc["findings"][0]["remedy"] == "Give a box."
 
 
+def test_the_place_of_an_error_is_in_pixels_of_the_stored_picture(
+    curvefit, reads, chart, made_reading
+):
+    box = (100.0, 80.0, 120.0, 560.0)
+    error = NoChart("no numbers", Location(page=1, panel="A", box_px=box), "Give two marks.")
+    error.partial = Reading(made_reading(quarter_turn=True).page)
+    reads(error)
+    assert "pixels 80,779 to 560,799" in curvefit("read", chart)[2]
+    (path,) = (chart.parent / "my chart.png.curvefit").iterdir()
+    doc = json.loads(path.read_text(encoding="utf-8"))
+    assert doc["findings"][0]["where"]["box_px"] == [80.0, 779.0, 560.0, 799.0]
+
+
 def test_a_chart_without_curves_ends_with_4(curvefit, reads, chart, made_reading):
     reads(replace(made_reading(), curves=(), fits=()))
     code, _, err = curvefit("read", chart)
