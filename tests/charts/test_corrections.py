@@ -105,7 +105,7 @@ def test_a_given_path_wins_over_the_reader(twin):
     path, read = twin
     head = next(c for c in read.curves if c.quantity == "head")
     drawn = head.trace.xy[:: max(1, len(head.trace.xy) // 12)] + np.array([0.0, 25.0])
-    given = CurveNotes(name=head.name, path=tuple((float(x), float(y)) for x, y in drawn))
+    given = CurveNotes(at=_point(head), path=tuple((float(x), float(y)) for x, y in drawn))
     again = read_chart(path, Notes(curves=(given,)))
     moved = next(c for c in again.curves if c.quantity == "head")
     inside = (head.flow_si > moved.flow_si[2]) & (head.flow_si < moved.flow_si[-3])
