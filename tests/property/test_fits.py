@@ -5,7 +5,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from curvefit.fit import Choice, fit_curve
+from curvefit.fit import Choice, fit, fit_curve
 from curvefit.laws import at_speed_ratio, efficiency, shaft_power
 from curvefit.models import (
     at_speed,
@@ -150,3 +150,35 @@ def test_a_surer_band_is_wider(confidence):
     curve = line()
     one, more = (fit_curve(curve, Choice(confidence=c)) for c in (confidence, confidence + 0.005))
     assert np.all(more.band.high_si - more.band.low_si > one.band.high_si - one.band.low_si)
+
+
+@settings(deadline=None, max_examples=120)
+@given(
+    n=st.integers(1, 90),
+    seed=st.integers(0, 10_000),
+    rough=st.sampled_from([0.0, 1e-6, 1e-2, 1.0]),
+    u=st.sampled_from([0.0, 1e-9, 1e-3, 10.0]),
+    quantity=st.sampled_from(["head", "efficiency", "shaft_power", "npsh_required"]),
+    start=st.sampled_from([-0.02, 0.0, 0.3, 50.0]),
+)
+def test_any_line_gives_a_finite_fit(n, seed, rough, u, quantity, start):
+    """Whatever a reader hands over, there is a curve with a band or a finding, never a crash."""
+    rng = np.random.default_rng(seed)
+    flow = start + np.cumsum(rng.uniform(1e-4, 0.05, n))
+    value = rng.choice([0.0, 1.0, -3.0]) + np.cumsum(rough * rng.standard_normal(n))
+    sigma = u * rng.choice([0.0, 1.0, 30.0], n)
+    cause = None if seed % 2 else sigma[:, None] * rng.standard_normal(4)
+    one = fit_curve(Curve("c", quantity, flow, value, "m3/h", "m", sigma_si=np.abs(sigma),
+                          trace_sigma_si=np.abs(sigma), calibration_si=cause))  # fmt: skip
+    assert np.isfinite(one.band.value_si).all()
+    if n < 5:
+        assert one.band.low_si is None
+        assert {f.code for f in one.findings} == {"fit.few-points"}
+    else:
+        assert np.isfinite(one.band.low_si).all()
+        assert np.all(one.band.low_si <= one.band.value_si)
+        assert np.all(one.band.value_si <= one.band.high_si)
+        # the equation follows the line as far as its band says
+        at = np.interp(flow, one.band.flow_si, one.band.value_si)
+        assert np.ptp(at) <= 20 * np.ptp(value) + 1e-6
+    assert fit([one.curve])[0].name == "c"
