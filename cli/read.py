@@ -193,8 +193,8 @@ def _place_as_stored(error: ChartError) -> None:
     if box is None or not isinstance(error.partial, Reading):
         return
     ends = error.partial.page.to_stored(_corners(box))
-    low, high = ends.min(0), ends.max(0)
-    error.where = replace(error.where, box_px=(*map(float, low), *map(float, high)))
+    (x0, y0), (x1, y1) = ends.min(0), ends.max(0)
+    error.where = replace(error.where, box_px=(float(x0), float(y0), float(x1), float(y1)))
 
 
 def _corners(box: tuple[float, float, float, float]) -> Any:
