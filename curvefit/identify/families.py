@@ -115,7 +115,11 @@ def deal(
     elsewhere = [min((spot(label, t).gap for t in others), default=np.inf) for label in labels]
     best: Deal | None = None
     for kind in _KINDS:
-        holding = [j for j, label in enumerate(labels) if label.means(kind)]
+        holding = [
+            j
+            for j, label in enumerate(labels)
+            if any(m.plain or kind != "percent" for m in label.means(kind))
+        ]
         if not holding:
             continue
         for stand in ("any", "above", "below"):

@@ -23,8 +23,8 @@ Image = NDArray[np.uint8]
 
 _PERCENT = "0123456789.%"
 _ALPHABETS = (None, "0123456789Øø⌀=.,/\"'% ", _PERCENT)
-_AT_ENDS = [(0, 0), (0, -0.6), (0, 0.6), (0, -1.2), (0, 1.2), (1.7, 0), (-1.7, 0), (1.5, -0.7),
-            (-1.5, -0.7)]  # fmt: skip
+_AT_ENDS = [[(0, 0), (0, -0.6), (0, -1.2), (1.7, 0)],
+            [(0, 0.6), (0, 1.2), (-1.7, 0), (1.5, -0.7), (-1.5, -0.7)]]  # fmt: skip
 _LABELS = re.compile(
     r"[Øø⌀∅]\s?\d{2,4}(?:\s?mm)?|(?<!\d)\d{3,4}\s?(?:mm|rpm|1/min)|\d{1,2}(?:[- ]?\d/\d{1,2})?\s?\""
 )
@@ -79,7 +79,9 @@ def at_ends(panel: Panel, traces: Sequence[Trace], height: float) -> tuple[Label
     if panel.page.vector or not traces:
         return ()
     sample = [traces[round(k)] for k in np.linspace(0, len(traces) - 1, min(_SAMPLED, len(traces)))]
-    first = _levels_at(panel, sample, _AT_ENDS, height)
+    first = _levels_at(panel, sample, _AT_ENDS[0], height)
+    if len(first) < len(sample):
+        first += _levels_at(panel, sample, _AT_ENDS[1], height)
     hits = {where for where, _ in first}
     rest = [t for t in traces if not any(t is s for s in sample)]
     places = sorted(hits, key=lambda p: -sum(where == p for where, _ in first))[:3]

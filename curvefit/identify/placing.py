@@ -126,7 +126,7 @@ def _following(words: Sequence[Word]) -> list[int]:
     aside = np.abs(step[..., 1] * along[:, None, 0] - step[..., 0] * along[:, None, 1])
     alike = (height[None] > 0.5 * height[:, None]) & (height[None] < 2.0 * height[:, None])
     same = (along[:, None] * along[None]).sum(2) > 0.9
-    fits = (gap > -0.3) & (gap < 0.9) & (aside < 0.35 * height[:, None]) & alike & same
+    fits = (gap > -0.3) & (gap < 1.4) & (aside < 0.35 * height[:, None]) & alike & same
     np.fill_diagonal(fits, False)
     best = np.where(fits, gap, np.inf).argmin(1)
     return [int(j) if fits[i, j] else -1 for i, j in enumerate(best)]
