@@ -146,9 +146,7 @@ def _is_rule(xy: Array, stroke: Stroke, size: tuple[float, float]) -> bool:
         return True
     other = 1 - k
     on_side = min(abs(xy[0, other]), abs(xy[0, other] - size[other])) < 2.0
-    ends = xy[:, k]
-    touches = min(np.abs(ends).min(), np.abs(ends - size[k]).min()) < 2.0 + stroke.width
-    return bool(on_side or (touches and extent[k] < 70))
+    return bool(on_side)  # a short one may be a dash where a curve begins; a tick stays alone
 
 
 def _clipped(xy: Array, size: tuple[float, float], edge: float) -> Iterator[Array]:
