@@ -171,8 +171,9 @@ def _report(
         first = reading.findings[0]
         say(f"Error: {first.where}: {first.message}\n  {first.remedy}", file=sys.stderr)
     elif strict and (count := sum(f.severity != "info" for f in reading.findings)):
+        warnings = f"{count} warning{'s' * (count > 1)}"
         say(
-            f"Error: {first_place(reading)}: {count} warnings, and --strict allows none.\n"
+            f"Error: {first_place(reading)}: {warnings}, and --strict allows none.\n"
             "  Look at the findings above, or in the report.",
             file=sys.stderr,
         )

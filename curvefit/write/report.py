@@ -198,6 +198,8 @@ def _fit(out: FitOut) -> dict[str, Any]:
 
 def _coefficients(out: FitOut) -> list[tuple[str, str, str]]:
     """Name, value with all digits, standard uncertainty of each coefficient or parameter."""
+    if out.knots is not None:
+        return [(f"knot at {q:.6g}", f"{v:.8g}", "see the band") for q, v in out.knots]
     if out.coefficients is not None:
         names = [f"c{k}" for k in range(len(out.coefficients))]
         values = [float(v) for v in out.coefficients]
