@@ -24,6 +24,11 @@ Candidates = tuple[tuple[str, float, str], ...]
 Chosen = tuple["Equation", Candidates, str]
 
 
+#: quantities whose default may be the power form, and by how much it must predict better
+POWERED = ("head", "differential_pressure", "npsh_required")
+CLEARLY = 2.0
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class Equation:
     """The curve that is handed out: a polynomial, a power form or knots."""
@@ -53,13 +58,17 @@ def choose(
         for m in fitted.members
     ]
     if pieces is not None:
-        candidates.append((f"piecewise, {len(pieces.knots)} knots", pieces.criterion, ""))
-    if choice.family == "power":
-        chosen, squares = _power(curve, fitted, flow, value, grid)
-        m = len(flow)
-        criterion = m * np.log(max(squares, 1e-300) / m) + 8 + 40 / max(m - 5, 1e-3)
-        candidates.append(("power form", float(criterion), "asked for"))
-        return chosen, tuple(candidates), "the power form was asked for"
+        name = f"piecewise, {len(pieces.knots)} knots"
+        candidates.append((name, pieces.criterion, "under a noise of its own, not comparable"))
+    powered = _power_candidate(curve, choice, fitted, flow, value, grid)
+    if powered is not None:
+        chosen, criterion = powered
+        asked = choice.family == "power"
+        candidates.append(("power form", criterion, "asked for" if asked else ""))
+        if asked:
+            return chosen, tuple(candidates), "the power form was asked for"
+        if pieces is None and criterion < fitted.best.criterion - CLEARLY:
+            return chosen, tuple(candidates), "the power form predicts best (smallest AICc)"
     if pieces is not None and choice.family != "polynomial":
         missed = float(
             np.sqrt(np.mean((value - fitted.basis(flow) @ fitted.best.coefficients) ** 2))
@@ -155,10 +164,17 @@ def _held(member: Member) -> tuple[int, ...]:
     return (0,) if member.terms.shape[1] < member.degree + 1 else ()
 
 
-def _power(
-    curve: Curve, fitted: Average, flow: Array, value: Array, grid: Array
-) -> tuple[Equation, float]:
+def _power_candidate(
+    curve: Curve, choice: Choice, fitted: Average, flow: Array, value: Array, grid: Array
+) -> tuple[Equation, float] | None:
+    """The power form and its criterion, where it is asked for or the quantity may have it."""
+    asked = choice.family == "power"
+    free = choice.family == "auto" and choice.degree is None and not choice.without
+    if not asked and not (free and curve.quantity in POWERED and fitted.low >= 0):
+        return None
     found = fit_power(flow, value, fitted.noise.whitener)
+    if not found.settled and not asked:
+        return None
     if not found.settled:
         raise InputError(
             f"no power form follows curve {curve.name!r}: its exponent runs to "
@@ -173,7 +189,9 @@ def _power(
     turn = np.diag([1.0, -1.0 if "H0" in names else 1.0, 1.0])
     covariance = turn @ (found.cofactor * scale) @ turn
     at = power(np.maximum(grid, 0.0), constant, factor, exponent)
-    return Equation("power", at, None, None, names, covariance), found.squares
+    m = len(flow)  # three parameters and the noise's scale
+    criterion = m * np.log(max(found.squares, 1e-300) / m) + 8 + 40 / max(m - 5, 1e-3)
+    return Equation("power", at, None, None, names, covariance), float(criterion)
 
 
 def power_names(quantity: str, constant: float, factor: float, exponent: float) -> dict[str, float]:

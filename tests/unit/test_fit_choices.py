@@ -66,6 +66,17 @@ def test_power_form_of_a_traced_head():
     assert abs(one.parameters["n"] - 2.3) < 4 * u[2]
 
 
+def test_the_power_form_is_chosen_where_it_predicts_best():
+    one = fit_curve(traced(u=0.002))
+    assert one.family == "power"
+    assert "predicts best" in one.reason
+    criteria = {name: value for name, value, _ in one.candidates}
+    assert min(criteria, key=criteria.get) == "power form"
+    bent = fit_curve(traced(true=30 - 9 * (FLOW / 0.04) ** 2.3 - 2 * np.exp(-FLOW / 0.01)))
+    assert bent.family == "polynomial"
+    assert "power form" in {name for name, _, _ in bent.candidates}
+
+
 def test_power_form_of_npsh():
     true = power(FLOW, 1.4, 1.1 / 0.04**2.1, 2.1)
     one = fit_curve(traced("npsh_required", true, u=0.001), Choice(family="power"))
@@ -114,7 +125,8 @@ def test_efficiency_runs_through_zero_where_the_line_does():
 def test_wiggles_are_taken_out_where_the_line_allows():
     """A flat start with noise: a free polynomial turns several times, one turn fits as well."""
     true = 30 - 9 * (FLOW / 0.04) ** 5
-    shapes = [fit_curve(traced(true=true, u=0.02, seed=s)) for s in range(12)]
+    free = Choice(family="polynomial")
+    shapes = [fit_curve(traced(true=true, u=0.02, seed=s), free) for s in range(12)]
     for one in shapes:
         turns = extrema(one.coefficients, *one.flow_range_si)
         assert len(turns) <= 1 or "fit.shape-free" in codes(one)
