@@ -43,6 +43,8 @@ def long_lines(ink: NDArray[np.uint8], along_x: bool, shortest: int) -> list[Lin
     wide = cv2.morphologyEx(image, cv2.MORPH_OPEN, np.ones((max(9, shortest // 7), 1), np.uint8))
     thin = cv2.subtract(image, wide)
     dark = thin > _threshold(thin)
+    if dark.mean() > 0.5:  # speckle, no drawing
+        return []
     band = cv2.dilate(dark.astype(np.uint8), np.ones((3, 1), np.uint8))
     band = cv2.morphologyEx(band, cv2.MORPH_CLOSE, np.ones((1, gap), np.uint8))
     band = cv2.morphologyEx(band, cv2.MORPH_OPEN, np.ones((1, shortest), np.uint8))

@@ -69,8 +69,8 @@ def _given_turn(page_notes: PageNotes, panel_notes: tuple[PanelNotes, ...]) -> i
     return None
 
 
-def _drawn(sheet: Sheet, plots: list[Plot]) -> tuple[NDArray[np.int16], Image, Image]:
-    """Per straightened pixel: which box it lies in, and where sides and ticks are drawn."""
+def _drawn(sheet: Sheet, plots: list[Plot]) -> tuple[NDArray[np.int16], Image, Image, Image]:
+    """Per straightened pixel: the box it lies in, and where sides, ticks and long lines are."""
     import cv2
 
     zone = np.zeros(sheet.flat.shape, np.int16)
@@ -82,7 +82,12 @@ def _drawn(sheet: Sheet, plots: list[Plot]) -> tuple[NDArray[np.int16], Image, I
         for bar in plot.bars:
             shape = project(sheet.matrix, plot.warp.to_page(bar))
             cv2.fillPoly(ticks, [np.round(shape).astype(np.int32)], 1)
-    return zone, frame, ticks
+    rules = np.zeros(sheet.flat.shape, np.uint8)
+    for lines, swap in ((sheet.across, 1), (sheet.upright, -1)):
+        for line in lines:
+            ends = [(round(x), round(line.at))[::swap] for x in (line.lo, line.hi)]
+            cv2.line(rules, *ends, 1, 7)
+    return zone, frame, ticks, rules
 
 
 def _wanted(lettering: Lettering, plots: list[Plot], s: Settings) -> list[TextLine]:

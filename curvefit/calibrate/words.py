@@ -32,7 +32,9 @@ class Lettering:
     lines: tuple[TextLine, ...]
 
 
-def find_text(flat: Image, zone_of: NDArray[np.int16], frame: Image, ticks: Image) -> Lettering:
+def find_text(
+    flat: Image, zone_of: NDArray[np.int16], frame: Image, ticks: Image, rules: Image
+) -> Lettering:
     """Where text stands on the straightened page.
 
     Parameters
@@ -44,12 +46,15 @@ def find_text(flat: Image, zone_of: NDArray[np.int16], frame: Image, ticks: Imag
     frame, ticks : arrays of the same shape
         Not 0 where the sides of the boxes and their ticks are drawn; what touches a side is a
         tick or a curve.
+    rules : array of the same shape
+        Not 0 near the long lines that were found.
     """
     import cv2
 
     dark = (flat > _threshold(flat)).astype(np.uint8)
     long_side = max(flat.shape)
-    drawn = (frame > 0) | (ticks > 0) | _long_runs(dark, max(30, int(0.024 * long_side)), zone_of)
+    runs = _long_runs(dark, max(30, int(0.024 * long_side)), zone_of, rules)
+    drawn = (frame > 0) | (ticks > 0) | runs
     dark[drawn] = 0
     letters = letters_of(dark, _TALLEST * long_side)
     at_side = np.unique(letters.label[cv2.dilate(frame, np.ones((3, 3), np.uint8)) > 0])
@@ -72,10 +77,13 @@ def _threshold(flat: Image) -> float:
     return float(np.clip(0.3 * np.percentile(some, 95), 36, 80)) if some.size else 255.0
 
 
-def _long_runs(dark: Image, shortest: int, zone_of: NDArray[np.int16]) -> NDArray[np.bool_]:
+def _long_runs(
+    dark: Image, shortest: int, zone_of: NDArray[np.int16], rules: Image
+) -> NDArray[np.bool_]:
     """Where straight lines along x or y run, a pixel wider on each side.
 
-    Inside a plot box short pieces count too (a grid broken by curves), outside only long ones.
+    Inside a plot box short pieces of the lines found count too (a grid broken by curves); letters
+    in a row run on as long, so that elsewhere only long runs do.
     """
     import cv2
 
@@ -88,8 +96,12 @@ def _long_runs(dark: Image, shortest: int, zone_of: NDArray[np.int16]) -> NDArra
         closed = cv2.morphologyEx(dark, cv2.MORPH_CLOSE, bar(5))
         # a heading is as long as a line, but thicker
         thick = cv2.morphologyEx(closed, cv2.MORPH_OPEN, np.ones((9, 9), np.uint8))
-        inside = cv2.morphologyEx(closed * (zone_of > 0), cv2.MORPH_OPEN, bar(shortest))
-        outside = cv2.morphologyEx(dark * (zone_of == 0), cv2.MORPH_OPEN, bar(2 * shortest))
+        within = closed * (zone_of > 0).astype(np.uint8)
+        inside = cv2.morphologyEx(within, cv2.MORPH_OPEN, bar(shortest)) * (rules > 0)
+        inside |= cv2.morphologyEx(within, cv2.MORPH_OPEN, bar(5 * shortest))
+        outside = cv2.morphologyEx(
+            dark * (zone_of == 0).astype(np.uint8), cv2.MORPH_OPEN, bar(2 * shortest)
+        )
         outside[thick > 0] = 0
         wide = np.ones((3, 1) if along_x else (1, 3), np.uint8)
         runs |= cv2.dilate((inside | outside).astype(np.uint8), wide) > 0

@@ -1,0 +1,211 @@
+"""Plot boxes, ticks and words gathered from drawn pages whose geometry is known."""
+
+import numpy as np
+import pytest
+
+from curvefit.calibrate.pixels import gather
+from curvefit.geometry import project
+from curvefit.notes import PageNotes, PanelNotes
+from curvefit.records import Page
+
+FINE = 4  # drawn so many times finer, then averaged: lines lie between pixels
+RNG_SEED = 7
+
+
+def page_of(pixels: np.ndarray) -> Page:
+    rgb = np.repeat(pixels[:, :, None], 3, 2) if pixels.ndim == 2 else pixels
+    h, w = rgb.shape[:2]
+    return Page("drawn.png", "", 1, rgb, (w, h))
+
+
+def drawn(size, segments, matrix=None, width=2.0, level=0):
+    """A page (h, w) of grey with straight segments (x0, y0, x1, y1), sub-pixel true."""
+    import cv2
+
+    w, h = size
+    fine = np.full((h * FINE, w * FINE), 255, np.uint8)
+    for x0, y0, x1, y1 in segments:
+        ends = np.array([[x0, y0], [x1, y1]], float)
+        if matrix is not None:
+            ends = project(matrix, ends)
+        # the centre of a coarse pixel lies at (FINE - 1) / 2 of its fine ones
+        p, q = (tuple(round(v) for v in e) for e in (ends * FINE + (FINE - 1) / 2) * 256)
+        cv2.line(fine, p, q, level, int(width * FINE), cv2.LINE_AA, 8)
+    return fine.reshape(h, FINE, w, FINE).mean((1, 3)).astype(np.uint8)
+
+
+def box_segments(left, top, right, bottom, ticks=(), grid=()):
+    sides = [
+        (left, top, right, top),
+        (right, top, right, bottom),
+        (right, bottom, left, bottom),
+        (left, bottom, left, top),
+    ]
+    x = [left + t * (right - left) for t in ticks]
+    y = [bottom - t * (bottom - top) for t in ticks]
+    marks = [(a, bottom, a, bottom + 9) for a in x] + [(left - 9, a, left, a) for a in y]
+    gx = [left + t * (right - left) for t in grid]
+    gy = [bottom - t * (bottom - top) for t in grid]
+    lines = [(a, top, a, bottom) for a in gx] + [(left, a, right, a) for a in gy]
+    return sides + marks + lines
+
+
+def corners(left, top, right, bottom, matrix=None):
+    xy = np.array([[left, top], [right, top], [right, bottom], [left, bottom]], float)
+    return xy if matrix is None else project(matrix, xy)
+
+
+def boxes(pixels, turn=0, panels=()):
+    return gather(page_of(pixels), PageNotes(turn=turn), tuple(panels))
+
+
+SKEW = np.array([[0.9995, 0.03, -8.0], [-0.03, 0.9995, 22.0], [0, 0, 1]])
+TILT = np.array([[1.0, 0.02, 5.0], [0.01, 1.0, 3.0], [4e-5, 2.5e-5, 1.0]])
+
+
+@pytest.mark.parametrize("matrix", [None, SKEW, TILT], ids=["straight", "skewed", "in perspective"])
+@pytest.mark.parametrize("grid", [(), (0.2, 0.4, 0.6, 0.8)], ids=["bare", "grid"])
+def test_corners_are_found_to_a_fraction_of_a_pixel(matrix, grid):
+    frame = (151.3, 98.6, 902.7, 603.2)
+    ticks = np.linspace(0, 1, 6)
+    found = boxes(drawn((1100, 760), box_segments(*frame, ticks, grid), matrix))
+    assert len(found) == 1
+    assert np.abs(found[0].corners - corners(*frame, matrix)).max() < 0.25
+
+
+def test_ticks_are_found_with_their_kind_and_place():
+    frame, at = (150.0, 100.0, 900.0, 600.0), np.array([0.0, 0.25, 0.5, 0.75, 1.0])
+    [e] = boxes(drawn((1100, 760), box_segments(*frame, at, (0.25, 0.5, 0.75))))
+    rows = {(r.side, r.kind): r for r in e.ticks}
+    for side, span in (("bottom", 750), ("left", 500)):
+        outside, grid = rows[side, "outside"], rows[side, "grid"]
+        for row in (outside, grid):
+            near = np.abs(row.at[:, None] - at).min(0) * span
+            assert near.max() < 0.3
+            assert (row.u * span >= 0.35 - 1e-9).all()
+    assert ("right", "outside") not in rows
+
+
+def test_two_spines_without_a_frame_make_a_box():
+    lines = [(150, 80, 150, 600), (150, 600, 900, 600)]
+    lines += [(x, 600, x, 609) for x in (150, 300, 450, 600, 750, 900)]
+    [e] = boxes(drawn((1050, 760), lines))
+    assert np.abs(e.corners - corners(150, 80, 900, 600)).max() < 2.5
+
+
+def test_stacked_boxes_come_from_top_to_bottom():
+    frames = [(120, 60, 820, 300), (120, 400, 820, 640), (120, 740, 820, 980)]
+    found = boxes(drawn((950, 1100), [s for f in frames for s in box_segments(*f, (0, 0.5, 1))]))
+    assert len(found) == 3
+    for e, f in zip(found, frames, strict=True):
+        assert np.abs(e.corners - corners(*f)).max() < 0.3
+
+
+def test_a_scale_of_its_own_outside_the_box_is_seen():
+    lines = [*box_segments(250, 80, 900, 600, (0, 0.5, 1)), (130, 80, 130, 600)]
+    lines += [(121, y, 130, y) for y in (80, 210, 340, 470, 600)]
+    [e] = boxes(drawn((1050, 760), lines))
+    further = [r for r in e.ticks if r.side == "left" and r.offset > 0 and r.kind == "outside"]
+    assert len(further) == 1
+    assert further[0].offset == pytest.approx(120, abs=1.5)
+    assert np.allclose(further[0].at, [0, 0.25, 0.5, 0.75, 1], atol=0.002)
+
+
+def test_noise_of_a_black_and_white_copy_breaks_no_box():
+    rng = np.random.default_rng(RNG_SEED)
+    frame = (150.0, 100.0, 900.0, 600.0)
+    grey = drawn((1100, 760), box_segments(*frame, (0, 0.5, 1), (0.5,))).astype(float)
+    copy = np.where(grey + rng.normal(0, 45, grey.shape) > 128, 255, 0).astype(np.uint8)
+    copy[rng.random(copy.shape) < 0.002] = 0
+    [e] = boxes(copy)
+    assert np.abs(e.corners - corners(*frame)).max() < 0.6
+
+
+@pytest.mark.parametrize("kind", ["blank", "cloud", "speckle"])
+def test_pages_without_a_chart_hold_no_box(kind):
+    import cv2
+
+    rng = np.random.default_rng(RNG_SEED)
+    pixels = np.full((800, 600), 255, np.uint8)
+    if kind == "cloud":
+        pixels = cv2.GaussianBlur(rng.integers(0, 255, (800, 600)).astype(np.uint8), (0, 0), 12)
+    if kind == "speckle":
+        pixels = rng.integers(0, 255, (800, 600)).astype(np.uint8)
+    assert boxes(pixels) == ()
+
+
+def test_given_corners_make_a_box_where_none_is_seen():
+    given = ((100.0, 90.0), (500.0, 92.0), (498.0, 400.0), (101.0, 398.0))
+    [e] = boxes(np.full((600, 700), 255, np.uint8), panels=[PanelNotes(name="A", corners=given)])
+    assert np.allclose(e.corners, given)
+
+
+def test_given_corners_tell_the_turn_and_replace_a_found_box():
+    frame = (150.0, 100.0, 900.0, 600.0)
+    pixels = drawn((1100, 760), box_segments(*frame, (0, 0.5, 1)))
+    start_below = tuple(map(tuple, np.roll(corners(*frame), 1, axis=0)))
+    found = gather(page_of(pixels), PageNotes(), (PanelNotes(corners=start_below),))
+    assert len(found) == 1
+    assert found[0].turn == 1
+    assert np.allclose(found[0].corners, start_below)
+
+
+def test_a_dropped_box_is_left_out():
+    frames = [(120, 60, 820, 300), (120, 400, 820, 640)]
+    pixels = drawn((950, 760), [s for f in frames for s in box_segments(*f, (0, 0.5, 1))])
+    found = boxes(pixels, panels=[PanelNotes(box=(110, 390, 830, 650), drop=True)])
+    assert len(found) == 1
+    assert found[0].corners[0, 1] == pytest.approx(60, abs=0.3)
+
+
+def chart(turn=0, dpi=150):
+    """A plotted chart as pixels, its plot box in px (left, top, right, bottom), upright."""
+    from matplotlib.backends.backend_agg import FigureCanvasAgg
+    from matplotlib.figure import Figure
+
+    figure = Figure(figsize=(7, 5), dpi=dpi)
+    canvas = FigureCanvasAgg(figure)
+    axes = figure.add_axes((0.14, 0.14, 0.78, 0.76))
+    q = np.linspace(0, 110, 50)
+    axes.plot(q, 46 - 0.0022 * q**2, color="black")
+    axes.set(xlim=(0, 120), ylim=(0, 50), xlabel="Flow [m³/h]", ylabel="Total head [m]")
+    axes.set_title("n = 2900 1/min")
+    axes.text(40, 25, "Ø210")
+    canvas.draw()
+    pixels = np.asarray(canvas.buffer_rgba())[:, :, :3]
+    return np.ascontiguousarray(np.rot90(pixels, turn))
+
+
+def texts_beside(evidence, side):
+    """Words next to a side of the box, by their place along it."""
+    w, h = evidence.warp.size
+    out = {}
+    for word in evidence.words:
+        x, y = evidence.warp.to_panel(word.centre[None])[0]
+        if side == "bottom" and h < y < h + 45 and -20 < x < w + 20:
+            out[round(x / w, 2)] = word.text
+        if side == "left" and -45 < x < 0 and -20 < y < h + 20:
+            out[round(1 - y / h, 2)] = word.text
+    return [out[k] for k in sorted(out)]
+
+
+@pytest.mark.parametrize("turn", [0, 1, 2, 3])
+def test_a_turned_chart_is_set_upright_and_its_numbers_are_read(turn):
+    """`turn` quarters anticlockwise on paper need as many clockwise to set it upright."""
+    [e] = gather(page_of(chart(turn)), PageNotes(), ())
+    assert e.turn == turn
+    assert texts_beside(e, "bottom") == ["0", "20", "40", "60", "80", "100", "120"]
+    assert texts_beside(e, "left") == ["0", "10", "20", "30", "40", "50"]
+    texts = [w.text for w in e.words]
+    assert "Flow [m³/h]" in texts
+    assert "Total head [m]" in texts
+    assert any("2900" in t for t in texts)
+    assert any(t.endswith("210") for t in texts)
+
+
+def test_a_second_look_reads_the_number_at_a_place():
+    [e] = gather(page_of(chart()), PageNotes(turn=0), ())
+    word = next(w for w in e.words if w.text == "80")
+    assert e.look is not None
+    out = (word.box - word.centre) * 1.25 + word.centre
+    assert e.look([out])[0][0] == "80"
