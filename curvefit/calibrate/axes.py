@@ -15,7 +15,7 @@ from curvefit.calibrate.consensus import (
     near_value,
 )
 from curvefit.calibrate.doubts import doubts_of
-from curvefit.calibrate.evidence import Evidence
+from curvefit.calibrate.evidence import Evidence, TickRow
 from curvefit.calibrate.given import given_axes
 from curvefit.calibrate.labels import row_readings
 from curvefit.calibrate.naming import name_axes
@@ -86,7 +86,9 @@ def scales(
     for f in found:
         findings += f.doubts
     if evidence.look is not None or not evidence.exact:
-        findings += too_wide({f.name: pitch_of(f.progression.labels) for f in found})
+        findings += too_wide(
+            {f.name: pitch_of(f.progression.labels, f.progression.chosen) for f in found}
+        )
     order_of = {side: k for k, side in enumerate(("bottom", "top", "left", "right"))}
     axes = sorted(axes, key=lambda a: (order_of[a.side], a.name))
     words = tuple(s.word for s in rest)
@@ -135,7 +137,7 @@ def _read(
     return Found(name, column, progression, scale, tuple(doubts)), []
 
 
-def _rows(evidence: Evidence, column: Column) -> list[object]:
+def _rows(evidence: Evidence, column: Column) -> list[TickRow]:
     """Ticks that may carry the column: on the side of the box, or on a line of their own."""
     facing = {"bottom": "top", "top": "bottom", "left": "right", "right": "left"}[column.side]
     own = [r for r in evidence.ticks if r.side == column.side]

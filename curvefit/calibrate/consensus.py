@@ -178,7 +178,7 @@ def _proposals(labels: Sequence[Label], log: bool, settings: Settings) -> list[t
         span = abs(b[k])
         if all(abs(a[k] - a0) + abs(b[k] - b0) > 0.02 * span for a0, b0 in out):
             out.append((float(a[k]), float(b[k])))
-        if len(out) == settings.kept:
+        if len(out) == settings.kept or score[k] < 0.3 * score.max():
             break
     return out
 

@@ -70,7 +70,9 @@ def _meaning(axis: Axis, entry: AxisNotes) -> Axis:
         if axis.unit == u.code and axis.printed_unit:
             factor = axis.factor
         axis = replace(axis, unit=u.code, printed_unit=u.print, factor=factor, guessed=False)
-        if (entry.quantity is None and axis.quantity and _dimension(axis.quantity) != u.dimension) or (entry.quantity is None and axis.quantity is None):
+        if (
+            entry.quantity is None and axis.quantity and _dimension(axis.quantity) != u.dimension
+        ) or (entry.quantity is None and axis.quantity is None):
             axis = replace(axis, quantity=_of_dimension(u.dimension))
     if entry.quantity is not None:
         axis = replace(axis, quantity=entry.quantity, guessed=False)

@@ -64,7 +64,7 @@ def numeric(text: str) -> bool:
 def parts(text: str) -> tuple[Part, ...]:
     """The numbers of a text that holds several with blanks between ("0 20 40"), else the text."""
     clean = text.translate(_PLAIN).strip()
-    pieces = [m for m in _MERGED_BLANK.finditer(clean)]
+    pieces = list(_MERGED_BLANK.finditer(clean))
     whole = (Part(text, 0.0, 1.0),)
     if len(pieces) < 2 or re.fullmatch(r"[-+]?\d{1,3}( \d{3})+([.,]\d+)?", clean):
         return whole

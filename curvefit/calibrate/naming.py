@@ -100,16 +100,16 @@ def _read_again(
 
 def _beyond(column: Column, text: Sequence[Spot], size: tuple[float, float]) -> list[Spot]:
     """Words outside the numbers of a side, the nearest first, longer ones before crumbs."""
-    found = []
+    found: list[tuple[float, float, int, Spot]] = []
     flat = column.side in ("bottom", "top")
     for s in text:
         near, far = outward(s, column.side, size)
         x, y = s.middle
         along = x / size[0] if flat else 1 - y / size[1]
-        if near > column.far - 0.4 * column.height and -0.05 < along < 1.05:
-            if near - column.far < 5 * column.height and any(c.isalpha() for c in s.word.text):
-                short = len(s.word.text) < 2
-                found.append((near + 2 * column.height * short, far, id(s), s))
+        beyond = -0.4 * column.height < near - column.far < 5 * column.height
+        if beyond and -0.05 < along < 1.05 and any(c.isalpha() for c in s.word.text):
+            crumb = 2 * column.height * (len(s.word.text) < 2)
+            found.append((near + crumb, far, len(found), s))
     return [f[3] for f in sorted(found)]
 
 
@@ -175,7 +175,7 @@ def _reading(s: Spot, quarter: int) -> tuple[float, float, float, float]:
 
 
 def _cost(axis: Axis, column: Column, c: Candidate, size: tuple[float, float]) -> float:
-    """Distance of a title from the numbers of an axis in heights of type, and what speaks against."""
+    """Distance of a title from an axis's numbers in heights of type, and what speaks against."""
     if not _suits(axis, c.title):
         return 1e9
     w, h = size
@@ -207,7 +207,7 @@ def _cost(axis: Axis, column: Column, c: Candidate, size: tuple[float, float]) -
     if not axis.along_flow and not turned and 0.15 * h < (y0 + y1) / 2 < 0.85 * h:
         cost += 1.0
     cost += {0: 20.0, 1: 3.0, 2: 1.5, 3: 0.0}[c.title.strength]
-    return cost + 1.0 * c.title.guessed + 0.5 * (len(c.words) - 1)
+    return float(cost) + 1.0 * c.title.guessed + 0.5 * (len(c.words) - 1)
 
 
 def _suits(axis: Axis, title: Title) -> bool:
@@ -215,8 +215,7 @@ def _suits(axis: Axis, title: Title) -> bool:
     if axis.along_flow != flow:
         return False
     if title.dimension == "ratio":
-        top = max(axis.value([0.0, 1.0]))  # type: ignore[arg-type]
-        return bool(top <= 200)
+        return bool(axis.value(np.array([0.0, 1.0])).max() <= 200)
     return True
 
 

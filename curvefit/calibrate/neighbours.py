@@ -1,4 +1,4 @@
-"""What axes say of each other: a second flow scale on top, the panels of a stack, head in m and ft."""
+"""What axes say of each other: a second flow scale on top, the panels of a stack."""
 
 from __future__ import annotations
 
@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from curvefit.calibrate.naming import gallon_finding
 from curvefit.calibrate.titles import read_title
@@ -15,6 +16,7 @@ from curvefit.units import to_si
 
 __all__ = ["checked_together"]
 
+Array = NDArray[np.float64]
 _FLOWS = ("m3/h", "L/s", "L/min", "[gal_us]/min", "[gal_br]/min", "m3/s")
 _POWERS_OF_TEN = (0.001, 0.01, 0.1, 10.0, 100.0, 1000.0)
 
@@ -26,7 +28,7 @@ def checked_together(panels: Sequence[Panel]) -> tuple[Panel, ...]:
     return tuple(_gallons(p) for p in out)
 
 
-def _ends_si(axis: Axis, unit: str | None = None) -> np.ndarray:  # type: ignore[type-arg]
+def _ends_si(axis: Axis, unit: str | None = None) -> Array:
     return np.asarray(to_si(axis.value(np.array([0.0, 1.0])), unit or axis.unit or "1"))
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -75,26 +75,15 @@ def calibrate(
 
 def _gathered(
     page: Page, page_notes: PageNotes, panel_notes: tuple[PanelNotes, ...]
-) -> list[tuple[Evidence, ...]] | _Lazy:
-    return _Lazy(page, page_notes, panel_notes)
-
-
-@dataclass(frozen=True, slots=True)
-class _Lazy:
+) -> Iterator[tuple[Evidence, ...]]:
     """Evidence from strokes where there are any, then from pixels if those gave no axes."""
+    if page.vector:
+        from curvefit.calibrate.strokes import gather as from_strokes
 
-    page: Page
-    page_notes: PageNotes
-    panel_notes: tuple[PanelNotes, ...]
+        yield from_strokes(page, page_notes, panel_notes)
+    from curvefit.calibrate.pixels import gather as from_pixels
 
-    def __iter__(self):  # type: ignore[no-untyped-def]
-        if self.page.vector:
-            from curvefit.calibrate.strokes import gather as from_strokes
-
-            yield from_strokes(self.page, self.page_notes, self.panel_notes)
-        from curvefit.calibrate.pixels import gather as from_pixels
-
-        yield from_pixels(self.page, self.page_notes, self.panel_notes)
+    yield from_pixels(page, page_notes, panel_notes)
 
 
 def _drafts(evidences: Sequence[Evidence], panel_notes: tuple[PanelNotes, ...]) -> list[Draft]:
@@ -165,7 +154,7 @@ def _words_of_boxes(evidences: Sequence[Evidence]) -> list[tuple[Word, ...]]:
 
 
 def _distance(e: Evidence, word: Word, number: bool) -> float:
-    """How far a word stands outside a box [page px]; a title belongs above all to the box over it."""
+    """How far a word stands outside a box [page px]; a title belongs to the box above it first."""
     flat = e.warp.to_panel(word.box)
     if not np.isfinite(flat).all():
         return 1e9
@@ -273,9 +262,10 @@ def _with_shared_flow(drafts: list[Draft]) -> list[Draft]:
         if any(a.along_flow for a in d.axes) or not d.axes:
             continue
         donors = [
-            o for o in drafts
-            if o is not d and any(a.along_flow for a in o.axes) and _same_edges(d.evidence, o.evidence)
-        ]  # fmt: skip
+            o
+            for o in drafts
+            if any(a.along_flow for a in o.axes) and _same_edges(d.evidence, o.evidence)
+        ]
         if not donors:
             continue
         mid = _upright(d.evidence)[:, 1].mean()

@@ -13,6 +13,7 @@ import numpy as np
 
 from curvefit.calibrate.consensus import Label
 from curvefit.calibrate.doubts import marks_remedy
+from curvefit.calibrate.labels import Reading
 from curvefit.errors import Location
 from curvefit.records import Finding
 
@@ -25,15 +26,16 @@ _WIDEST = 1.08
 _UNLIKE = 1.15
 
 
-def pitch_of(labels: Sequence[Label]) -> Pitch | None:
+def pitch_of(labels: Sequence[Label], chosen: Sequence[Reading | None]) -> Pitch | None:
     """Width of a figure as read, in heights of the type; None where too few numbers tell."""
     found = []
-    for lb in labels:
+    for lb, reading in zip(labels, chosen, strict=True):
         if lb.word is None or not lb.firm or not re.fullmatch(r"\d+([.,]\d+)?", lb.text):
             continue
         digits = sum(c.isdigit() for c in lb.text)
         # a point takes half the room of a figure, a 1 has white at its sides
-        room = digits + 0.5 * (len(lb.text) - digits) - 0.1 * lb.text.count("1")
+        put_in = 0.5 * (reading is not None and "put in" in reading.how)
+        room = digits + put_in + 0.5 * (len(lb.text) - digits) - 0.1 * lb.text.count("1")
         found.append((lb.word.width / lb.word.height + 0.15) / room)
     return float(np.median(found)) if len(found) >= 3 else None
 

@@ -131,7 +131,7 @@ def _on_ends(
 def _candidates(rows: Sequence[TickRow], close: float) -> list[tuple[str, Array, Array, Array]]:
     """The rows that can carry a scale: each alone and with the corners of the box."""
     ends = [r for r in rows if r.kind == "end"]
-    out = []
+    out: list[tuple[str, Array, Array, Array]] = []
     for row in rows:
         if row.kind == "end" or len(row.at) < 1:
             continue

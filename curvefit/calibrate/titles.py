@@ -12,6 +12,7 @@ from dataclasses import dataclass, replace
 from functools import lru_cache
 
 from curvefit.calibrate.consensus import text_distance
+from curvefit.calibrate.lexicon import MISREAD_UNITS, SYMBOLS, WORDS
 from curvefit.errors import InputError
 from curvefit.records import QUANTITIES
 from curvefit.units import UNITS, Unit, fold, parse
@@ -43,171 +44,6 @@ class Title:
         return 2 * (self.unit is not None) + (self.quantity is not None)
 
 
-# first the words that contain or resemble others: "NPSH required" is no flow, "pump head" no NPSH
-_WORDS: tuple[tuple[str, tuple[str, ...]], ...] = (
-    (
-        "npsh_required",
-        ("npsh", "npshr", "npsh3", "npshreq", "npsherf", "haltedruckhohe", "netpositive"),
-    ),
-    (
-        "differential_pressure",
-        (
-            "differentialpressure",
-            "druckdifferenz",
-            "differenzdruck",
-            "pressiondifferentielle",
-            "presiondiferencial",
-            "pressionedifferenziale",
-            "pressurerise",
-            "deltap",
-            "δp",
-            "∆p",
-            "druckerhohung",
-            "pressure",
-            "pression",
-            "pressione",
-            "presion",
-            "pressao",
-            "druck",
-            "deltap",
-        ),
-    ),
-    (
-        "overall_efficiency",
-        (
-            "overallefficiency",
-            "totalefficiency",
-            "gesamtwirkungsgrad",
-            "rendementglobal",
-            "rendementtotal",
-            "rendimientototal",
-            "rendimientoglobal",
-            "rendimentototale",
-            "rendimentototal",
-            "rendimentoglobal",
-            "wiretowater",
-            "unitefficiency",
-            "aggregatwirkungsgrad",
-        ),
-    ),
-    (
-        "efficiency",
-        (
-            "efficiency",
-            "effic",
-            "eff",
-            "wirkungsgrad",
-            "rendement",
-            "rendimiento",
-            "rendimento",
-            "eficiencia",
-            "efficienza",
-            "pumpefficiency",
-            "eta",
-            "pumpenwirkungsgrad",
-            "hydraulicefficiency",
-        ),
-    ),
-    (
-        "input_power",
-        (
-            "inputpower",
-            "powerinput",
-            "electricalpower",
-            "electricpower",
-            "leistungsaufnahme",
-            "motorinput",
-            "puissanceelectrique",
-            "potenciaelectrica",
-            "potenzaelettrica",
-            "aufnahmeleistung",
-        ),
-    ),
-    (
-        "shaft_power",
-        (
-            "power",
-            "shaftpower",
-            "bhp",
-            "brakehorsepower",
-            "brakepower",
-            "absorbedpower",
-            "leistung",
-            "leistungsbedarf",
-            "wellenleistung",
-            "kupplungsleistung",
-            "puissance",
-            "potencia",
-            "potenza",
-            "horsepower",
-            "shp",
-            "antriebsleistung",
-            "pumpinput",
-        ),
-    ),
-    (
-        "flow",
-        (
-            "flow",
-            "flowrate",
-            "capacity",
-            "discharge",
-            "volumeflow",
-            "delivery",
-            "forderstrom",
-            "volumenstrom",
-            "fordermenge",
-            "durchfluss",
-            "debit",
-            "caudal",
-            "portata",
-            "vazao",
-            "gasto",
-            "capacite",
-            "capacidad",
-            "fordervolumenstrom",
-            "rateofflow",
-            "debet",
-            "quantity",
-            "rate",
-            "caudale",
-            "debito",
-        ),
-    ),
-    (
-        "head",
-        (
-            "head",
-            "totalhead",
-            "tdh",
-            "forderhohe",
-            "hauteur",
-            "hauteurmanometrique",
-            "hmt",
-            "altura",
-            "alturamanometrica",
-            "prevalenza",
-            "gesamtforderhohe",
-            "dynamichead",
-            "carga",
-            "hauteurtotale",
-            "hman",
-            "alturadeelevacao",
-            "lift",
-            "deliveryhead",
-            "foerderhoehe",
-        ),
-    ),
-)
-_SYMBOLS: dict[str, tuple[str, bool]] = {
-    "q": ("flow", True), "v": ("flow", False), "qv": ("flow", True), "h": ("head", True),
-    "η": ("efficiency", True), "p": ("shaft_power", True), "p2": ("shaft_power", True),
-    "p1": ("input_power", True), "n": ("efficiency", False), "ŋ": ("efficiency", True),
-    "y": ("efficiency", False), "ή": ("efficiency", True), "dp": ("differential_pressure", True),
-    "pa": ("shaft_power", False), "ph": ("shaft_power", False), "hm": ("head", False),
-    "ηp": ("efficiency", True), "ηgr": ("overall_efficiency", True), "pw": ("shaft_power", False),
-    "ηtot": ("overall_efficiency", True), "pabs": ("shaft_power", True), "pe": ("input_power", False),
-}  # fmt: skip
 _DIMENSIONS = ("flow", "length", "ratio", "power", "pressure")
 _DEFAULT = {"flow": "flow", "ratio": "efficiency", "power": "shaft_power"}
 _BARE_GALLON = {
@@ -356,18 +192,14 @@ def _unit(printed: str) -> tuple[Unit, bool] | None:
         u = parse(text)
         if u.dimension in _DIMENSIONS and u.code != "1":
             return u, True
+        if u.code == "/min":
+            return None  # a speed, not litres in a minute with a misread l
     except InputError:
         pass  # no spelling as it stands: perhaps with look-alikes
     folded = fold(text.rstrip(".")).translate(_ALIKE)
     if folded in _folded() and len(folded) > 1:
         return _folded()[folded], False
-    patterns = (
-        (r"/5|/s|[1l]/[s5]|[t(j]/s|[1l][/1l]s|[1l]75", "L/s"), (r"m.{0,2}/[hnb]r?|m3h|m.?[1l]h", "m3/h"),
-        (r"9%|%0|96|q%|o/o|0/0|°/o|°/0|y%|%6|[°o]/[°o]|%[1l\]]", "%"), (r"k[wvn]{1,2}|xw", "kW"),
-        (r"u[s5]gpm|u[s5]9pm|[o0]5gpm", "[gal_us]/min"), (r"u[s5]ga[1l]/m[1li]n|u[s5]9a[1l]/m[1l]n", "[gal_us]/min"),
-        (r"f[t1]|tt|[ft]t", "[ft_i]"), (r"[1l]/m[1l]n", "L/min"),
-    )  # fmt: skip
-    for pattern, code in patterns:
+    for pattern, code in MISREAD_UNITS:
         if re.fullmatch(pattern, folded) or re.fullmatch(pattern, fold(text)):
             return parse(code), False
     return None
@@ -389,13 +221,13 @@ def _quantity(name: str, dimension: str | None) -> tuple[str | None, bool]:
     plain = name.strip().lower().translate(_ACCENTS).replace("ß", "ss")
     tokens = [t for t in re.split(r"[^\wηŋΔ∆δ]+", plain) if t]
     joined = "".join(tokens)
-    for quantity, words in _WORDS:
+    for quantity, words in WORDS:
         if dimension is not None and not _fits(quantity, dimension):
             continue
         for word in words:
             if (len(word) >= 5 and word in joined) or word in tokens or word == joined:
                 return _by_dimension(quantity, dimension), True
-    for quantity, words in _WORDS:  # a letter or two misread
+    for quantity, words in WORDS:  # a letter or two misread
         if dimension is not None and not _fits(quantity, dimension):
             continue
         for word in words:
@@ -409,7 +241,7 @@ def _quantity(name: str, dimension: str | None) -> tuple[str | None, bool]:
     if re.search(r"n.?p.?s.?h", joined) and dimension in (None, "length"):
         return "npsh_required", True
     for token in tokens:
-        known = _SYMBOLS.get(token)
+        known = SYMBOLS.get(token)
         if known and (len(tokens) <= 3) and (dimension is None or _fits(known[0], dimension)):
             if not known[1] and dimension is None:
                 continue

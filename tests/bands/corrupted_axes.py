@@ -11,7 +11,7 @@ from curvefit.geometry import Warp
 from curvefit.records import Word
 
 HEIGHT = 26.0  # of the type [px]
-WIDTH = 0.56  # of a digit, in heights
+WIDTH = 0.78  # from one digit to the next, in heights
 
 
 @dataclass(frozen=True)
@@ -33,19 +33,31 @@ class Scale:
         return (value - self.low) / (self.high - self.low)
 
 
-def steps(side: str, low: float, high: float, step: float, form: str = "{:g}", title: str = "", **k):
+def steps(
+    side: str,
+    low: float,
+    high: float,
+    step: float,
+    form: str = "{:g}",
+    title: str = "",
+    offset: float = 0.0,
+) -> Scale:
     """A linear scale numbered every step."""
     n = round((high - low) / step)
-    return Scale(side, low, high, tuple(low + step * i for i in range(n + 1)), form, title, **k)
+    return Scale(side, low, high, _run(low, step, n), form, title, offset=offset)
+
+
+def _run(first: float, step: float, n: int) -> tuple[float, ...]:
+    return tuple(round(first + step * i, 9) for i in range(n + 1))
 
 
 def _width(text: str) -> float:
-    """Width of printed figures: a point takes half a digit's."""
-    return HEIGHT * WIDTH * (len(text) - 0.5 * text.count("."))
+    """Width of the ink: a point takes half a digit's room, the ends have white about them."""
+    return HEIGHT * (WIDTH * (len(text) - 0.5 * text.count(".") - 0.1 * text.count("1")) - 0.15)
 
 
 def _word(text: str, x: float, y: float, quarter: int = 0, width: float | None = None) -> Word:
-    w, h = width or _width(text), HEIGHT
+    w, h = max(width or _width(text), 6.0), HEIGHT
     box = np.array([[-w, -h], [w, -h], [w, h], [-w, h]]) / 2
     turn = np.array([[0, 1], [-1, 0]]) if quarter else np.eye(2)
     return Word(text, box @ turn.T + [x, y], 0.99)
