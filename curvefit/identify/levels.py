@@ -259,7 +259,8 @@ def _dealt(
 ) -> _Dealt:
     from scipy.optimize import linear_sum_assignment
 
-    holding = [w for w in labels if w.means(kind)]
+    holding = [w for w in labels if any(m.plain for m in w.means(kind))]
+    holding = holding or [w for w in labels if w.means(kind)]  # bare numbers only if all are bare
     dealt: _Dealt = [None] * len(lines)
     if not holding or not lines:
         return dealt

@@ -20,11 +20,15 @@ __all__ = ["again", "along", "at_ends", "missing"]
 
 Array = NDArray[np.float64]
 Image = NDArray[np.uint8]
+_Place = tuple[float, float, float]
 
 _PERCENT = "0123456789.%"
 _ALPHABETS = (None, "0123456789Øø⌀=.,/\"'% ", _PERCENT)
-_AT_ENDS = [[(0, 0), (0, -0.6), (0, -1.2), (1.7, 0)],
-            [(0, 0.6), (0, 1.2), (-1.7, 0), (1.5, -0.7), (-1.5, -0.7)]]  # fmt: skip
+# fmt: off
+# outwards along the line, to the right, down, in heights of the text
+_AT_ENDS = [[(0.0, 0.0, 0.0), (0.0, 0.0, -0.6), (0.8, 0.0, 0.0), (1.5, 0.0, 0.0), (0.8, 0.0, -0.6)],
+            [(0.0, 0.0, 0.6), (0.0, 0.0, 1.2), (0.0, 1.7, 0.0), (0.0, -1.7, 0.0), (2.3, 0.0, 0.0)]]
+# fmt: on
 _LABELS = re.compile(
     r"[Øø⌀∅]\s?\d{2,4}(?:\s?mm)?|(?<!\d)\d{3,4}\s?(?:mm|rpm|1/min)|\d{1,2}(?:[- ]?\d/\d{1,2})?\s?\""
 )
@@ -99,17 +103,25 @@ def _once(labels: Sequence[Label], height: float) -> tuple[Label, ...]:
     return tuple(kept)
 
 
+def _about(trace: Trace, end: int, place: _Place, height: float) -> Array:
+    """A point about the end of a line: so far outwards along it, to the right and down."""
+    xy = trace.flat if end == -1 else trace.flat[::-1]
+    back = np.flatnonzero(np.hypot(*(xy - xy[-1]).T) > 2.0 * height)
+    direction = xy[-1] - xy[back[-1] if len(back) else 0]
+    direction = direction / max(float(np.hypot(*direction)), 1e-9)
+    return np.asarray(xy[-1] + (place[0] * direction + np.array(place[1:])) * height)
+
+
 def _levels_at(
-    panel: Panel, traces: Sequence[Trace], places: Sequence[tuple[float, float]], height: float
-) -> list[tuple[tuple[float, float], Label]]:
+    panel: Panel, traces: Sequence[Trace], places: Sequence[_Place], height: float
+) -> list[tuple[_Place, Label]]:
     from curvefit.ocr import readings
 
     wanted = [
-        (place, _box(panel, trace.flat[end] + np.array(place) * height, np.array(size) * height))
+        (place, _box(panel, _about(trace, end, place, height), np.array([1.6, 0.72]) * height))
         for trace in traces
         for end in (0, -1)
         for place in places
-        for size in ((1.6, 0.72),)
     ]
     crops = [(place, box, _crop(panel.page, box)) for place, box in wanted]
     kept = [(place, box, crop) for place, box, crop in crops if crop is not None]
