@@ -206,9 +206,11 @@ def _family_fits(
     """One fit of each quantity of one pump, at the diameter and speed asked for."""
     from curvefit.errors import ChartError, InputError
     from curvefit.fit import fit as fit_all
+    from curvefit.fit import fit_curve
     from curvefit.fit.family import NOMINAL, fit_family
     from curvefit.fit.hill import efficiency_between
     from curvefit.fit.npsh import npsh_between
+    from curvefit.fit.speed import fit_at_speed
 
     if len({c.pump for c in curves}) > 1:
         raise InputError(
@@ -220,6 +222,8 @@ def _family_fits(
     missed: ChartError | None = None
     for quantity in NOMINAL:
         members = [c for c in curves if c.quantity == quantity]
+        if len(members) == 1 and speed is not None and diameter in (None, members[0].diameter_si):
+            fits.append(fit_at_speed(fit_curve(members[0], choice), speed))
         if len(members) < 2:
             continue
         try:
@@ -230,7 +234,7 @@ def _family_fits(
         families.append(family)
         fits.append(family.at(diameter, speed, choice))
     if not any(c.quantity == "efficiency" for c in curves) and fits:
-        asked = diameter or families[0].reference.get("diameter")
+        asked = diameter or (families[0].reference.get("diameter") if families else None)
         hill = efficiency_between(curves, asked, choice) if asked and speed is None else None
         fits += [hill] if hill is not None else []
     npsh = [c for c in curves if c.quantity == "npsh_required" and c.sigma_si is not None]

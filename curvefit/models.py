@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 __all__ = [
+    "SPEED_EXPONENTS",
     "at_speed",
     "bernstein_from_legendre",
     "equation",
@@ -120,7 +121,8 @@ def rescale_covariance(covariance: ArrayLike, flow_factor: float, value_factor: 
     return np.asarray(c * scale[:, None] * scale[None, :])
 
 
-_SPEED_EXPONENTS = {
+#: how values grow with the speed; those not named do not
+SPEED_EXPONENTS = {
     "head": 2,
     "differential_pressure": 2,
     "npsh_required": 2,
@@ -145,7 +147,7 @@ def at_speed(coefficients: ArrayLike, ratio: float, quantity: str) -> Array:
     does not change with speed.
     """
     c = np.asarray(coefficients, float)
-    exponent = _SPEED_EXPONENTS.get(quantity, 0)
+    exponent = SPEED_EXPONENTS.get(quantity, 0)
     return np.asarray(c * ratio ** (exponent - np.arange(len(c), dtype=float)))
 
 

@@ -16,6 +16,7 @@ from curvefit.fit.power import fit_power
 from curvefit.fit.quantiles import normal_two_sided
 from curvefit.fit.said import finding, where
 from curvefit.fit.shape import breaks_shape
+from curvefit.fit.solve import least_squares
 from curvefit.fit.traced import band_grid, outside_finding
 from curvefit.models import (
     evaluate,
@@ -171,41 +172,12 @@ def _design(flow: Array, low: float, high: float, columns: Array) -> Array:
     return np.asarray(legendre(to_unit_range(flow, low, high), 6) @ columns)
 
 
-CHUNK = 20_000  #: rows of the design held at a time, so that a million points need little memory
-
-
-def _solved(
-    flow: Array, value: Array, low: float, high: float, columns: Array
-) -> tuple[Array, Array]:
-    """The triangle R of the design and the least-squares solution, built up chunk by chunk."""
-    k = columns.shape[1]
-    held = np.zeros((0, k + 1))
-    for start in range(0, len(flow), CHUNK):
-        part = slice(start, start + CHUNK)
-        rows = np.c_[_design(flow[part], low, high, columns), value[part]]
-        held = np.asarray(np.linalg.qr(np.concatenate([held, rows]), mode="r"))
-    root = held[:k, :k]
-    return root, np.asarray(np.linalg.solve(root, held[:k, k]))
-
-
-def _residual(
-    flow: Array, value: Array, low: float, high: float, columns: Array, free: Array
-) -> Array:
-    out = np.empty(len(flow))
-    for start in range(0, len(flow), CHUNK):
-        part = slice(start, start + CHUNK)
-        out[part] = value[part] - _design(flow[part], low, high, columns) @ free
-    return out
-
-
 def _regress(flow: Array, value: Array, degree: int, without: tuple[int, ...]) -> _Regression:
     low, high = float(flow[0]), float(flow[-1])
     columns = held_terms(low, high, degree, without)
-    root, free = _solved(flow, value, low, high, columns)
-    # one step of refinement: the last digits count where residuals are small
-    residual = _residual(flow, value, low, high, columns, free)
-    free = free + _solved(flow, residual, low, high, columns)[1]
-    residual = _residual(flow, value, low, high, columns, free)
+    free, root, residual = least_squares(
+        lambda part: _design(flow[part], low, high, columns), value
+    )
     n, k = len(flow), columns.shape[1] + 1
     squares = float(residual @ residual)
     criterion = n * np.log(max(squares, 1e-300) / n) + 2 * k

@@ -7,9 +7,11 @@ import numpy as np
 import pytest
 from scipy.interpolate import CubicSpline
 
+from curvefit.errors import InputError
 from curvefit.fit import Choice, fit_curve
 from curvefit.fit.bands import working_hotelling
 from curvefit.fit.measured import _design, _regress
+from curvefit.fit.solve import least_squares
 from curvefit.models import evaluate, rescale
 from curvefit.records import Curve
 
@@ -93,11 +95,8 @@ def test_noise_outside_the_model_leaves_the_coefficients(size):
     assert digits(fit.coefficients, np.ones(6)) >= 6
 
 
-def test_nist_longley_through_the_same_solver():
-    """NIST StRD Longley, data from statsmodels' wheel: the QR step on six regressors.
-
-    The polynomial fitter has one regressor; this holds its solver to the certified digits.
-    """
+def test_nist_longley():
+    """NIST StRD Longley, data from the statsmodels wheel: six regressors, ill-conditioned."""
     longley = pytest.importorskip("statsmodels.api").datasets.longley.load()
     x, y = np.asarray(longley.exog, float), np.asarray(longley.endog, float)
     certified = np.array(
@@ -112,11 +111,29 @@ def test_nist_longley_through_the_same_solver():
         ]
     )
     design = np.c_[np.ones(16), x]
-    scale = np.linalg.norm(design, axis=0)
-    q, r = np.linalg.qr(design / scale)
-    b = np.linalg.solve(r, q.T @ y)
-    b += np.linalg.solve(r, q.T @ (y - design / scale @ b))
-    assert digits(b / scale, certified) >= 8
+    deviations = np.array(
+        [
+            890420.383607373,
+            84.9149257747669,
+            0.334910077722432e-01,
+            0.488399681651699,
+            0.214274163161675,
+            0.226073200069370,
+            455.478499142212,
+        ]
+    )
+    free, root, residual = least_squares(lambda part: design[part], y)
+    assert digits(free, certified) >= 6
+    s = np.sqrt(residual @ residual / 9)
+    assert digits(s, np.array([304.854073561965])) >= 9
+    inverse = np.linalg.inv(root)
+    assert digits(s * np.sqrt((inverse**2).sum(1)), deviations) >= 6
+
+
+def test_nist_filip_is_refused_with_a_reason():
+    """NIST StRD Filip is a polynomial of degree 10, beyond what a pump curve may need."""
+    with pytest.raises(InputError, match="degree 10 is not possible"):
+        Choice(degree=10)
 
 
 # --- textbook examples ------------------------------------------------------------------------

@@ -11,6 +11,7 @@ from curvefit.fit import Choice, fit, fit_curve, points
 from curvefit.fit.bands import sup_t
 from curvefit.fit.points import read_points
 from curvefit.fit.quantiles import chi_square, f_quantile, normal_two_sided, t_two_sided
+from curvefit.fit.speed import fit_at_speed
 from curvefit.laws import shaft_power
 from curvefit.models import evaluate, extrema, power
 from curvefit.records import BUNDLED, Curve, Pump
@@ -282,6 +283,30 @@ def test_no_best_point_where_the_peak_is_not_drawn():
     assert "bep" not in one.derived
 
 
+@pytest.mark.parametrize("family", ["polynomial", "power", "piecewise"])
+def test_a_fit_at_another_speed(family):
+    """H(q) at r times the speed is r²·H(q/r), for every kind of equation."""
+    curve = traced(speed_si=48.0)
+    one = fit_curve(curve, Choice(family=family))
+    slow = fit_at_speed(one, 38.4)
+    again = fit_curve(
+        replace(curve, flow_si=curve.flow_si * 0.8, value_si=curve.value_si * 0.64,
+                sigma_si=curve.sigma_si * 0.64, trace_sigma_si=curve.trace_sigma_si * 0.64),
+        Choice(family=family),
+    )  # fmt: skip
+    np.testing.assert_allclose(slow.band.value_si, again.band.value_si, rtol=1e-6)
+    np.testing.assert_allclose(slow.band.low_si, again.band.low_si, rtol=1e-5)
+    if family == "polynomial":
+        np.testing.assert_allclose(
+            evaluate(slow.coefficients, slow.band.flow_si), slow.band.value_si, rtol=1e-9
+        )
+    if family == "power":
+        assert slow.parameters == pytest.approx(again.parameters, rel=1e-5)
+    assert {f.code for f in slow.findings} - codes(one) == {"family.speed-law"}
+    with pytest.raises(ChartError, match="speed"):
+        fit_at_speed(fit_curve(traced()), 40.0)
+
+
 # --- bad input --------------------------------------------------------------------------------
 
 
@@ -431,6 +456,19 @@ def test_points_no_file_no_text_too_many(tmp_path, monkeypatch):
     monkeypatch.setattr(points, "MOST_ROWS", 3)
     with pytest.raises(LimitError, match="more than 3 rows"):
         read_points(csv(tmp_path, "flow,head\nm3/h,m\n" + "1,2\n" * 6))
+
+
+@pytest.mark.slow
+def test_a_million_rows_are_read_in_bounded_memory(tmp_path):
+    import tracemalloc
+
+    path = csv(tmp_path, "flow,head\nm3/h,m\n" + "12.5,31.25\n" * 1_000_000)
+    tracemalloc.start()
+    (curve,) = read_points(path)
+    peak = tracemalloc.get_traced_memory()[1]
+    tracemalloc.stop()
+    assert len(curve.flow_si) == 1_000_000
+    assert peak < 250e6
 
 
 def test_the_command_has_an_example():
