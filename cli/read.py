@@ -207,15 +207,17 @@ def _corners(box: tuple[float, float, float, float]) -> Any:
 
 def _write_partial(error: ChartError, chart: Path, folder: Path, named: bool) -> None:
     """Writes what was read before an error, with the error among its findings."""
-    from curvefit.errors import ChartError
+    from curvefit.errors import ChartError, NoChart
     from curvefit.records import Finding, Reading
     from curvefit.write import write
 
     partial = error.partial
     if not isinstance(partial, Reading):
         return
-    code = "chart.none" if type(error).__name__ == "NoChart" else "chart.unreadable"
-    finding = Finding("error", code, error.what, error.where, error.remedy)
+    none = isinstance(error, NoChart)
+    finding = Finding(
+        "error", "chart.none" if none else "chart.unreadable", error.what, error.where, error.remedy
+    )
     partial = replace(partial, findings=(finding, *partial.findings))
     several = named and partial.page.pages > 1
     stem = f"{chart.stem}.p{partial.page.number}" if several else chart.stem
