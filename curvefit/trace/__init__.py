@@ -31,6 +31,6 @@ def trace(panel: Panel, curve_notes: Sequence[CurveNotes] = ()) -> tuple[Trace, 
         if has_curves(panel):
             return trace_strokes(panel, tuple(curve_notes))
     from curvefit.trace.given import with_notes
-    from curvefit.trace.traces import traces_of
+    from curvefit.trace.traces import followed, traces_of
 
-    return with_notes(panel, traces_of(panel, tuple(curve_notes)), curve_notes)
+    return with_notes(panel, traces_of(panel), curve_notes, lambda path: followed(panel, path))

@@ -438,12 +438,12 @@ class _Curve:
 
     def value(self, x: Array) -> Array:
         """Height at columns, NaN outside."""
-        return np.interp(x, self.at, self.height, left=np.nan, right=np.nan)
+        return np.asarray(np.interp(x, self.at, self.height, left=np.nan, right=np.nan))
 
     def half(self, x: Array, edge_width: float) -> Array:
         """Half of the stroke's vertical extent at columns [px]."""
         slope = np.gradient(self.height)
-        return 0.5 * edge_width * np.sqrt(1 + np.interp(x, self.at, slope) ** 2)
+        return np.asarray(0.5 * edge_width * np.sqrt(1 + np.interp(x, self.at, slope) ** 2))
 
 
 def _share_edges(

@@ -74,11 +74,13 @@ def width_along(ink: Image, xy: Array, at_most: float) -> float:
     run = _run(strip, offsets, np.zeros(len(xy)), at_most)
     mass = (strip * run).sum(1) * 0.5
     seen = (mass > 0.5) & ~run[:, 0] & ~run[:, -1]
+    peak = strip.max(1)
+    seen &= peak > 0.85 * np.quantile(peak[seen], 0.6) if seen.any() else False
     if seen.sum() <= 4:
         return float("nan")
     # stretches that run together with a neighbour are wider, hardly any are narrower
     thin, usual = np.quantile(mass[seen], [0.12, 0.35])
-    return float(usual if usual < 1.35 * thin + 0.3 else 1.05 * thin)
+    return float(usual if usual < 1.45 * thin + 0.3 else 1.05 * thin)
 
 
 def _run(strip: Image, offsets: Array, near: Array, reach: float) -> NDArray[np.bool_]:

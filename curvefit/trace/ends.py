@@ -24,10 +24,10 @@ def settled(layer: Layer, line: Line, longest: float, kinked: bool = False) -> L
     longest : how far the line may be carried on over one gap [px].
     kinked : whether sharp turns are allowed.
     """
-    for _ in range(6):
+    for _ in range(5):
         gap = _usual_gap(line)
         memory = float(np.clip(0.2 * len(line.xy), max(60.0, 3.0 * gap), 160.0))
-        least = max(24.0 + 3 * line.width, 1.7 * gap + 8, 0.5 * longest)
+        least = max(24.0 + 3 * line.width, 1.7 * gap + 8, 0.3 * longest)
         reach = min(max(least, 30 + _hidden_beyond(layer, line, longest, memory)), longest)
         rough = _extended(line.xy, reach, memory)
         longer = centred(layer.lines, layer.known, rough, line.width)

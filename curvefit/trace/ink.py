@@ -78,12 +78,11 @@ def _straighten(panel: Panel, image: Image, origin: NDArray[np.float64]) -> Imag
     import cv2
 
     cols, rows = (int(np.ceil(side)) + 1 + 2 * MARGIN for side in panel.warp.size)
-    grey = {"borderMode": cv2.BORDER_CONSTANT, "borderValue": 0.0, "flags": cv2.INTER_CUBIC}
     if panel.warp.bend is None:
         shift = np.array([[1, 0, MARGIN], [0, 1, MARGIN], [0, 0, 1.0]])
         back = np.array([[1, 0, origin[0]], [0, 1, origin[1]], [0, 0, 1.0]])
         matrix = shift @ panel.warp.matrix @ back
-        return np.asarray(cv2.warpPerspective(image, matrix, (cols, rows), **grey))
+        return np.asarray(cv2.warpPerspective(image, matrix, (cols, rows), flags=cv2.INTER_CUBIC))
     out = np.empty((rows, cols, 3), np.float32)
     x = np.arange(cols) - MARGIN
     for top in range(0, rows, 64):
@@ -150,9 +149,9 @@ def _hue_angle(absorbed: Image) -> Image:
 def _hue_peaks(angles: Image, enough: float) -> list[float]:
     """Centres of the clusters of hue angles that hold enough pixels, largest first."""
     count, _ = np.histogram(angles % 360.0, bins=72, range=(0, 360))
-    peaks = []
+    peaks: list[float] = []
     while True:
-        around = sum(np.roll(count, k) for k in range(-3, 4))
+        around = np.sum([np.roll(count, k) for k in range(-3, 4)], axis=0)
         best = int(np.argmax(around))
         if around[best] < max(enough, 30):
             return peaks

@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
-from curvefit.geometry import resample
+from curvefit.geometry import arc_length, resample
 from curvefit.records import Panel
 from curvefit.trace.bundle import Member, untangled
 from curvefit.trace.centre import Line, centred, width_along
@@ -19,7 +19,7 @@ from curvefit.trace.sift import is_frame, own_ink, without_doubles
 from curvefit.trace.text import lettering, markers, spread
 from curvefit.trace.track import Track, Tracking, across, best_track, peel
 
-__all__ = ["Found", "Settings", "lines_of"]
+__all__ = ["Found", "Settings", "line_along", "lines_of"]
 
 Image = NDArray[np.float32]
 Mask = NDArray[np.bool_]
@@ -51,11 +51,7 @@ class Found:
 def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
     """The lines of the panel, in array px."""
     tolerances = settings or Settings()
-    flat = straightened(panel)
-    inked = without_lines(flat.dark, MARGIN)
-    width = stroke_width(inked.ink, 0.02 * panel.warp.size[0])
-    blots = markers(inked.ink, width)
-    letters = lettering(panel, np.where(blots | (inked.known < 0.6), 0, inked.ink), width)
+    flat, inked, width, letters, blots = _prepared(panel)
     least = 0.6 * tolerances.shortest * panel.warp.size[0]
 
     def frame(line: Line) -> bool:
@@ -78,6 +74,43 @@ def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
     free = [f for f in found if f.bundled is None and own_ink(f.line, known) >= least]
     kept = without_doubles([f.line for f in free], least)
     return tied + [free[i] for i in kept]
+
+
+def _prepared(panel: Panel) -> tuple[Flat, Inked, float, Mask, Mask]:
+    """The straightened panel, its ink without paper lines, stroke width, letters, markers."""
+    flat = straightened(panel)
+    inked = without_lines(flat.dark, MARGIN)
+    width = stroke_width(inked.ink, 0.02 * panel.warp.size[0])
+    blots = markers(inked.ink, width)
+    letters = lettering(panel, np.where(blots | (inked.known < 0.6), 0, inked.ink), width)
+    return flat, inked, width, letters, blots
+
+
+def line_along(panel: Panel, path: NDArray[np.float64]) -> Found | None:
+    """The line of ink along a path (n, 2) array px between its ends, None where there is none."""
+    flat, inked, width, letters, blots = _prepared(panel)
+    layer = _layer(flat, inked, np.ones_like(flat.dark), letters, blots)
+    smooth = _rounded(path)
+    own = width_along(layer.lines, resample(smooth, 2.0), 2.0 * width + 2)
+    own = float(np.clip(own, 0.5 * width, 1.6 * width)) if np.isfinite(own) else width
+    line = centred(layer.lines, layer.known, smooth, own, slack=max(5.0, own))
+    if line.good.sum() < 0.2 * (line.known > 0.5).sum() + 3:
+        return None
+    at = np.round(line.xy[line.good]).astype(int)
+    r, g, b = 1.0 - np.median(flat.channels[at[:, 1], at[:, 0]], axis=0)
+    return Found(line, (float(r), float(g), float(b)), loose=True)
+
+
+def _rounded(path: NDArray[np.float64]) -> NDArray[np.float64]:
+    """A smooth curve through the points of a polyline, by chord length."""
+    from scipy.interpolate import PchipInterpolator
+
+    s = arc_length(path)
+    keep = np.r_[True, np.diff(s) > 1e-6]
+    if keep.sum() < 3:
+        return path
+    at = np.linspace(0, s[-1], max(int(s[-1]), 8))
+    return np.asarray(PchipInterpolator(s[keep], path[keep])(at))
 
 
 def _sorted_out(

@@ -2,26 +2,37 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 from numpy.typing import NDArray
 
 from curvefit.errors import Location
-from curvefit.notes import CurveNotes
-from curvefit.records import BRIDGED, BUNDLED, CROSSING, Finding, Panel, Trace
+from curvefit.records import BRIDGED, BUNDLED, CROSSING, GIVEN, Finding, Panel, Trace
+from curvefit.trace.dashes import dash_of
 from curvefit.trace.ink import MARGIN
-from curvefit.trace.raster import Found, lines_of
+from curvefit.trace.raster import Found, line_along, lines_of
 
-__all__ = ["traces_of"]
+__all__ = ["followed", "traces_of"]
 
 Array = NDArray[np.float64]
 SURE = 0.2  #: by how much the best pairing in a bundle must beat the next
 FLOOR = 0.06  #: px, what no fit sees: rasterising, resampling, the drawing's own resolution
 
 
-def traces_of(panel: Panel, curve_notes: tuple[CurveNotes, ...]) -> tuple[Trace, ...]:
+def traces_of(panel: Panel) -> tuple[Trace, ...]:
     """The lines of a plot box as records."""
     found = lines_of(panel)
     return tuple(_trace(panel, one, f"line {i}") for i, one in enumerate(found, 1))
+
+
+def followed(panel: Panel, path: Array) -> Trace | None:
+    """The line of ink that runs along a drawn path, (n, 2) panel px; None where there is none."""
+    found = line_along(panel, path + MARGIN)
+    if found is None:
+        return None
+    one = _trace(panel, found, "")
+    return replace(one, flags=one.flags | np.uint8(GIVEN), findings=())
 
 
 def _trace(panel: Panel, found: Found, name: str) -> Trace:
@@ -43,6 +54,7 @@ def _trace(panel: Panel, found: Found, name: str) -> Trace:
         correlation=max(14.0, 3.0 * line.width),
         width=line.width,
         colour=found.colour,
+        dash="solid" if found.bundled is not None else dash_of(line),
         path=path,
         closed=found.closed,
         findings=_said(panel, found, name),
@@ -87,9 +99,8 @@ def _said(panel: Panel, found: Found, name: str) -> tuple[Finding, ...]:
     if found.bundled is None or found.bundled.margin >= SURE:
         return ()
     box = panel.warp.to_page(found.line.xy[found.bundled.merged] - MARGIN)
-    where = Location(
-        panel=panel.name, curve=name, box_px=(*map(float, box.min(0)), *map(float, box.max(0)))
-    )
+    (left, top), (right, bottom) = box.min(0).tolist(), box.max(0).tolist()
+    where = Location(panel=panel.name, curve=name, box_px=(left, top, right, bottom))
     return (
         Finding(
             "warning",
