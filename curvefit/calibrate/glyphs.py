@@ -81,7 +81,9 @@ def letters_of(dark: Mask, tallest: float) -> Letters:
     if len(index) > 6000:  # speckles: the largest are the text
         index = np.sort(index[np.argsort(-area[index])[:6000]])
     boxes = np.c_[x, y, x + w, y + h][index]
-    bar = np.array([_is_bar(label, b.astype(int), i) for b, i in zip(boxes, index, strict=True)])
+    bar = np.array(
+        [_is_bar(label, b.astype(int), int(i)) for b, i in zip(boxes, index, strict=True)]
+    )
     return Letters(boxes, index, label, bar.astype(bool))
 
 

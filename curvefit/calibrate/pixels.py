@@ -8,12 +8,13 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
+from curvefit.calibrate.bow import quarter
 from curvefit.calibrate.evidence import Evidence, TickRow
 from curvefit.calibrate.glyphs import TextLine
 from curvefit.calibrate.ink import ink_of
 from curvefit.calibrate.plots import Plot, clockwise, find_plots
 from curvefit.calibrate.sheet import Settings, Sheet, straighten
-from curvefit.calibrate.sides import warp_of
+from curvefit.calibrate.ticks import Side
 from curvefit.calibrate.upright import quarter_turns
 from curvefit.calibrate.words import Lettering, find_text, read_lines
 from curvefit.geometry import project
@@ -100,7 +101,12 @@ def _wanted(lettering: Lettering, plots: list[Plot], s: Settings) -> list[TextLi
     return sorted(lettering.lines, key=distance)[: s.most_lines]
 
 
-_ROUND = ("top", "right", "bottom", "left")  # clockwise: a quarter turn moves each on by one
+_ROUND: tuple[Side, ...] = (
+    "top",
+    "right",
+    "bottom",
+    "left",
+)  # clockwise: a quarter turn moves each on by one
 
 
 def _upright_order(plots: list[Plot], turn: int) -> list[Plot]:
@@ -115,12 +121,16 @@ def _evidence(sheet: Sheet, plot: Plot, turn: int, words: tuple[Word, ...]) -> E
     corners = np.roll(plot.corners, turn, axis=0)
     rows = tuple(_turned(row, turn) for row in plot.ticks)
     look, read = _reader(sheet, NUMERIC), _reader(sheet, None)
-    return Evidence(corners, warp_of(corners), turn, rows, words, look, read=read)
+    warp = plot.warp
+    for _ in range(turn):
+        warp = quarter(warp)
+    return Evidence(corners, warp, turn, rows, words, look, read=read)
 
 
 def _turned(row: TickRow, turn: int) -> TickRow:
     """The row on the page set upright; along two sides its direction changes."""
-    side, at = row.side, row.at
+    side: Side = row.side
+    at = row.at
     for _ in range(turn):
         side = _ROUND[(_ROUND.index(side) + 1) % 4]
         if side in ("left", "right"):  # left to right has become downwards

@@ -8,10 +8,12 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from curvefit.calibrate.bow import bent
 from curvefit.calibrate.boxes import Box, find_boxes
 from curvefit.calibrate.evidence import TickRow
+from curvefit.calibrate.lines import Line
 from curvefit.calibrate.sheet import Settings, Sheet
-from curvefit.calibrate.sides import side_lines, warp_of
+from curvefit.calibrate.sides import follow, side_lines, warp_of
 from curvefit.calibrate.ticks import FARTHEST, Side, flatten, tick_bars, tick_rows
 from curvefit.geometry import Warp, project
 from curvefit.notes import PanelNotes
@@ -42,10 +44,10 @@ def find_plots(sheet: Sheet, notes: Sequence[PanelNotes], s: Settings) -> list[P
     left out.
     """
     boxes = _seen_boxes(sheet, s)
-    plots = [_plot(sheet, corners, box, [b for _, b in boxes]) for corners, box in boxes]
+    plots = [_plot(sheet, corners, box, [b for _, b in boxes], s) for corners, box in boxes]
     for note in notes:
         if note.corners is not None:
-            given = _given(sheet, note, [b for _, b in boxes])
+            given = _given(sheet, note, [b for _, b in boxes], s)
             plots = [p for p in plots if _overlap(p.box, given.box) < 0.3] + [given]
         elif note.drop and note.box is not None:
             dropped = _flat_box(sheet, _corners_of(note.box))
@@ -65,17 +67,70 @@ def _seen_boxes(sheet: Sheet, s: Settings) -> list[tuple[Array, Box]]:
     return found
 
 
-def _plot(sheet: Sheet, corners: Array, box: Box, others: list[Box]) -> Plot:
+def _straightest(sheet: Sheet, corners: Array, box: Box, s: Settings) -> Warp:
+    """The warp of a box: bent where its sides and long inner lines sag."""
     warp = warp_of(corners)
+    if not all(box.seen):
+        return warp
+    reach = 4.0 * max(1.0, max(sheet.flat.shape) / s.work) + 1
+    back = np.linalg.inv(sheet.matrix)
+    top, right, bottom, left = (corners[[i, (i + 1) % 4]] for i in range(4))
+    chords = {
+        1: [top, *_inner(box.across, box.top, box.bottom, box.left, box.right, True), bottom[::-1]],
+        0: [
+            left[::-1],
+            *_inner(box.upright, box.left, box.right, box.top, box.bottom, False),
+            right,
+        ],
+    }
+    found: dict[int, list[Array]] = {0: [], 1: []}
+    for axis, ends in chords.items():
+        for k, pair in enumerate(ends):
+            side = k in (0, len(ends) - 1)
+            a, b = pair if side else project(back, pair)
+            xy = follow(sheet.ink, a + 0.01 * (b - a), b - 0.01 * (b - a), reach)[0]
+            if side or len(xy) >= 40:
+                found[axis].append(xy)
+        if min(len(found[axis][0]), len(found[axis][-1])) < 12:
+            return warp
+    return bent(warp, found[1], found[0], s.bow)
+
+
+def _inner(
+    lines: Sequence[Line], low: float, high: float, lo: float, hi: float, along_x: bool
+) -> list[Array]:
+    """Chords (2, 2), straightened px, of lines inside a box that cross nearly all of it."""
+    margin = 0.03 * (high - low)
+    crossing = [
+        line
+        for line in lines
+        if low + margin < line.at < high - margin
+        and min(line.hi, hi) - max(line.lo, lo) > 0.9 * (hi - lo)
+    ]
+    chosen = crossing[:: max(1, len(crossing) // 8)]
+    ends = [np.array([[lo, line.at], [hi, line.at]]) for line in chosen]
+    return ends if along_x else [e[:, ::-1] for e in ends]
+
+
+def _outline(size: tuple[float, float]) -> Array:
+    w, h = size
+    return np.array([[0, 0], [w, 0], [w, h], [0, h]], float)
+
+
+def _plot(
+    sheet: Sheet, corners: Array, box: Box, others: list[Box], s: Settings, given: bool = False
+) -> Plot:
+    warp = warp_of(corners) if given else _straightest(sheet, corners, box, s)
+    corners = corners if given else warp.to_page(_outline(warp.size))
     flat = flatten(sheet.ink, warp, int(min(FARTHEST * max(warp.size) + 16, 700)))
     rows = tick_rows(flat, box.seen, _spines(sheet, box, others))
     return Plot(corners, box, warp, rows, tick_bars(flat, rows))
 
 
-def _given(sheet: Sheet, note: PanelNotes, others: list[Box]) -> Plot:
+def _given(sheet: Sheet, note: PanelNotes, others: list[Box], s: Settings) -> Plot:
     assert note.corners is not None
     corners = clockwise(note.corners)
-    return _plot(sheet, corners, _flat_box(sheet, corners), others)
+    return _plot(sheet, corners, _flat_box(sheet, corners), others, s, given=True)
 
 
 def clockwise(corners: Sequence[tuple[float, float]]) -> Array:

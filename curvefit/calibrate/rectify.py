@@ -21,7 +21,9 @@ def segments(ink: NDArray[np.uint8], shortest: float) -> Array:
     if found is None:
         return np.zeros((0, 4))
     lines = np.asarray(found, float).reshape(-1, 4)
-    return lines[np.hypot(lines[:, 2] - lines[:, 0], lines[:, 3] - lines[:, 1]) > shortest]
+    return np.asarray(
+        lines[np.hypot(lines[:, 2] - lines[:, 0], lines[:, 3] - lines[:, 1]) > shortest]
+    )
 
 
 def rectification(lines: Array, size: tuple[int, int]) -> Array:

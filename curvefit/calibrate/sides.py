@@ -104,12 +104,12 @@ def straight(xy: Array) -> Array:
     """The line a·x + b·y = c nearest to points, (3,); a, b are its unit normal."""
     middle = xy.mean(0)
     normal = np.linalg.svd(xy - middle, full_matrices=False)[2][1]
-    return np.r_[normal, normal @ middle]
+    return np.asarray(np.r_[normal, normal @ middle])
 
 
 def meeting(first: Array, second: Array) -> Array:
     """The point where two lines a·x + b·y = c meet, (2,)."""
-    return np.linalg.solve(np.vstack([first[:2], second[:2]]), [first[2], second[2]])
+    return np.asarray(np.linalg.solve(np.vstack([first[:2], second[:2]]), [first[2], second[2]]))
 
 
 def warp_of(corners: Array) -> Warp:

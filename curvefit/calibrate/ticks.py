@@ -77,7 +77,7 @@ def _enlarged(values: NDArray[np.float32], step: int) -> NDArray[np.float32]:
     wide = values[:, i] + (values[:, i + 1] - values[:, i]) * (x - i).astype(np.float32)
     y = np.arange((rows - 1) * step + 1) / step
     j = np.minimum(y.astype(int), rows - 2)
-    return wide[j] + (wide[j + 1] - wide[j]) * (y - j)[:, None].astype(np.float32)
+    return np.asarray(wide[j] + (wide[j + 1] - wide[j]) * (y - j)[:, None], np.float32)
 
 
 def tick_rows(

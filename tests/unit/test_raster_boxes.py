@@ -209,3 +209,28 @@ def test_a_second_look_reads_the_number_at_a_place():
     assert e.look is not None
     out = (word.box - word.centre) * 1.25 + word.centre
     assert e.look([out])[0][0] == "80"
+
+
+@pytest.mark.parametrize("turn", [0, 3])
+def test_a_curled_page_is_bent_straight(turn):
+    """Lines across sag by a parabola of 6 px: inner places come out right to half a pixel."""
+    frame, grid = (150.0, 100.0, 900.0, 600.0), np.array([0.2, 0.4, 0.6, 0.8])
+
+    def sag(x):
+        return 6 * (1 - ((np.asarray(x) - 525) / 375) ** 2)
+
+    lines = []
+    for x0, y0, x1, y1 in box_segments(*frame, (), grid):
+        x, y = np.linspace(x0, x1, 60), np.linspace(y0, y1, 60) + sag(np.linspace(x0, x1, 60))
+        lines += [tuple(v) for v in np.c_[x[:-1], y[:-1], x[1:], y[1:]]]
+    pixels = np.ascontiguousarray(np.rot90(drawn((1100, 760), lines), turn))
+    [e] = boxes(pixels, turn=turn)
+    assert e.warp.bend is not None
+    x, y = np.meshgrid(150 + 750 * grid, 600 - 500 * grid)
+    page = np.c_[x.ravel(), (y + sag(x)).ravel()]
+    if turn == 3:  # a quarter clockwise: (x, y) of 1100 x 760 becomes (759 - y, x)
+        page = np.c_[759 - page[:, 1], page[:, 0]]
+    w, h = e.warp.size
+    found = e.warp.to_panel(page) / [w, h]
+    truth = np.c_[((x - 150) / 750).ravel(), ((y - 100) / 500).ravel()]
+    assert np.abs((found - truth) * [w, h]).max() < 0.5
