@@ -224,11 +224,13 @@ def _looked_again(
     doubted = {id(d[0]) for i in doubtful if (d := dealt[i]) is not None}
 
     def replaced(old: Label) -> bool:
-        return any(np.hypot(*(old.centre - new.centre)) < 1.5 * height for new in found)
+        return any(np.hypot(*(old.centre - new.centre)) < 2.5 * height for new in found)
 
     def known(new: Label) -> bool:
+        says = {m.value for m in new.means("percent")}
         return any(
-            np.hypot(*(old.centre - new.centre)) < 2.0 * height and old.means("percent")
+            np.hypot(*(old.centre - new.centre)) < 2.0 * height
+            and any(m.value in says for m in old.means("percent"))
             for old in labels
             if id(old) not in doubted
         )

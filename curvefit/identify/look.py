@@ -219,7 +219,7 @@ def _beside(panel: Panel, trace: Trace, height: float, shift: float) -> list[_St
     starts = np.arange(x[0] - height, x[-1] - width, 4.5 * height)
     part = (x[-1] - x[0]) / 5
     strips = []
-    for start in starts[(starts < x[0] + part) | (starts > x[-1] - part - width)][:8]:
+    for start in starts[(starts < x[0] + part) | (starts > x[-1] - part - width)]:
         across = np.arange(start, start + width)
         middle = np.interp(across, x, y) + shift * height
         up = np.arange(-0.75 * height, 0.75 * height)

@@ -102,13 +102,13 @@ def settle(
     series = [k * usual for k in range(1, int(0.96 / usual) + 1)]
     series = [s for s in series if low - 2 * usual <= s <= high + 2 * usual]
     options: list[dict[float | None, float]] = []
-    for value, text in zip(values, texts, strict=True):
+    for i, (value, text) in enumerate(zip(values, texts, strict=True)):
         costs: dict[float | None, float] = {None: settings.unknown}
         for level in series:
             level = round(level, 6)
             if text and _misread(text, level):
                 costs[level] = settings.misread
-            elif not text and step is not None and low <= level <= high:
+            elif not text and step is not None and _bracketed(i, level, step, values, rows):
                 costs[level] = settings.silent
         if value is not None:
             off = step is not None and not _on(value, step)
@@ -128,6 +128,22 @@ def settle(
         None if v is not None and _tied(i, chosen, options[i], rows, settings) else v
         for i, v in enumerate(chosen)
     ]
+
+
+def _bracketed(
+    i: int,
+    level: float,
+    step: float,
+    values: Sequence[float | None],
+    rows: Sequence[Sequence[int]],
+) -> bool:
+    """Whether a line's neighbours along some head line are one step below and one above."""
+    for row in rows:
+        for before, own, after in zip(row, row[1:], row[2:], strict=False):
+            sides = sorted(v for v in (values[before], values[after]) if v is not None)
+            if own == i and len(sides) == 2 and np.allclose(sides, [level - step, level + step]):
+                return True
+    return False
 
 
 def _on(value: float, step: float) -> bool:
