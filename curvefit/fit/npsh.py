@@ -140,6 +140,9 @@ def npsh_between(
         choice.confidence,
     )
     curves = tuple(dict.fromkeys(f.curve for f in pair))
+    parameters = {"share_of_larger": share, "speed_ratio": ratio}
+    parameters |= {} if diameter_si is None else {"diameter": diameter_si}
+    parameters |= {} if speed_si is None else {"speed": speed_si}
     place = [f"{diameter_si * 1e3:.4g} mm"] if diameter_si is not None else []
     place += [f"{speed_si * 60:.4g} 1/min"] if speed_si is not None else []
     return Fit(
@@ -149,7 +152,7 @@ def npsh_between(
         None,
         (float(grid[0]), float(grid[-1])),
         band,
-        parameters={"share_of_larger": share, "speed_ratio": ratio},
+        parameters=parameters,
         factors=None if unknown else factors,
         calibration=None if unknown else calibration,
         reason="interpolated between drawn curves; NPSHr has no diameter law",

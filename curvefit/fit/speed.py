@@ -54,7 +54,7 @@ def fit_at_speed(fit: Fit, speed_si: float) -> Fit:
         "family.speed-law",
         curve,
         f"The curve at {ratio:.3g} times its speed follows the affinity laws exactly; the band "
-        "does not hold their own error" + ("." if near else ", and this is far from the charted speed."),
+        f"does not hold their own error{'.' if near else ', and this is far from its speed.'}",
     )
     knots = fit.knots_si
     return replace(

@@ -7,6 +7,7 @@ import io
 import math
 import re
 from collections.abc import Iterator
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -51,7 +52,22 @@ def curves_csv(out: Outgoing) -> str:
             writer.writerows(_traced(out, curve))
         for fit in out.fits_of(curve.curve):
             writer.writerows(_fitted(out, curve, fit))
+    for fit in out.fits:
+        if len(fit.fit.curves) > 1:
+            writer.writerows(_fitted(out, _between_drawn(out, fit), fit))
     return text.getvalue()
+
+
+def _between_drawn(out: Outgoing, fit: FitOut) -> CurveOut:
+    """The curve that a family's fit gives, which was not drawn: named after the fit."""
+    first = next(c for c in (*out.curves, *out.derived) if c.curve.name == fit.fit.curve.name)
+    at = {
+        f"{name}_si": fit.fit.parameters.get(name, getattr(first.curve, f"{name}_si"))
+        for name in ("diameter", "speed")
+    }
+    return replace(
+        first, curve=replace(first.curve, name=fit.fit.name, **at), findings=fit.fit.findings
+    )
 
 
 def csv_metadata(name: str, out: Outgoing) -> str:

@@ -42,7 +42,7 @@ def write_fits(
 
     Parameters
     ----------
-    fits, curves : the new fits and all curves of the set; curves that a fit made come with it
+    fits, curves : the new fits and the curves of the set
     folder, stem : where to, and what the names begin with
     source : the file that was given; never overwritten
     document : the curve set as it was read, for its source, panels and pixels; None for points
@@ -55,13 +55,11 @@ def write_fits(
     WriteError
         If a file cannot be written.
     """
-    known = {c.name for c in curves}
-    made = [c for f in fits for c in f.curves if c.name not in known]
     kept = [f for f in findings if not f.code.startswith(_ANEW)]
     said = [*kept, *(f for fit in fits for f in fit.findings)]
     reading = Reading(
         _page(source, document),
-        curves=(*curves, *dict.fromkeys(made)),
+        curves=tuple(curves),
         pumps=tuple(pumps),
         fits=tuple(fits),
         findings=tuple(dict.fromkeys(said)),

@@ -130,6 +130,11 @@ def test_a_family_at_a_diameter_between_those_drawn(family, tmp_path, capsys):
     assert "flow by diameter" in said
     assert "radial trim" in said
     assert "left out, predicted from the others" in said
+    table = (tmp_path / "page.curves.csv").read_text(encoding="utf-8").splitlines()
+    rows = [r.split(",") for r in table if "head family at 195 mm" in r]
+    assert len(rows) == 201
+    assert {r[5] for r in rows} == {"195"}
+    assert {r[15] for r in rows} == {"fitted"}
     # the curves of the set are kept as they were
     old = json.loads(before)
     assert written["curves"] == old["curves"]
