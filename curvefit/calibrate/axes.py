@@ -86,8 +86,9 @@ def scales(
     for f in found:
         findings += f.doubts
     if evidence.look is not None or not evidence.exact:
+        beside = [f for f in found if f.column.order == 1]  # farther out ticks run into numbers
         findings += too_wide(
-            {f.name: pitch_of(f.progression.labels, f.progression.chosen) for f in found}
+            {f.name: pitch_of(f.progression.labels, f.progression.chosen) for f in beside}
         )
     order_of = {side: k for k, side in enumerate(("bottom", "top", "left", "right"))}
     axes = sorted(axes, key=lambda a: (order_of[a.side], a.name))

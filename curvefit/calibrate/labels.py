@@ -104,9 +104,12 @@ def row_readings(texts: Sequence[str]) -> list[tuple[Reading, ...]]:
     A number with a leading zero ("05", or "00" at the end of the axis) proves that the reader
     loses decimal points; numbers printed with a point make it likely for those without.
     """
-    each = [readings(t) for t in texts]
     if not texts:
         return []
+    dashed = [t.translate(_PLAIN).strip().startswith("-") for t in texts]
+    if sum(dashed) >= 0.7 * len(texts) > 1:  # ticks before the numbers: no axis is all negative
+        texts = [t.translate(_PLAIN).strip().lstrip("- ") for t in texts]
+    each = [readings(t) for t in texts]
     plain = [re.sub(r"\D", "", t) if re.fullmatch(r"[-−]?\d+", t.strip()) else "" for t in texts]
     proven = any(re.match(r"0+[1-9]", p) for p in plain)
     pointed = sum(bool(re.search(r"\d[.,]\d{1,2}$", t.strip())) for t in texts)

@@ -87,7 +87,10 @@ def _read_again(
         if axis.quantity is not None and axis.unit is not None:
             continue
         for spot in _beyond(column, text, size)[:2]:
-            jobs.append((i, spot, _whole_line(spot, column.side, size)))
+            box = _whole_line(spot, column.side, size)
+            jobs.append((i, spot, box))
+            if spot.quarter in (1, 3) and len(spot.word.text) < 5:  # upwards or downwards?
+                jobs.append((i, spot, np.roll(box, 2, axis=0)))
     texts = read([box for _, _, box in jobs]) if jobs else []
     for (i, spot, _), line in zip(jobs, texts, strict=True):
         title = read_title(line)
@@ -128,34 +131,50 @@ def _whole_line(spot: Spot, side: str, size: tuple[float, float]) -> Array:
 
 
 def _candidates(text: Sequence[Spot]) -> list[Candidate]:
-    """Every word, and every two that follow each other, as a title."""
-    single = [
-        Candidate(read_title(s.word.text), s.bounds, s.quarter, s.height, (s.word,)) for s in text
-    ]
+    """Every word, and up to five that follow each other, as a title."""
+    single = [_as_title((s,)) for s in text]
+    full = {id(s) for s, c in zip(text, single, strict=True) if c.title.strength == 3}
+    loose = [s for s in text if id(s) not in full]
     out = list(single)
-    for i, a in enumerate(text):
-        for j, b in enumerate(text):
-            if i == j or single[i].title.strength == 3 or single[j].title.strength == 3:
-                continue
-            if not _together(a, b):
-                continue
-            joined = read_title(f"{a.word.text} {b.word.text}")
-            if joined.strength > max(single[i].title.strength, single[j].title.strength):
-                x0, y0, x1, y1 = a.bounds
-                u0, v0, u1, v1 = b.bounds
-                bounds = (min(x0, u0), min(y0, v0), max(x1, u1), max(y1, v1))
-                longer = a if len(a.word.text) >= len(b.word.text) else b
-                out.append(
-                    Candidate(joined, bounds, longer.quarter, longer.height, (a.word, b.word))
-                )
+    for first in loose:
+        chain = [first]
+        while len(chain) < 5:
+            rest = [s for s in loose if all(s is not c for c in chain) and _next(chain[-1], s)]
+            if not rest:
+                break
+            chain.append(min(rest, key=lambda s: _gap(chain[-1], s)))
+            joined = _as_title(tuple(chain))
+            if joined.title.strength > max(_as_title((s,)).title.strength for s in chain):
+                out.append(joined)
     return out
 
 
-def _together(a: Spot, b: Spot) -> bool:
+def _as_title(chain: tuple[Spot, ...]) -> Candidate:
+    """Words read together as one title."""
+    bounds = np.array([s.bounds for s in chain])
+    (x0, y0), (x1, y1) = bounds[:, :2].min(0), bounds[:, 2:].max(0)
+    longest = max(chain, key=lambda s: len(s.word.text))
+    title = read_title(" ".join(s.word.text for s in chain))
+    around = (float(x0), float(y0), float(x1), float(y1))
+    return Candidate(title, around, longest.quarter, longest.height, tuple(s.word for s in chain))
+
+
+def _quarter_of(a: Spot, b: Spot) -> int:
+    """How two words read together: a lone letter has no direction of its own."""
+    return (a if len(a.word.text) >= len(b.word.text) else b).quarter
+
+
+def _gap(a: Spot, b: Spot) -> float:
+    quarter = _quarter_of(a, b)
+    follows = _reading(b, quarter)[0] - _reading(a, quarter)[2]
+    return follows if follows > -0.5 * a.height else 10 * a.height
+
+
+def _next(a: Spot, b: Spot) -> bool:
     """Whether b follows a on the line, or starts the next line."""
     if a.quarter != b.quarter and min(len(a.word.text), len(b.word.text)) > 1:
         return False
-    quarter = (a if len(a.word.text) >= len(b.word.text) else b).quarter  # a lone letter has none
+    quarter = _quarter_of(a, b)
     h = max(a.height, b.height)
     ax0, ay0, ax1, ay1 = _reading(a, quarter)
     bx0, by0, bx1, by1 = _reading(b, quarter)

@@ -23,9 +23,23 @@ _POWERS_OF_TEN = (0.001, 0.01, 0.1, 10.0, 100.0, 1000.0)
 
 def checked_together(panels: Sequence[Panel]) -> tuple[Panel, ...]:
     """The panels with units filled in from, and doubts raised by, the axes beside them."""
-    out = [_same_dimension(p) for p in panels]
+    out = [_same_dimension(_lone_length(p)) for p in panels]
     out = _stacked(out)
     return tuple(_gallons(p) for p in out)
+
+
+def _lone_length(panel: Panel) -> Panel:
+    """A scale of metres or feet without a word is the head, if none other is."""
+    lengths = [a for a in panel.axes if a.unit in ("m", "[ft_i]") and not a.along_flow]
+    if any(a.quantity == "head" for a in lengths):
+        return panel
+    unnamed = [a for a in lengths if a.quantity is None]
+    if len(unnamed) != 1:
+        return panel
+    axes = tuple(
+        replace(a, quantity="head", guessed=True) if a is unnamed[0] else a for a in panel.axes
+    )
+    return replace(panel, axes=axes)
 
 
 def _ends_si(axis: Axis, unit: str | None = None) -> Array:

@@ -45,6 +45,7 @@ class Title:
 
 
 _DIMENSIONS = ("flow", "length", "ratio", "power", "pressure")
+_NEVER = ("1", "[in_i]", "mm", "cm")  #: no axis is scaled in these; "H in m" holds an "in"
 _DEFAULT = {"flow": "flow", "ratio": "efficiency", "power": "shaft_power"}
 _BARE_GALLON = {
     "gpm",
@@ -176,7 +177,7 @@ def _splits(body: str) -> list[tuple[str, str]]:
 def _folded() -> dict[str, Unit]:
     table: dict[str, Unit] = {}
     for u in UNITS:
-        if u.dimension in _DIMENSIONS and u.code != "1":
+        if u.dimension in _DIMENSIONS and u.code not in _NEVER:
             for spelling in (*u.spellings, fold(u.print)):
                 if len(spelling) > 1 or spelling in "m%w":
                     table.setdefault(spelling.translate(_ALIKE), u)
@@ -190,7 +191,7 @@ def _unit(printed: str) -> tuple[Unit, bool] | None:
         return None
     try:
         u = parse(text)
-        if u.dimension in _DIMENSIONS and u.code != "1":
+        if u.dimension in _DIMENSIONS and u.code not in _NEVER:
             return u, True
         if u.code == "/min":
             return None  # a speed, not litres in a minute with a misread l
@@ -275,6 +276,8 @@ def _joined(
         shown = u.print
     title = Title(text, quantity, u.code, shown, factor, u.dimension, guessed=not sure)
     if quantity is None:
+        if u.code == "W" and printed.strip("[]() ") == "w":
+            return None  # an m upside down
         if named and len(re.sub(r"\W", "", text)) > len(re.sub(r"\W", "", printed)) + 14:
             return None  # a sentence that happens to end in a unit
         if u.dimension == "length" and (u.code not in ("m", "[ft_i]") or (named and not exact)):
