@@ -182,13 +182,13 @@ def levels(
     kind = _kind(lines, labels, settings)
     dealt = _dealt(lines, labels, kind, settings)
     values = _settled(lines, dealt, heads, kind)
-    doubtful = [
-        i
-        for i, (d, v) in enumerate(zip(dealt, values, strict=True))
-        if d is None or d[1].cost >= 0.5 or d[1].value != v
-    ]
-    if kind == "percent" and doubtful:
-        labels = _looked_again(lines, dealt, labels, doubtful)
+    looked: set[int] = set()
+    for _ in range(2):
+        doubtful = _doubtful(dealt, values) - looked
+        if kind != "percent" or not doubtful:
+            break
+        looked |= doubtful
+        labels = _looked_again(lines, dealt, labels, sorted(doubtful))
         second = _dealt(lines, labels, kind, settings)
         after = _settled(lines, second, heads, kind)
         if sum(v is None for v in after) <= sum(v is None for v in values):
@@ -203,6 +203,15 @@ def levels(
 
 
 _Dealt = list[tuple[Label, Meaning] | None]
+
+
+def _doubtful(dealt: _Dealt, values: Sequence[float | None]) -> set[int]:
+    """Lines without a label, with one that was bent, or with one that their neighbours deny."""
+    return {
+        i
+        for i, (d, v) in enumerate(zip(dealt, values, strict=True))
+        if d is None or d[1].cost >= 0.5 or d[1].value != v
+    }
 
 
 def _settled(
