@@ -52,7 +52,10 @@ def find_boxes(across: list[Line], upright: list[Line], reach: float) -> list[Bo
 
     reach : how far apart [px] two lines may end and still meet.
     """
-    boxes = [_box(h, v, reach) for h, v in _groups(across, upright, reach) if h and v]
+    groups = _groups(across, upright, reach)
+    boxes = [_box(h, v, reach) for h, v in groups if h and v]
+    alone = [h[0] for h, v in groups if len(h) == 1 and not v]
+    boxes += [_ruled(lines) for lines in _alike(alone, reach)]
     return sorted((b for b in boxes if b is not None), key=lambda b: -b.area)
 
 
@@ -77,6 +80,27 @@ def _groups(
     for i, line in enumerate(across + upright):
         groups.setdefault(root(i), ([], []))[int(i >= len(across))].append(line)
     return list(groups.values())
+
+
+def _alike(lines: list[Line], reach: float) -> list[list[Line]]:
+    """Lines that meet no other but begin and end together, four or more: a grid one way only."""
+    left = sorted(lines, key=lambda h: h.at)
+    out = []
+    while left:
+        first = left[0]
+        same = [h for h in left if max(abs(h.lo - first.lo), abs(h.hi - first.hi)) < reach]
+        left = [h for h in left if h not in same]
+        if len(same) >= 4:
+            out.append(same)
+    return out
+
+
+def _ruled(lines: list[Line]) -> Box:
+    """The box of a grid that runs across only, without a side upright."""
+    left = float(np.median([h.lo for h in lines]))
+    right = float(np.median([h.hi for h in lines]))
+    seen = (True, False, True, False)
+    return Box(left, lines[0].at, right, lines[-1].at, seen, tuple(lines))
 
 
 def _box(across: list[Line], upright: list[Line], reach: float) -> Box | None:

@@ -86,8 +86,8 @@ def _drawn(sheet: Sheet, plots: list[Plot]) -> tuple[NDArray[np.int16], Image, I
     rules = np.zeros(sheet.flat.shape, np.uint8)
     for lines, swap in ((sheet.across, 1), (sheet.upright, -1)):
         for line in lines:
-            ends = [(round(x), round(line.at))[::swap] for x in (line.lo, line.hi)]
-            cv2.line(rules, *ends, 1, 7)
+            start, end = ((round(x), round(line.at))[::swap] for x in (line.lo, line.hi))
+            cv2.line(rules, start, end, 1, 7)
     return zone, frame, ticks, rules
 
 

@@ -234,3 +234,8 @@ def test_a_curled_page_is_bent_straight(turn):
     found = e.warp.to_panel(page) / [w, h]
     truth = np.c_[((x - 150) / 750).ravel(), ((y - 100) / 500).ravel()]
     assert np.abs((found - truth) * [w, h]).max() < 0.5
+
+
+def test_lines_across_alone_make_a_box():
+    [e] = boxes(drawn((1050, 760), [(150, y, 900, y) for y in range(100, 601, 100)]))
+    assert np.abs(e.corners - corners(150, 100, 900, 600)).max() < 2.5
