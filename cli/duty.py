@@ -24,7 +24,8 @@ from curvefit_cli.selection import CurveName, PumpName, listing, same, select
 from curvefit_cli.show import UNTRUSTED, findings_text, say, table, written
 
 if TYPE_CHECKING:
-    from curvefit.duty import Duty
+    from curvefit.duty import Arrangement, Duty
+    from curvefit.duty.system import System
     from curvefit.records import Curve, Fit, Interval
     from curvefit.write.reopen import CurveSet
 
@@ -54,12 +55,18 @@ def duty(
     ] = 1,
     want_flow: Annotated[
         str | None,
-        typer.Option("--want-flow", metavar="Q", help="Find the speed for it.", show_default=False),
+        typer.Option("--want-flow", metavar="Q", help="Reach this flow.", show_default=False),
     ] = None,
     want_head: Annotated[
         str | None,
-        typer.Option("--want-head", metavar="H", help="Find the speed for it.", show_default=False),
+        typer.Option("--want-head", metavar="H", help="Reach this head.", show_default=False),
     ] = None,
+    by: Annotated[
+        str, typer.Option("--by", metavar="WAY", help="Reach it by speed or by diameter.")
+    ] = "speed",
+    on: Annotated[
+        str, typer.Option("--on", metavar="LINE", help="Reckon on the equation or on the points.")
+    ] = "equation",
     draws: Annotated[
         int, typer.Option("--draws", min=0, metavar="N", help="Monte Carlo draws; 0: none.")
     ] = 100_000,
@@ -78,23 +85,41 @@ def duty(
 
     Example: curvefit duty pump.curves.json system.toml --diameter "210 mm" --parallel 2
     """
-    from curvefit.duty import Arrangement, read_system
+    from curvefit.duty import Arrangement, line_of_points, read_system
     from curvefit.duty import duty as duty_of
     from curvefit.errors import InputError
+    from curvefit.units import parse_quantity
     from curvefit.write.duty_files import write_duty
     from curvefit.write.reopen import reopen
 
     asked = unit_options(flow_unit, head_unit, power_unit, npsh_unit)
     opened, plant = reopen(curves), read_system(system)
-    fits, ratio = _chosen(opened, pump, curve, diameter, speed)
+    if by not in ("speed", "diameter") or on not in ("equation", "points"):
+        raise InputError(
+            f"--by {by} or --on {on} is not known",
+            remedy="--by takes speed or diameter, --on takes equation or points.",
+        )
     if want_flow is not None and want_head is not None:
         raise InputError("--want-flow and --want-head exclude each other", remedy="Keep one.")
-    if want_flow is not None or want_head is not None:
-        ratio = _wanted(fits, plant, want_flow, want_head, parallel, series)
+    wanted = want_flow is not None or want_head is not None
+    flow = None if want_flow is None else parse_quantity(want_flow, "flow")
+    head = None if want_head is None else parse_quantity(want_head, "length")
+    if wanted and by == "diameter":
+        diameter = _wanted_diameter(opened, plant, pump, flow, head, Arrangement(parallel, series))
+    fits, ratio = _chosen(opened, pump, curve, diameter, speed)
+    if wanted and by == "speed":
+        ratio = _wanted_speed(fits, plant, flow, head, Arrangement(parallel, series))
     units = _units(fits, asked)
     how = Arrangement(parallel, series, ratio)
+    lines = [line_of_points(f.curve) for f in fits] if on == "points" else None
     result = duty_of(
-        fits, plant, how, draws=draws, flow_unit=units["flow"], head_unit=units["head"]
+        fits,
+        plant,
+        how,
+        draws=draws,
+        lines=lines,
+        flow_unit=units["flow"],
+        head_unit=units["head"],
     )
     said = tuple(f for one in fits for f in one.findings)
     result = replace(result, findings=result.findings + said)
@@ -194,25 +219,44 @@ def _ratio(opened: CurveSet, head: Curve, speed_si: float | None) -> float:
     return float(speed_si / of_chart)
 
 
-def _wanted(
-    fits: Sequence[Fit],
-    plant: Any,
-    want_flow: str | None,
-    want_head: str | None,
-    parallel: int,
-    series: int,
+def _wanted_speed(
+    fits: Sequence[Fit], plant: System, flow: float | None, head: float | None, how: Arrangement
 ) -> float:
-    """The speed ratio for a wanted flow or head."""
-    from curvefit.duty import Arrangement, line_of_fit, speed_for
+    """The speed ratio for a wanted flow or head, SI."""
+    from curvefit.duty import line_of_fit, speed_for
     from curvefit.errors import InputError
-    from curvefit.units import parse_quantity
 
     heads = [line_of_fit(f) for f in fits if f.curve.quantity == "head"]
     if not heads:
         raise InputError("no head curve is among the chosen curves", remedy="Choose another pump.")
-    flow = None if want_flow is None else parse_quantity(want_flow, "flow")
-    head = None if want_head is None else parse_quantity(want_head, "length")
-    return speed_for(heads[0].arranged(Arrangement(parallel, series)), plant, flow, head)
+    return speed_for(heads[0].arranged(how), plant, flow, head)
+
+
+def _wanted_diameter(
+    opened: CurveSet,
+    plant: System,
+    pump: str | None,
+    flow: float | None,
+    head: float | None,
+    how: Arrangement,
+) -> str:
+    """The diameter between those drawn for a wanted flow or head, as --diameter takes it."""
+    from curvefit.duty import diameter_for, line_of_fit
+    from curvefit.errors import InputError
+    from curvefit.fit.family import fit_family
+
+    curves = [f.curve for f in opened.fits if len(f.curves) == 1]
+    heads = [c for c in select(curves, pump) if c.quantity == "head" and c.diameter_si is not None]
+    if len(heads) < 2:
+        raise InputError(
+            f"{len(heads)} heads have a diameter, two are needed", remedy=listing(curves)
+        )
+    family = fit_family(heads)
+    drawn = sorted(c.diameter_si for c in heads if c.diameter_si is not None)
+    found = diameter_for(
+        lambda d: line_of_fit(family.at(d)).arranged(how), (drawn[0], drawn[-1]), plant, flow, head
+    )
+    return f"{found * 1e3:.4f} mm"
 
 
 def _units(fits: Sequence[Fit], asked: dict[str, str]) -> dict[str, str]:

@@ -14,9 +14,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from curvefit.models import evaluate, power
-from curvefit.records import Fit
+from curvefit.records import Curve, Fit
 
-__all__ = ["Arrangement", "Line", "line_of_fit"]
+__all__ = ["Arrangement", "Line", "line_of_fit", "line_of_points"]
 
 Array = NDArray[np.float64]
 
@@ -104,6 +104,34 @@ def line_of_fit(fit: Fit) -> Line:
     if fit.factors is not None:
         causes |= {f"{fit.name} line {i}": on_grid(row) for i, row in enumerate(fit.factors)}
     if fit.calibration is not None:
-        names = [f"axis {axis} {i}" for axis in (curve.flow_axis, curve.value_axis) for i in (0, 1)]
-        causes |= dict(zip(names, map(on_grid, fit.calibration), strict=True))
+        causes |= dict(zip(_axis_names(curve), map(on_grid, fit.calibration), strict=True))
     return Line(curve.quantity, value, causes, fit.flow_range_si)
+
+
+def line_of_points(curve: Curve) -> Line:
+    """The line through a curve's own points, straight between them, without an equation.
+
+    The trace error counts as one cause for the whole line, which overstates it a little where
+    the line's errors change sign along it.
+    """
+    flow_si, value_si = curve.flow_si, curve.value_si
+
+    def along(values: Array) -> Callable[[Array], Array]:
+        return lambda flow: np.interp(flow, flow_si, values)
+
+    causes: dict[str, Callable[[Array], Array]] = {}
+    own = curve.trace_sigma_si if curve.trace_sigma_si is not None else curve.sigma_si
+    if own is not None:
+        causes[f"{curve.name} line"] = along(own)
+    if curve.calibration_si is not None:
+        causes |= dict(zip(_axis_names(curve), map(along, curve.calibration_si.T), strict=True))
+    return Line(curve.quantity, along(value_si), causes, (float(flow_si[0]), float(flow_si[-1])))
+
+
+def _axis_names(curve: Curve) -> list[str]:
+    """Names of the two independent errors of the flow axis and of the value axis."""
+    return [
+        f"axis {axis or curve.name + side} {i}"
+        for axis, side in ((curve.flow_axis, " flow"), (curve.value_axis, " value"))
+        for i in (0, 1)
+    ]

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from curvefit.duty.crossing import Crossing, crossings, root
+from curvefit.duty.crossing import Crossing, crossings
 from curvefit.duty.draws import draw_duty, first_order_flow
 from curvefit.duty.machine import Arrangement, Line, line_of_fit
 from curvefit.duty.system import LossRow, System
@@ -16,7 +16,7 @@ from curvefit.errors import InputError, Location
 from curvefit.records import DutyPoint, Finding, Fit, Interval
 from curvefit.units import G_N, from_si, unit
 
-__all__ = ["Duty", "duty", "minimum_speed_ratio", "speed_for"]
+__all__ = ["Duty", "duty", "minimum_speed_ratio"]
 
 Array = NDArray[np.float64]
 
@@ -345,47 +345,3 @@ def minimum_speed_ratio(head: Line, system: System) -> float | None:
         return None
     largest = float(head.value(np.linspace(*head.range, 501)).max())
     return float(np.sqrt(system.static_head / largest))
-
-
-def speed_for(
-    head: Line,
-    system: System,
-    flow: float | None = None,
-    wanted_head: float | None = None,
-    *,
-    parallel: int = 1,
-) -> float:
-    """Speed ratio at which pump and system meet at a wanted flow [m³/s] or head [m].
-
-    Raises
-    ------
-    InputError
-        If no speed ratio between 0.3 and 1.5 does so within the flows that were read.
-    """
-    if flow is None:
-        if wanted_head is None or wanted_head <= system.static_head:
-            raise InputError(
-                f"a wanted head above the static head of {system.static_head:g} m is needed",
-                remedy="Give a flow, or a head above the static head.",
-            )
-        top = head.range[1] * 3
-        if system.head(np.array([top]))[0] < wanted_head:
-            raise InputError("the system does not reach the wanted head", remedy="Give a flow.")
-        flow = root(lambda q: system.head(q) - wanted_head, 0.0, top)
-    target = float(system.head(np.array([flow]))[0])
-
-    def gap(ratio: Array) -> Array:
-        r = float(ratio[0])
-        return head.arranged(Arrangement(speed_ratio=r)).value(np.array([flow])) - target
-
-    ratios = np.linspace(0.3, 1.5, 241)
-    inside = [r for r in ratios if head.range[0] * r <= flow <= head.range[1] * r]
-    values = [float(gap(np.array([r]))[0]) for r in inside]
-    for a, b, fa, fb in zip(inside, inside[1:], values, values[1:], strict=False):
-        if fa * fb <= 0:
-            return root(gap, a, b)
-    raise InputError(
-        f"no speed ratio from 0.3 to 1.5 gives {flow * 3600:.4g} m³/h at {target:.4g} m within the "
-        "flows that were read",
-        remedy="Choose another flow, diameter or pump.",
-    )

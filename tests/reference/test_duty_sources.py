@@ -10,8 +10,9 @@ from curvefit.duty.draws import draw_duty
 from curvefit.duty.liquid import Liquid, atmosphere, water
 from curvefit.duty.losses import FITTINGS, Fitting, Pipe, k_of_type
 from curvefit.duty.machine import Arrangement, Line
-from curvefit.duty.point import minimum_speed_ratio, speed_for
+from curvefit.duty.point import minimum_speed_ratio
 from curvefit.duty.system import Suction, System
+from curvefit.duty.wanted import diameter_for, speed_for
 from curvefit.units import parse, parse_quantity
 
 PLAIN = Liquid("water", 1000.0, 1.0034e-6, 2339.0)
@@ -184,6 +185,19 @@ def test_variable_speed_with_static_head():
     assert minimum_speed_ratio(line, system) == pytest.approx(0.5773503, rel=1e-7)
     assert speed_for(line, system, flow=50.0) == pytest.approx(0.8660254, rel=1e-7)
     assert speed_for(line, system, wanted_head=30.0) == pytest.approx(0.8660254, rel=1e-7)
+
+
+def test_wanted_diameter_of_an_exact_family():
+    # H = (D/D0)² (60 − 0.006 (Q D0/D)²): at Q = 50 the system asks 30 m, closed form
+    def head_at(d):
+        r = d / 0.25
+        return head_line(lambda q: r**2 * (60 - 0.006 * (q / r) ** 2), 0.0, 95.0 * r)
+
+    system = System(20.0, PLAIN, k=0.004)
+    expected = 0.25 * np.sqrt((30 + 0.006 * 50**2) / 60)
+    found = diameter_for(head_at, (0.2, 0.25), system, flow=50.0)
+    assert found == pytest.approx(expected, rel=1e-9)
+    assert diameter_for(head_at, (0.2, 0.25), system, wanted_head=30.0) == pytest.approx(expected)
 
 
 def test_series_and_parallel_of_a_parabola():

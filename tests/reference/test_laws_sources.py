@@ -52,7 +52,7 @@ def test_fox_and_mcdonald_curve_at_another_speed():
     moved = at_speed([25.0, 0.0, -drop], 1750 / 1170, "head")
     assert moved[0] == pytest.approx(55.9299, abs=1e-4)
     assert moved[2] == pytest.approx(-3.4444e-5, rel=1e-4)
-    assert 300 * 1750 / 1170 == pytest.approx(448.718, abs=1e-3)
+    assert pytest.approx(448.718, abs=1e-3) == 300 * 1750 / 1170
     assert evaluate(moved, 300 * 1750 / 1170) == pytest.approx(48.9946, abs=1e-4)
 
 
@@ -69,7 +69,7 @@ def test_specific_speed_agrees_with_fluids():
 def test_conversions_between_specific_speeds():
     """Gülich, *Centrifugal Pumps*: 51.64–51.65; with g_n the type number is n_q / 52.919."""
     assert pytest.approx(51.6452379, rel=1e-8) == NQ_TO_US
-    assert 1 / NQ_TO_TYPE_NUMBER == pytest.approx(52.91903, rel=1e-6)
+    assert pytest.approx(52.91903, rel=1e-6) == 1 / NQ_TO_TYPE_NUMBER
     assert pytest.approx(2733.016, rel=1e-6) == NQ_TO_US / NQ_TO_TYPE_NUMBER
 
 

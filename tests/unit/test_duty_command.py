@@ -47,7 +47,7 @@ def test_the_document_holds_the_duty_and_obeys_its_schema(curves, plant, tmp_pat
     jsonschema.Draft202012Validator.check_schema(schema)
     jsonschema.validate(document, schema)
     (point,) = document["points"]
-    # head 50 − 0.002 Q² − 1e-5 Q³ against 18 + 22 (Q/60)²: solved by hand to 54.3 m³/h
+    # the head drawn is 50 − 0.002 Q² − 1e-5 Q³, the system 18 + 22 (Q/60)²
     q = point["flow"]["value"]
     assert 50 - 0.002 * q**2 - 1e-5 * q**3 == pytest.approx(18 + 22 * (q / 60) ** 2, abs=0.02)
     assert point["flow"]["low"] < q < point["flow"]["high"]
@@ -133,3 +133,20 @@ def test_a_missing_file_is_exit_3(curves, tmp_path, capsys):
     assert run("duty", curves, tmp_path / "none.toml") == 3
     assert run("duty", tmp_path / "none.curves.json", tmp_path / "none.toml") == 3
     assert "none.toml" in capsys.readouterr().err
+
+
+def test_a_wanted_flow_sets_the_diameter(curves, plant, tmp_path):
+    options = ("--want-flow", "58 m3/h", "--by", "diameter", "--out", tmp_path)
+    assert run("duty", curves, plant(), *options) == 0
+    document = json.loads((tmp_path / "pump.duty.json").read_text())
+    assert document["points"][0]["flow"]["value"] == pytest.approx(58, abs=0.01)
+    assert 195 < document["pump"]["impeller_diameter"]["value"] < 210
+
+
+def test_points_and_equation_agree_within_their_intervals(curves, plant, tmp_path):
+    found = {}
+    for on in ("equation", "points"):
+        options = ("--diameter", "195 mm", "--on", on, "--out", tmp_path, "--quiet")
+        assert run("duty", curves, plant(), *options) == 0
+        found[on] = json.loads((tmp_path / "pump.duty.json").read_text())["points"][0]["flow"]
+    assert found["points"]["low"] <= found["equation"]["value"] <= found["points"]["high"]
