@@ -121,6 +121,7 @@ def meanings(text: str) -> tuple[Meaning, ...]:
     if quantity is not None and not any(m.plain for m in found):
         found.append(Meaning("quantity", None, "", 0.0, True, text.strip(), quantity))
     best: dict[tuple[object, ...], Meaning] = {}
+    found = [m for m in found if m.value is None or m.value > 0]
     for m in sorted(found, key=lambda m: m.cost):
         best.setdefault((m.kind, m.value, m.quantity), m)
     return tuple(best.values())
