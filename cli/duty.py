@@ -123,7 +123,8 @@ def duty(
     )
     said = tuple(f for one in fits for f in one.findings)
     result = replace(result, findings=result.findings + said)
-    about = _about(opened, fits, how)
+    asked_si = None if diameter is None else parse_quantity(diameter, "length", "mm")
+    about = _about(opened, fits, how, asked_si)
     folder = out or curves.parent
     stem = curves.name.removesuffix(".json").removesuffix(".curves")
     paths = write_duty(result, folder, stem, units, about, inputs=[curves, system])
@@ -276,12 +277,14 @@ def _units(fits: Sequence[Fit], asked: dict[str, str]) -> dict[str, str]:
     return found
 
 
-def _about(opened: CurveSet, fits: Sequence[Fit], how: Any) -> dict[str, Any]:
-    """What the duty is for, ready for JSON."""
+def _about(
+    opened: CurveSet, fits: Sequence[Fit], how: Arrangement, diameter_si: float | None
+) -> dict[str, Any]:
+    """What the duty is for, ready for JSON; a family's fit names its largest curve, not this one."""
     head = next((f.curve for f in fits if "head" in f.curve.quantity), fits[0].curve)
     pump = opened.pump(head)
     speed = head.speed_si or (pump.speed_si if pump else None)
-    diameter = head.diameter_si
+    diameter = diameter_si if diameter_si is not None else head.diameter_si
     return {
         "name": head.pump,
         "curves": [f.curve.name for f in fits],

@@ -70,6 +70,7 @@ def test_units_on_the_way_out(curves, plant, tmp_path):
 def test_a_diameter_between_those_drawn(curves, plant, tmp_path):
     assert run("duty", curves, plant(), "--diameter", "203 mm", "--out", tmp_path) == 0
     document = json.loads((tmp_path / "pump.duty.json").read_text())
+    assert document["pump"]["impeller_diameter"] == {"value": 203.0, "unit": "mm"}
     between = document["points"][0]["flow"]["value"]
     ends = []
     for diameter in ("195 mm", "210 mm"):
