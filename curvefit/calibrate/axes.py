@@ -16,11 +16,11 @@ from curvefit.calibrate.consensus import (
 )
 from curvefit.calibrate.doubts import doubts_of
 from curvefit.calibrate.evidence import Evidence, TickRow
-from curvefit.calibrate.given import given_axes
+from curvefit.calibrate.given import given_axes, with_meaning
 from curvefit.calibrate.labels import row_readings
 from curvefit.calibrate.naming import name_axes
 from curvefit.calibrate.pitch import pitch_of, too_wide
-from curvefit.calibrate.rows import Column, columns, spots
+from curvefit.calibrate.rows import Column, Spot, columns, spots
 from curvefit.calibrate.snap import Scale, snap
 from curvefit.notes import PanelNotes
 from curvefit.records import Axis, Finding, Mark, Word
@@ -83,6 +83,7 @@ def scales(
     findings += said
     axes, said = given_axes(evidence, panel_name, notes, axes)
     findings += said
+    axes = _named_by_titles(evidence, notes, axes, rest)
     for f in found:
         findings += f.doubts
     if evidence.look is not None or not evidence.exact:
@@ -95,6 +96,21 @@ def scales(
     words = tuple(s.word for s in rest)
     kept = [f for f in findings if f.where.axis is None or not _given(f.where.axis, axes)]
     return tuple(axes), words, tuple(kept)
+
+
+def _named_by_titles(
+    evidence: Evidence, notes: PanelNotes, axes: list[Axis], text: Sequence[Spot]
+) -> list[Axis]:
+    """Axes that the notes gave marks for, with what titles say where the notes are silent."""
+    bare = [a for a in axes if a.by == "given" and a.unit is None and not a.title]
+    if not bare:
+        return axes
+    height = float(np.median([s.height for s in text])) if text else 20.0
+    places = [Column(a.side, (), 0.0, height, height) for a in bare]
+    again = None if evidence.read is None else lambda boxes: _lines(evidence, boxes)
+    named, _, _ = name_axes(bare, places, text, evidence.warp.size, again)
+    meant = {a.name: with_meaning(a, notes) for a in named}
+    return [meant.get(a.name, a) for a in axes]
 
 
 def _lines(evidence: Evidence, boxes: Sequence[Array]) -> list[str]:

@@ -16,7 +16,7 @@ from curvefit.records import QUANTITIES, Axis, Finding, Mark
 from curvefit.records.base import Side
 from curvefit.units import parse
 
-__all__ = ["given_axes"]
+__all__ = ["given_axes", "with_meaning"]
 
 Array = NDArray[np.float64]
 
@@ -60,6 +60,14 @@ def _wrong(entry: AxisNotes, panel: str, what: str, key: str) -> NotesError:
     return NotesError(
         what, where, "Sides are bottom, top, left, right; marks need pixel and value."
     )
+
+
+def with_meaning(axis: Axis, notes: PanelNotes) -> Axis:
+    """The axis with the quantity and unit that the notes give, if they give any."""
+    for entry in notes.axes:
+        if entry.name == axis.name.partition(".")[2]:
+            axis = _meaning(axis, entry)
+    return axis
 
 
 def _meaning(axis: Axis, entry: AxisNotes) -> Axis:
@@ -144,18 +152,21 @@ def _place(evidence: Evidence, side: Side, t: float) -> Array:
 
 
 def _refined(evidence: Evidence, side: Side, at: Array, u: Array) -> tuple[Array, Array]:
-    """Marks moved onto a drawn tick that lies within twice their uncertainty."""
+    """Marks weighed together with a drawn tick that lies within twice their uncertainty."""
     at, u = at.copy(), u.copy()
     rows = [r for r in evidence.ticks if r.side == side and not r.offset and len(r.at)]
     for k in range(len(at)):
         near = [
-            (abs(r.at[i] - at[k]), r.at[i], r.u[i])
+            (abs(r.at[i] - at[k]), float(r.at[i]), float(r.u[i]))
             for r in rows
             for i in [int(np.argmin(np.abs(r.at - at[k])))]
         ]
         if near and min(near)[0] <= 2 * u[k]:
-            _, at[k], finer = min(near)
-            u[k] = min(u[k], float(finer))
+            _, tick, spread = min(near)
+            spread = max(spread, 1e-9)
+            weight = spread**-2 / (spread**-2 + u[k] ** -2)
+            at[k] += weight * (tick - at[k])
+            u[k] = (spread**-2 + u[k] ** -2) ** -0.5
     return at, u
 
 

@@ -97,6 +97,8 @@ def _drafts(evidences: Sequence[Evidence], panel_notes: tuple[PanelNotes, ...]) 
         for k, (e, axes, _, _) in enumerate(first)
         if _two_ways(axes) or looks_like_a_chart(e, axes) or _given_box(e, panel_notes)
     ]
+    if not any(_two_ways(first[k][1]) for k in keep):  # nothing is readable: every box may be it
+        keep = [k for k, (e, axes, _, _) in enumerate(first) if axes or _few_words_in(e)]
     drafts = []
     for letter, k in zip(letters, keep, strict=False):
         e, axes, words, findings = first[k]
@@ -175,19 +177,25 @@ def looks_like_a_chart(e: Evidence, axes: Sequence[Axis]) -> bool:
     up = _evenly_divided(e, ("left", "right"))
     if not (across and up):
         return False
+    return bool(axes) or _few_words_in(e)
+
+
+def _few_words_in(e: Evidence, most: int = 12) -> bool:
+    """A table is full of words, a plot box holds a few labels."""
     w, h = e.warp.size
     inside = 0
     for word in e.words:
         x, y = e.warp.to_panel(word.centre)[0]
         inside += bool(0 < x < w and 0 < y < h)
-    return bool(axes) or inside <= 12
+    return inside <= most
 
 
 def _evenly_divided(e: Evidence, sides: tuple[str, ...]) -> bool:
     for row in e.ticks:
         if row.side in sides and row.kind != "end" and len(row.at) >= 3:
             gaps = np.diff(np.r_[0.0, row.at[(row.at > 0.01) & (row.at < 0.99)], 1.0])
-            if len(gaps) >= 3 and np.std(gaps) < 0.15 * np.mean(gaps):
+            usual = np.abs(gaps - np.median(gaps)) < 0.15 * np.median(gaps)
+            if len(gaps) >= 3 and usual.mean() > 0.75:
                 return True
     return False
 
