@@ -62,7 +62,8 @@ def fit_traced(
     equation, candidates, reason = choose(
         curve, choice, settings, fitted, pieces, (flow, value, u), grid, said
     )
-    factors = np.concatenate([factors, (centre - equation.value)[None]])
+    unexplained = _unexplained(flow, value - np.interp(flow, grid, centre), u, grid)
+    factors = np.concatenate([factors, (centre - equation.value)[None], unexplained[None]])
     calibration = on_grid(curve.calibration_si, curve.flow_si, grid)
     causes = factors if calibration is None else np.concatenate([factors, calibration])
     wide = normal_two_sided(choice.confidence)
@@ -132,6 +133,19 @@ def band_grid(flow: Array, choice: Choice, settings: Settings) -> tuple[Array, b
         return np.linspace(low, high, settings.grid), False
     start, end = min(low, choice.extrapolate[0]), max(high, choice.extrapolate[1])
     return np.linspace(start, end, settings.grid), start < low or end > high
+
+
+def _unexplained(flow: Array, residual: Array, u: Array, grid: Array) -> Array:
+    """What the line shows and no equation follows, on the grid: a doubt of its own.
+
+    A line that is known much better than polynomials can bend leaves residuals that are no noise:
+    what their running mean has beyond two uncertainties.
+    """
+    around = np.ones(5) / 5
+    weight = np.convolve(np.ones(len(flow)), around, "same")
+    mean = np.convolve(residual, around, "same") / weight
+    beyond = np.sign(mean) * np.maximum(np.abs(mean) - 2.0 * u, 0.0)
+    return np.interp(grid, flow, beyond)
 
 
 def outside_finding(curve: Curve, grid: Array, flow: Array) -> Finding:
