@@ -55,8 +55,13 @@ def find_boxes(across: list[Line], upright: list[Line], reach: float) -> list[Bo
     groups = _groups(across, upright, reach)
     boxes = [_box(h, v, reach) for h, v in groups if h and v]
     alone = [h[0] for h, v in groups if len(h) == 1 and not v]
-    boxes += [_ruled(lines) for lines in _alike(alone, reach)]
-    return sorted((b for b in boxes if b is not None), key=lambda b: -b.area)
+    whole = [b for b in boxes if b is not None]
+    for lines in _alike(alone, reach):
+        ruled = _ruled(lines)
+        # pieces of a grid broken by curves lie inside its own box
+        if all(b.distance(*ruled.corners.mean(0)) > 0 for b in whole):
+            whole.append(ruled)
+    return sorted(whole, key=lambda b: -b.area)
 
 
 def _groups(
