@@ -26,7 +26,7 @@ from curvefit_cli.show import UNTRUSTED, findings_text, say, table, written
 if TYPE_CHECKING:
     from curvefit.duty import Arrangement, Duty
     from curvefit.duty.system import System
-    from curvefit.records import Curve, Fit, Interval
+    from curvefit.records import Curve, Fit
     from curvefit.write.reopen import CurveSet
 
 __all__ = ["duty"]
@@ -90,6 +90,7 @@ def duty(
     from curvefit.errors import InputError
     from curvefit.units import parse_quantity
     from curvefit.write.duty_files import write_duty
+    from curvefit.write.duty_rows import CAUTIONS
     from curvefit.write.reopen import reopen
 
     asked = unit_options(flow_unit, head_unit, power_unit, npsh_unit)
@@ -133,16 +134,10 @@ def duty(
         say(quiet=quiet)
         say(findings_text(result.findings), quiet)
     say(quiet=quiet)
-    say(_CAUTION, quiet)
+    say("\n".join(CAUTIONS), quiet)
     say(written(paths), quiet)
     alarmed = any(f.severity != "info" for f in result.findings)
     raise typer.Exit(UNTRUSTED if not result.points or (strict and alarmed) else 0)
-
-
-_CAUTION = (
-    "Readings from a chart do not replace the manufacturer's data or a witnessed test. Check the\n"
-    "shut-off pressure, the NPSH margin and the minimum flow; local codes decide."
-)
 
 
 def _chosen(
@@ -280,7 +275,7 @@ def _units(fits: Sequence[Fit], asked: dict[str, str]) -> dict[str, str]:
 def _about(
     opened: CurveSet, fits: Sequence[Fit], how: Arrangement, diameter_si: float | None
 ) -> dict[str, Any]:
-    """What the duty is for, ready for JSON; a family's fit names its largest curve, not this one."""
+    """What the duty is for, ready for JSON (a family's fit names its largest curve, not this)."""
     head = next((f.curve for f in fits if "head" in f.curve.quantity), fits[0].curve)
     pump = opened.pump(head)
     speed = head.speed_si or (pump.speed_si if pump else None)
@@ -302,74 +297,9 @@ def _about(
 
 def _text(result: Duty, units: dict[str, str]) -> str:
     """The duty, the losses and how they were reckoned, as tables."""
-    from curvefit.units import from_si, unit
+    from curvefit.write.duty_rows import loss_rows, remarks, value_rows
 
-    rows = []
-    for number, point in enumerate(result.points, 1):
-        name = f"duty {number}" if len(result.points) > 1 else "duty"
-        rows.append([name, "stable" if point.stable else "UNSTABLE", ""])
-        for label, value, kind in (
-            ("flow", point.flow_si, units["flow"]),
-            ("head", point.head_si, units["head"]),
-            ("efficiency", point.efficiency_si, "%"),
-            ("shaft power", point.shaft_power_si, units["power"]),
-            ("shaft power from ρgQH/η", point.computed_power_si, units["power"]),
-            ("NPSHr", point.npsh_required_si, units["npsh"]),
-            ("NPSH available", point.npsh_available_si, units["npsh"]),
-        ):
-            if value is not None:
-                rows.append([f"  {label}", _value(value, kind), _interval(value, kind)])
-        need, have = point.npsh_required_si, point.npsh_available_si
-        if need is not None and have is not None:
-            margin = from_si(have.value - need.value, units["npsh"])
-            text = f"{margin:.3g} {unit(units['npsh']).print}"
-            rows.append(["  NPSH margin", text, f"ratio {have.value / need.value:.3g}"])
-        if point.share_of_bep is not None:
-            rows.append(["  share of BEP flow", f"{point.share_of_bep:.0%}", ""])
-        if point.energy_si is not None:
-            rows.append(["  energy at the shaft", f"{point.energy_si / 3.6e6:.4g} kWh/m³", ""])
-        if point.energy_year_si is not None:
-            rows.append(["  a year's energy", f"{point.energy_year_si / 3.6e9:.4g} MWh", ""])
-    parts = [table(["", "value", "95 % interval"], rows)] if rows else []
-    if result.table:
-        losses = [
-            [r.section, r.part, _plain(r.loss, units["head"]), r.method] for r in result.table
-        ]
-        losses.append(["static", "head", _plain(result.system.static_head, units["head"]), ""])
-        parts.append(table(["losses", "part", "at the duty", "method"], losses))
-    if result.k_si is not None:
-        k = result.k_si * unit(units["flow"]).factor ** 2 / unit(units["head"]).factor
-        per = f"{unit(units['head']).print}/({unit(units['flow']).print})²"
-        parts.append(f"Equivalent loss coefficient k = {k:.5g} {per}")
-    if result.minimum_speed_ratio is not None:
-        parts.append(
-            f"Slowest speed that still lifts: {result.minimum_speed_ratio:.1%} of this one"
-        )
-    if result.shut_off_si is not None:
-        head, flow = result.shut_off_si
-        weight = result.system.liquid.density * 9.80665
-        parts.append(
-            f"Head at the smallest flow read ({_plain(flow, units['flow'])}): "
-            f"{_plain(head, units['head'])}, {head * weight / 1e5:.3g} bar above the suction side"
-        )
-    if result.method:
-        parts.append(f"Intervals: {result.method}")
-    return "\n\n".join(parts)
-
-
-def _value(value: Interval, code: str) -> str:
-    return _plain(value.value, code)
-
-
-def _plain(value: float, code: str) -> str:
-    from curvefit.units import from_si, unit
-
-    return f"{from_si(value, code):.4g} {unit(code).print}"
-
-
-def _interval(value: Interval, code: str) -> str:
-    from curvefit.units import from_si
-
-    if value.low is None or value.high is None:
-        return ""
-    return f"{from_si(value.low, code):.4g} to {from_si(value.high, code):.4g}"
+    values, losses = value_rows(result.points, units), loss_rows(result, units)
+    parts = [table(["", "value", "95 % interval"], values)] if values else []
+    parts += [table(["losses", "part", "at the duty", "method"], losses)] if losses else []
+    return "\n\n".join([*parts, *remarks(result, units)])

@@ -1,4 +1,4 @@
-"""STEM.duty.json and STEM.duty.svg: the duty-point check on disk."""
+"""STEM.duty.json, STEM.duty.svg and STEM.duty.html: the duty-point check on disk."""
 
 from __future__ import annotations
 
@@ -6,11 +6,13 @@ from collections.abc import Iterable, Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from curvefit import __version__
 from curvefit.units import from_si
 from curvefit.write.atomic import put_files
 from curvefit.write.curves_json import json_text
 from curvefit.write.duty_json import duty_document
 from curvefit.write.duty_plot import duty_plot
+from curvefit.write.duty_rows import CAUTIONS, loss_rows, remarks, value_rows
 
 if TYPE_CHECKING:
     from curvefit.records import DutyPoint, Finding
@@ -26,7 +28,7 @@ def write_duty(
     pump: Mapping[str, Any],
     inputs: Iterable[str | Path] = (),
 ) -> tuple[Path, ...]:
-    """The paths of STEM.duty.json and STEM.duty.svg, written into a folder.
+    """The paths of STEM.duty.json, STEM.duty.svg and STEM.duty.html, written into a folder.
 
     Parameters
     ----------
@@ -45,8 +47,44 @@ def write_duty(
     findings: tuple[Finding, ...] = result.findings
     document = duty_document(points, _system(result, units), findings, units, pump)
     files = {f"{stem}.duty.json": json_text(document).encode()}
-    files[f"{stem}.duty.svg"] = duty_plot(result, units).encode()
+    plot = duty_plot(result, units)
+    files[f"{stem}.duty.svg"] = plot.encode()
+    files[f"{stem}.duty.html"] = _page(result, stem, units, pump, plot).encode()
     return put_files(folder, files, inputs)
+
+
+def _page(
+    result: Any, stem: str, units: Mapping[str, str], pump: Mapping[str, Any], plot: str
+) -> str:
+    """The report: one self-contained page; every text from outside is escaped."""
+    from importlib.resources import files
+
+    from jinja2 import Environment
+
+    here = files("curvefit.write")
+    liquid = result.system.liquid
+    words = [f"pump {pump.get('name')}", f"system {Path(result.system.file).name}"]
+    for key, word in (("impeller_diameter", "impeller"), ("speed", "speed")):
+        if pump.get(key):
+            words.append(f"{word} {pump[key]['value']:g} {pump[key]['unit']}")
+    if pump.get("parallel", 1) > 1 or pump.get("series", 1) > 1:
+        words.append(f"{pump['parallel']} in parallel, {pump['series']} in series")
+    template = Environment(autoescape=True).from_string(
+        here.joinpath("duty.html").read_text(encoding="utf-8")
+    )
+    return template.render(
+        title=f"Duty point: {stem}",
+        about=" · ".join(words),
+        generator=f"curvefit {__version__}",
+        style=here.joinpath("report.css").read_text(encoding="utf-8"),
+        findings=result.findings,
+        plot=plot,
+        values=value_rows(result.points, units),
+        losses=loss_rows(result, units),
+        remarks=remarks(result, units),
+        liquid=f"{liquid.name}, {liquid.density:.5g} kg/m³",
+        cautions=CAUTIONS,
+    )
 
 
 def _system(result: Any, units: Mapping[str, str]) -> dict[str, Any]:

@@ -151,3 +151,15 @@ def test_points_and_equation_agree_within_their_intervals(curves, plant, tmp_pat
         assert run("duty", curves, plant(), *options) == 0
         found[on] = json.loads((tmp_path / "pump.duty.json").read_text())["points"][0]["flow"]
     assert found["points"]["low"] <= found["equation"]["value"] <= found["points"]["high"]
+
+
+def test_the_page_holds_duty_losses_and_cautions_and_escapes(curves, plant, tmp_path):
+    hostile = plant(PLANT + '\n[liquid]\nname = "<b>brine"\ndensity = "1100 kg/m3"\n')
+    run("duty", curves, hostile, "--diameter", "210 mm", "--out", tmp_path, "--quiet")
+    page = (tmp_path / "pump.duty.html").read_text(encoding="utf-8")
+    assert "default-src 'none'" in page
+    assert "&lt;b&gt;brine" in page
+    assert "<b>brine" not in page
+    for word in ("95 % interval", "k as stated", "witnessed test", "<svg"):
+        assert word in page
+    assert "http://" not in page.replace("http://www.w3.org/2000/svg", "")
