@@ -8,6 +8,7 @@ from dataclasses import replace
 from curvefit.errors import Location, NotesError
 from curvefit.identify import doubts
 from curvefit.identify.given import apply, dropped, pump_notes
+from curvefit.identify.leaders import follow_leaders
 from curvefit.identify.levels import Level, iso_lines, levels
 from curvefit.identify.line import Line
 from curvefit.identify.members import name_families
@@ -28,13 +29,15 @@ def assemble(
 ) -> tuple[tuple[Curve, ...], tuple[Pump, ...], tuple[Finding, ...]]:
     """See :func:`curvefit.identify.identify`."""
     findings: list[Finding] = []
-    settled, of = [], []
+    settled, of, labels = [], [], []
     for panel in panels:
         known, said = with_units(panel, panels)
         settled.append(known)
         findings += [*said, *agreements(known)]
-        of.append([t for t in traces if t.panel is panel or t.panel.name == panel.name])
-    labels = [labels_of(p) for p in settled]
+        own = [t for t in traces if t.panel is panel or t.panel.name == panel.name]
+        drawn, words = follow_leaders(known, own, labels_of(known))
+        of.append(drawn)
+        labels.append(words)
     iso = [iso_lines(p, t, w) for p, t, w in zip(settled, of, labels, strict=True)]
     plain = [[t for t in ts if t not in i] for ts, i in zip(of, iso, strict=True)]
     choices = choose(settled, plain, labels)

@@ -93,6 +93,7 @@ def _sample_in(strip: Array, height: float) -> Sample | None:
     paper = np.percentile(strip.reshape(-1, 3), 80, axis=0)
     drop = np.clip(paper - strip, 0, None).max(2)
     dark = drop > 0.25
+    dark[:, dark.mean(0) > 0.6] = False  # the frame of the legend
     rows = dark.mean(1)
     line = int(np.argmax(rows))
     band = dark[max(line - 1, 0) : line + 2].any(0)

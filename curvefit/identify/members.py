@@ -4,12 +4,10 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-import numpy as np
-
 from curvefit.identify import doubts
-from curvefit.identify.families import Deal, deal
+from curvefit.identify.families import Deal, deal, order
 from curvefit.identify.impellers import agree, member
-from curvefit.identify.ink import line_sample, same_ink
+from curvefit.identify.ink import Sample, line_sample, same_ink
 from curvefit.identify.line import Line
 from curvefit.identify.look import again, along, missing
 from curvefit.identify.placing import Label, same_place, spot, text_height
@@ -133,35 +131,42 @@ def _set(line: Line, label: Label, meaning: Meaning) -> None:
 
 
 def _from_legend(group: Sequence[Line], free: Sequence[Label]) -> set[int] | None:
-    """Labels dealt by the line samples beside them, where a legend names every line of a family."""
+    """Labels dealt by a legend that names every line of a family: texts with line samples.
+
+    Each sample goes to the one line that looks like it; where looks do not tell them all apart,
+    the largest goes to the uppermost.
+    """
     if len(group) < 2:
         return None
-    looks = {(x.trace.dash, tuple(np.round(x.trace.colour, 1))) for x in group}
-    if len(looks) < len(group):
-        return None
-    pairs: list[tuple[Line, Label, Meaning]] = []
     page = group[0].panel.page
+    entries: list[tuple[Label, Meaning, Sample]] = []
     for label in free:
-        meaning = next(
-            (m for m in label.meanings if m.kind in ("diameter", "speed", "stages")), None
-        )
-        if meaning is None:
-            continue
-        if not label.masked and min(spot(label, x.trace).gap for x in group) < 1.0:
+        meaning = next((m for m in label.meanings if m.kind in _NUMBERED), None)
+        beside = min(spot(label, x.trace).gap for x in group) < 1.0
+        if meaning is None or (beside and not label.masked):
             continue
         sample = line_sample(page, label.word)
-        if sample is None:
-            continue
-        alike = [x for x in group if same_ink(x.trace.colour, sample.colour)]
-        if len(alike) > 1:
-            alike = [x for x in alike if x.trace.dash == sample.dash]
-        if len(alike) == 1:
-            pairs.append((alike[0], label, meaning))
-    if len({id(x) for x, _, _ in pairs}) < len(group) or len(pairs) > len(group):
+        if sample is not None:
+            entries.append((label, meaning, sample))
+    values = {m.value for _, m, _ in entries}
+    if len(values) != len(group) or len(entries) != len(group):
         return None
-    for line, label, meaning in pairs:
+    alike = [[x for x in group if _looks_like(x, s)] for _, _, s in entries]
+    lines = [a[0] for a in alike if len(a) == 1]
+    if len({id(x) for x in lines}) < len(group):
+        ranks = order([member(x) for x in group], group[0].quantity)
+        entries.sort(key=lambda e: -(e[1].value or 0.0))
+        lines = [group[k] for k in ranks]
+    for line, (label, meaning, _) in zip(lines, entries, strict=True):
         _set(line, label, meaning)
-    return {id(label.word) for _, label, _ in pairs}
+    return {id(label.word) for label, _, _ in entries}
+
+
+_NUMBERED = ("diameter", "speed", "stages")
+
+
+def _looks_like(line: Line, sample: Sample) -> bool:
+    return same_ink(line.trace.colour, sample.colour) and line.trace.dash == sample.dash
 
 
 def _quantity_words(group: Sequence[Line], free: Sequence[Label]) -> set[int]:

@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from identify_scene import Scene, family
+from identify_scene import ModelPump, Scene, family
 
 from curvefit.identify.families import Member, order
 
@@ -180,6 +180,42 @@ def test_a_legend_names_lines_by_their_look():
         box.word(["Ø190", "Ø210", "Ø200"][k], 100, row)  # not in the order of the heads
     curves, _, _ = scene.read()
     assert diameters(curves) == [190, 210, 200]
+
+
+def test_a_legend_whose_looks_do_not_tell_all_lines_apart_goes_by_size():
+    scene = Scene()
+    box = scene.box(HEAD)
+    family(box, [""] * 3, RATIOS[:3], dash="dashed")
+    for k, label in enumerate(["Ø190", "Ø210", "Ø200"]):
+        row = 380 + 30 * k
+        scene.pixels[row + 99 : row + 102, 150:190] = 0
+        box.word(label, 100, row)
+    curves, _, _ = scene.read()
+    assert diameters(curves) == [210, 200, 190]
+
+
+@pytest.mark.parametrize("corner", [True, False])
+def test_labels_at_the_end_of_leaders(corner):
+    """Each label stands nearer to the line below than to its own; thin lines lead to its own."""
+    scene = Scene()
+    box = scene.box(HEAD)
+    family(box, [""] * 3, RATIOS[:3])
+    for k, (ratio, label) in enumerate(zip(RATIOS, ["Ø210", "Ø200", "Ø190"], strict=False)):
+        q = np.array([90.0 + 12 * k])
+        (x, y), end = box.flat(q, ModelPump(ratio).head(q))[0], [60.0, 62.0]
+        path = np.array([[x, y], [x + end[0], y + end[1]]])
+        if corner:
+            path = np.vstack([path, path[-1] + [12, 0]])
+        t = np.linspace(0, 1, 40)
+        s = np.r_[0, np.cumsum(np.hypot(*np.diff(path, axis=0).T))]
+        flat = np.c_[np.interp(t * s[-1], s, path[:, 0]), np.interp(t * s[-1], s, path[:, 1])]
+        flow = box.axes["bottom"].value(flat[:, 0] / 800)
+        head = box.axes["left"].value(1 - flat[:, 1] / 500)
+        box.line(head, flow, width=0.8)
+        box.word(label, path[-1, 0] + 5, path[-1, 1])
+    curves, _, findings = scene.read()
+    assert diameters(curves) == [210, 200, 190]
+    assert not warnings(findings)
 
 
 def test_a_lone_line_takes_a_diameter_only_from_a_label_that_says_so():
