@@ -25,7 +25,21 @@ def checked_together(panels: Sequence[Panel]) -> tuple[Panel, ...]:
     """The panels with units filled in from, and doubts raised by, the axes beside them."""
     out = [_same_dimension(_lone_length(p)) for p in panels]
     out = _stacked(out)
-    return tuple(_gallons(p) for p in out)
+    return tuple(_gallons(_per_cent(p)) for p in out)
+
+
+def _per_cent(panel: Panel) -> Panel:
+    """An efficiency scale that ends below 15 % or runs past 150 % has lost or won a figure."""
+    said = []
+    for a in panel.axes:
+        top = float(a.value(np.array([0.0, 1.0])).max())
+        if a.unit == "%" and a.by == "read" and a.scale == "linear" and not 15 <= top <= 150:
+            message = f"an efficiency scale that ends at {top:.3g} % is unlikely."
+            axis = a.name.partition(".")[2]
+            remedy = f'Give two marks of axis "{axis}" of panel "{panel.name}" in the notes.'
+            where = Location(panel=panel.name, axis=a.name)
+            said.append(Finding("warning", "axis.factor", message, where, remedy))
+    return replace(panel, findings=panel.findings + tuple(said))
 
 
 def _lone_length(panel: Panel) -> Panel:
