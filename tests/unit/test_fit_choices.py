@@ -458,17 +458,17 @@ def test_points_no_file_no_text_too_many(tmp_path, monkeypatch):
         read_points(csv(tmp_path, "flow,head\nm3/h,m\n" + "1,2\n" * 6))
 
 
-@pytest.mark.slow
-def test_a_million_rows_are_read_in_bounded_memory(tmp_path):
+def test_many_rows_are_read_in_bounded_memory(tmp_path):
+    """Eight bytes a number and no more: a million rows take ten times this."""
     import tracemalloc
 
-    path = csv(tmp_path, "flow,head\nm3/h,m\n" + "12.5,31.25\n" * 1_000_000)
+    path = csv(tmp_path, "flow,head\nm3/h,m\n" + "12.5,31.25\n" * 100_000)
     tracemalloc.start()
     (curve,) = read_points(path)
     peak = tracemalloc.get_traced_memory()[1]
     tracemalloc.stop()
-    assert len(curve.flow_si) == 1_000_000
-    assert peak < 250e6
+    assert len(curve.flow_si) == 100_000
+    assert peak < 20e6
 
 
 def test_the_command_has_an_example():
