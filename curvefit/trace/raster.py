@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from curvefit.geometry import arc_length, resample
 from curvefit.records import Panel
+from curvefit.trace.branches import branches, carried_to
 from curvefit.trace.bundle import Member, untangled
 from curvefit.trace.centre import Line, centred, width_along
 from curvefit.trace.ends import settled
@@ -34,6 +35,7 @@ class Settings:
     loose: float = 0.035  #: ink that a line in any direction must show
     long: float = 0.4  #: length across of a line that needs no second look
     contact: float = 0.03  #: contact of two lines that makes a bundle
+    label: float = 0.045  #: what a label may hide of the end of a line across a family
     at_most: int = 40  #: lines of one ink
 
 
@@ -69,11 +71,25 @@ def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
         found += [Found(line, colour) for line in alone]
         found += [Found(m.line, colour, bundled=m) for m in members]
         found += [Found(x.line, colour, True, x.closed) for x in loose if not frame(x.line)]
+    family = [f.line for f in found if not f.loose]
+    family = [x for x in family if np.ptp(x.xy[:, 0]) > tolerances.long * panel.warp.size[0]]
+    reach = tolerances.label * panel.warp.size[0]
+    found = [part for one in found for part in _across(one, family, reach)]
     tied = [f for f in found if f.bundled is not None]
     known = [f.line for f in tied]
     free = [f for f in found if f.bundled is None and own_ink(f.line, known) >= least]
     kept = without_doubles([f.line for f in free], least)
     return tied + [free[i] for i in kept]
+
+
+def _across(one: Found, family: list[Line], reach: float) -> list[Found]:
+    """A line across a family from curve to curve, its branches apart; other lines as they are."""
+    if len(family) < 2 or one.closed or one.bundled is not None:
+        return [one]
+    if any(one.line is curve for curve in family):
+        return [one]
+    line = carried_to(one.line, family, reach)
+    return [replace(one, line=part, loose=True) for part in branches(line, family)]
 
 
 def _prepared(panel: Panel) -> tuple[Flat, Inked, float, Mask, Mask]:
@@ -123,7 +139,7 @@ def _sorted_out(
     loose = linked_lines(panel, layer, long, width, settings.loose * size)
     for line in short:
         over = [x for x in loose if own_ink(line, [x.line]) < 0.4 * line.good.sum()]
-        if any(x.line.good.sum() > 1.2 * line.good.sum() for x in over):
+        if any(x.line.good.sum() > 1.06 * line.good.sum() for x in over):
             continue
         loose = [x for x in loose if all(x is not o for o in over)]
         long.append(line)

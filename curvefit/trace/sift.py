@@ -32,12 +32,13 @@ def is_frame(line: Line, rows: Array, cols: Array, shape: tuple[int, ...], margi
 def without_doubles(lines: list[Line], least: float) -> list[int]:
     """Indices of the lines that show enough ink that no better line has taken.
 
-    least : ink that a line must have for itself [px].
+    least : ink that a line must have for itself [px], or half of its own where that is less.
     """
     order = sorted(range(len(lines)), key=lambda i: -float(lines[i].good.sum()))
     kept: list[int] = []
     for i in order:
-        if own_ink(lines[i], [lines[k] for k in kept]) >= least:
+        enough = min(least, 0.5 * float((lines[i].ink > 0.45).sum()))
+        if own_ink(lines[i], [lines[k] for k in kept]) >= max(enough, 4.0):
             kept.append(i)
     return sorted(kept)
 
