@@ -13,6 +13,7 @@ from curvefit.calibrate.doubts import marks_remedy
 from curvefit.calibrate.evidence import Evidence
 from curvefit.calibrate.labels import numeric, parts
 from curvefit.calibrate.neighbours import checked_together
+from curvefit.calibrate.titles import read_title
 from curvefit.errors import Location, NoChart, NotesError
 from curvefit.notes import PageNotes, PanelNotes
 from curvefit.records import Axis, Finding, Page, Panel, Word
@@ -156,7 +157,7 @@ def _words_of_boxes(evidences: Sequence[Evidence]) -> list[tuple[Word, ...]]:
 
 
 def _distance(e: Evidence, word: Word, number: bool) -> float:
-    """How far a word stands outside a box [page px]; a title belongs to the box above it first."""
+    """How far a word stands outside a box [page px]; a flow title to the box above it."""
     flat = e.warp.to_panel(word.box)
     if not np.isfinite(flat).all():
         return 1e9
@@ -166,8 +167,8 @@ def _distance(e: Evidence, word: Word, number: bool) -> float:
     x1, y1 = flat.max(0)
     dx = max(-(x0 + x1) / 2, (x0 + x1) / 2 - w, 0.0)
     above, below = max(-(y0 + y1) / 2, 0.0), max((y0 + y1) / 2 - h, 0.0)
-    if not number and x1 - x0 > y1 - y0 and dx == 0:
-        below *= 0.4  # titles and numbers of a flow axis stand below it
+    if not number and dx == 0 and read_title(word.text).dimension == "flow":
+        below *= 0.5  # the title of a flow axis stands below its box
     return float(np.hypot(dx, above + below)) * scale
 
 
