@@ -30,6 +30,8 @@ _KINDS = {
 def fit_plot(fit: FitOut, dpi: int = 120) -> bytes:
     """A PNG of one fit: above points, equation and band, then residuals, then leverage.
 
+    Leverage is that of a polynomial's points; other fits have no such panel.
+
     Parameters
     ----------
     fit : in the units in which it leaves
@@ -38,7 +40,10 @@ def fit_plot(fit: FitOut, dpi: int = 120) -> bytes:
     from matplotlib.figure import Figure
 
     figure = Figure(figsize=(7.0, 7.5), layout="constrained")
-    top, middle, bottom = figure.subplots(3, 1, sharex=True, height_ratios=(3, 1.3, 1))
+    levered = len(fit.fit.curves) == 1 and fit.fit.family == "polynomial"
+    heights = (3.0, 1.3, 1.0) if levered else (3.0, 1.3)
+    panels = figure.subplots(len(heights), 1, sharex=True, height_ratios=heights)
+    top, middle, bottom = panels[0], panels[1], panels[-1]
     quantity = QUANTITIES[fit.fit.curve.quantity]
     value_unit, flow_unit = unit(fit.units.value).print, unit(fit.units.flow).print
 
@@ -47,10 +52,11 @@ def fit_plot(fit: FitOut, dpi: int = 120) -> bytes:
     top.set_title(_title(fit), fontsize=10)
     _residuals(middle, fit)
     middle.set_ylabel(f"residual [{value_unit or '–'}]")
-    _leverages(bottom, fit)
-    bottom.set_ylabel("leverage")
+    if levered:
+        _leverages(bottom, fit)
+        bottom.set_ylabel("leverage")
     bottom.set_xlabel(f"Flow [{flow_unit}]")
-    for axes in (top, middle, bottom):
+    for axes in panels:
         axes.grid(True, color="0.85", linewidth=0.6)
         axes.set_axisbelow(True)
     picture = io.BytesIO()
@@ -109,9 +115,7 @@ def _residuals(axes: Any, fit: FitOut) -> None:
 
 def _leverages(axes: Any, fit: FitOut) -> None:
     """How much the fit at each point hangs on that point alone: near one, on nothing else."""
-    if len(fit.fit.curves) > 1 or fit.fit.degree is None:
-        axes.text(0.5, 0.5, "not of this kind of fit", transform=axes.transAxes, ha="center")
-        return
+    assert fit.fit.degree is not None
     flow, _ = _points(fit, fit.fit.curve)
     if len(np.unique(flow)) <= fit.fit.degree:
         return

@@ -15,6 +15,7 @@ from curvefit.fit.speed import fit_at_speed
 from curvefit.laws import shaft_power
 from curvefit.models import evaluate, extrema, power
 from curvefit.records import BUNDLED, Curve, Pump
+from curvefit.write.fit_plots import leverage
 
 FLOW = np.linspace(0.0, 0.05, 400)
 
@@ -218,6 +219,16 @@ def test_quantiles_agree_with_scipy():
     assert t_two_sided(0.95, 9) == pytest.approx(stats.t.ppf(0.975, 9), rel=1e-12)
     assert f_quantile(0.9, 2, 23) == pytest.approx(stats.f.ppf(0.9, 2, 23), rel=1e-12)
     assert chi_square(0.95, 3) == pytest.approx(stats.chi2.ppf(0.95, 3), rel=1e-12)
+
+
+def test_leverage_is_the_diagonal_of_the_hat_matrix():
+    """By its definition X(XᵀX)⁻¹Xᵀ; the sum is the number of terms, the lone end pulls most."""
+    flow = np.array([0.0, 0.01, 0.02, 0.03, 0.05])
+    found = leverage(flow, 2)
+    x = np.vander(flow / 0.05, 3)
+    np.testing.assert_allclose(found, np.diag(x @ np.linalg.inv(x.T @ x) @ x.T), rtol=1e-9)
+    assert found.sum() == pytest.approx(3)
+    assert found.argmax() == 4
 
 
 # --- derived ----------------------------------------------------------------------------------
