@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import unicodedata
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -85,13 +87,18 @@ def strokes(
     unit = 0.72 * size / 6.0
     x, lines = 0.0, []
     for char in text:
-        glyph = GLYPHS.get(char) or GLYPHS.get(char.upper(), "")
+        glyph = GLYPHS.get(char) or GLYPHS.get(_plain(char).upper(), "")
         wide = NARROW.get(char, 4.0)
         slant = 0.08 + (rng.normal(0, 0.02) if rng else 0.0)
         for stroke in filter(None, glyph.split("|")):
             lines.append(_pen(stroke, slant, rng) * unit + [x - (4.0 - wide) / 2 * unit, 0.0])
         x += (wide + 1.5) * unit
     return lines, max(x - 1.5 * unit, 0.0)
+
+
+def _plain(char: str) -> str:
+    """A letter without its accent."""
+    return unicodedata.normalize("NFKD", char)[0]
 
 
 def _pen(stroke: str, slant: float, rng: np.random.Generator | None) -> Array:
