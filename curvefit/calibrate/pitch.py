@@ -19,13 +19,13 @@ from curvefit.records import Finding
 
 __all__ = ["Pitch", "pitch_of", "too_wide"]
 
-#: width of a figure in heights, and whether it comes from single figures
+#: width of a figure in heights, and whether it comes from single figures or figures with points
 Pitch = tuple[float, bool]
 #: figures of all faces in use are narrower, in heights of a figure
 _WIDEST = 1.08
 #: the axes of one box are set in one face; their pitches differ by a few per cent
 _UNLIKE = 1.16
-#: single figures differ in width by themselves; a lost one would double it
+#: single figures, and points, differ in width by themselves; a lost figure adds half at least
 _UNLIKE_SINGLE = 1.4
 
 
@@ -37,7 +37,7 @@ def pitch_of(labels: Sequence[Label], chosen: Sequence[Reading | None]) -> Pitch
             continue
         digits = sum(c.isdigit() for c in lb.text)
         # a point takes half the room of a figure, a 1 has white at its sides
-        figures.append(digits)
+        figures.append(digits if lb.text.isdigit() else 1)
         put_in = 0.5 * (reading is not None and "put in" in reading.how)
         room = digits + put_in + 0.5 * (len(lb.text) - digits) - 0.1 * lb.text.count("1")
         found.append((lb.word.width / lb.word.height + 0.15) / room)
