@@ -73,6 +73,9 @@ def of_choice(line: Line, choice: Choice) -> None:
     """
     needed = ChoiceSettings().margin
     unread, close = choice.axis.quantity is None, choice.margin < needed
+    if choice.denied is not None:
+        _deny(line, choice)
+        return
     if not unread and not close:
         return
     line.doubts |= {"quantity", "axis"} if close else {"quantity"}
@@ -89,6 +92,21 @@ def of_choice(line: Line, choice: Choice) -> None:
             "curve.guess",
             f"this line was taken as {_words(choice.quantity)} on {choice.axis.name}: {why}",
             remedy=f"a [[curve]] note with {_at(line.trace)} and quantity or axis settles it",
+        )
+    )
+
+
+def _deny(line: Line, choice: Choice) -> None:
+    """Warn of a line whose label names what no axis of its panel shows."""
+    line.doubts |= {"quantity", "axis"}
+    line.findings.append(
+        Finding(
+            "warning",
+            "curve.guess",
+            f"a label names this line {_words(str(choice.denied))}, but no axis of the panel"
+            f" shows that; it was taken as {_words(choice.quantity)} on {choice.axis.name}",
+            remedy=f"give the missing axis two marks in the notes, or a [[curve]] note with"
+            f" {_at(line.trace)} and quantity",
         )
     )
 

@@ -54,7 +54,10 @@ def follow_leaders(
             continue
         k, foot = found
         gap = min(float(np.hypot(*(t.flat - foot).T).min()) for t in others)
+        plain = any(m.plain for m in moved[k].meanings)
         if gap > settings.at_line * moved[k].height + 2.0:
+            continue
+        if not plain and _crosses(leader, others):  # rather a level with its % unread
             continue
         kept = [t for t in kept if t is not leader]
         moved[k] = replace(moved[k], centre=foot, half=np.full(2, 1.0))
@@ -73,6 +76,16 @@ def _straight(trace: Trace, panel: Panel, settings: Settings) -> bool:
     k = int(np.argmax(off))
     return bool(
         max(_off_chord(trace.flat[: k + 1]).max(), _off_chord(trace.flat[k:]).max()) < allowed
+    )
+
+
+def _crosses(leader: Trace, others: Sequence[Trace]) -> bool:
+    """Whether a line runs across others on its way, as levels do and leaders seldom do."""
+    n = len(leader.flat)
+    middle = leader.flat[n // 5 : n - n // 5 : max(n // 40, 1)]
+    return any(
+        float(np.hypot(*(t.flat[None] - middle[:, None]).transpose(2, 0, 1)).min()) < 3.0
+        for t in others
     )
 
 

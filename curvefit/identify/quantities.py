@@ -63,13 +63,18 @@ class Settings:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Choice:
-    """One line's value axis and quantity, and how much dearer the next best was."""
+    """One line's value axis and quantity, and how much dearer the next best was.
+
+    named : the quantity that a label at the line names; denied : the same, where it is none that
+    any line of the panel was given.
+    """
 
     trace: Trace
     axis: Axis
     quantity: str
     margin: float
     named: str | None
+    denied: str | None = None
 
 
 def usable_axes(panel: Panel) -> tuple[tuple[Axis, ...], tuple[Axis, ...]]:
@@ -99,7 +104,7 @@ def choose(
     best, cost = _consistent(tables, settings)
     margins = _margins(tables, best, cost, settings)
     return [
-        Choice(trace, *table.options[j], float(margin), named)
+        Choice(trace, *table.options[j], float(margin), named, table.denied(named, pick))
         for table, pick, row in zip(tables, best, margins, strict=True)
         for trace, j, margin, named in zip(table.lines, pick, row, table.named, strict=True)
     ]
@@ -143,6 +148,11 @@ class _Table:
             )
             cost += self.settings.ink * (other and not own)
         return cost
+
+    def denied(self, named: str | None, pick: _Pick) -> str | None:
+        """The quantity that a label names, if no line of the panel was given it."""
+        held = any(named is not None and _alike(self.options[j][1], named) for j in pick)
+        return None if held else named
 
     def differs(self, a: int, b: int) -> bool:
         return self.options[a][0] is not self.options[b][0] or not _alike(
@@ -219,7 +229,7 @@ def _claims(
 ) -> tuple[_Claim, ...]:
     found = []
     for label in labels:
-        if label.masked or not lines:
+        if label.masked or not lines or _beside(label, lines[0].panel):
             continue
         gaps = np.array([spot(label, t).near for t in lines])
         if gaps.min() > settings.reach:
@@ -229,6 +239,14 @@ def _claims(
             if m.quantity is not None:
                 found.append(_Claim(m.quantity, behind, m.cost))
     return tuple(found)
+
+
+def _beside(label: Label, panel: Panel) -> bool:
+    """Whether a text stands where a title of an axis does, not at a line."""
+    width, height = panel.warp.size
+    x, y = label.centre
+    right = x > width and any(a.side == "right" for a in panel.axes)
+    return bool(x < 0 or y < 0 or y > height or right)
 
 
 def _named(i: int, claims: Sequence[_Claim]) -> str | None:

@@ -117,6 +117,17 @@ def test_a_tie_is_a_guess_and_says_so():
     assert all("quantity" in c.guessed for c in curves)
 
 
+def test_a_label_that_no_axis_bears_out_is_a_warning():
+    scene = Scene()
+    box = scene.box(HEAD, EFFICIENCY)
+    box.line(pump.head, label="H")
+    box.line(pump.efficiency, axis="right", label="η")
+    box.line(lambda q: 0.4 * pump.efficiency(q), axis="right", label="P")
+    curves, _, findings = scene.read()
+    assert "quantity" in curves[2].guessed
+    assert any("shaft power" in f.message and f.severity == "warning" for f in findings)
+
+
 def test_an_axis_that_does_not_say_its_quantity_takes_it_from_its_line():
     scene = Scene()
     box = scene.box((None, "m", 0.0, 50.0))
