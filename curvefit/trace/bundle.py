@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
-from itertools import permutations
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -11,6 +10,7 @@ from numpy.typing import NDArray
 from curvefit.trace.centre import Line
 from curvefit.trace.column import Run, columns_of, run_around, slope_of
 from curvefit.trace.ink import Layer
+from curvefit.trace.pairing import Arm, Zone, bent, paired, with_far_side
 
 __all__ = ["Member", "untangled"]
 
@@ -40,25 +40,6 @@ class _Strand:
     slope: Array
     run: Run
     clean: Bool
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class _Arm:
-    """A stretch of a strand that stands alone."""
-
-    x: Array
-    y: Array
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class _Zone:
-    """A stretch of common ink: columns, edges; arms that come in from the left and go on right."""
-
-    x: Array
-    top: Array
-    bottom: Array
-    left: tuple[int, ...]
-    right: tuple[int, ...]
 
 
 def untangled(lines: list[Line], layer: Layer, least: float) -> tuple[list[Line], list[Member]]:
@@ -144,14 +125,14 @@ def _told_apart(lines: list[Line], layer: Layer) -> list[Member]:
     margin = dict.fromkeys(range(len(arms)), 1.0)
     for k, zone in enumerate(zones):
         if not zone.left and len(zone.right) > 1:
-            zone = zones[k] = _with_far_side(zone, arms, edge_width, len(zone.right))
+            zone = zones[k] = with_far_side(zone, arms, edge_width, len(zone.right))
             follows |= {i: [] for i in zone.left}
             margin |= dict.fromkeys(zone.left, 1.0)
-        pairs, sure = _paired(zone, arms, edge_width)
+        pairs, sure = paired(zone, arms, edge_width)
         for a, b in pairs:
-            if _bent(arms[a], arms[b]) > 0.35:
-                a = min(range(len(arms)), key=lambda i: _bent(arms[i], arms[b]))
-            if _bent(arms[a], arms[b]) < 2.0:
+            if bent(arms[a], arms[b]) > 0.35:
+                a = min(range(len(arms)), key=lambda i: bent(arms[i], arms[b]))
+            if bent(arms[a], arms[b]) < 2.0:
                 follows[b].append(a)
                 margin[b] = min(margin[b], sure)
     made = {i for i in follows if i >= measured}
@@ -196,12 +177,12 @@ def _strands(lines: list[Line], layer: Layer, width: float) -> tuple[list[_Stran
 
 def _arms_and_zones(
     strands: list[_Strand], shape: tuple[int, ...], width: float
-) -> tuple[list[_Arm], list[_Zone]]:
+) -> tuple[list[Arm], list[Zone]]:
     """Clean stretches, and the connected areas of common ink between them."""
     import cv2
 
     mask = np.zeros(shape, np.uint8)
-    arms: list[_Arm] = []
+    arms: list[Arm] = []
     least = int(max(15, 3 * width))
     for s in strands:
         alone = _without_short(s.clean, least)
@@ -209,7 +190,7 @@ def _arms_and_zones(
         for a, b in zip(edges[::2], edges[1::2], strict=True):
             keep = s.clean[a:b]
             centre = 0.5 * (s.run.top[a:b] + s.run.bottom[a:b])
-            arms.append(_Arm(s.x[a:b][keep], centre[keep]))
+            arms.append(Arm(s.x[a:b][keep], centre[keep]))
         for k in np.nonzero(~alone & np.isfinite(s.run.top))[0]:
             column = int(s.x[k])
             mask[int(s.run.top[k]) : int(s.run.bottom[k]) + 1, max(column - 8, 0) : column + 9] = 1
@@ -225,11 +206,11 @@ def _arms_and_zones(
         if len(x) < 4:
             x, top, bottom = _edges_inside(strands, [], labels, zone, width)
         if len(x) > 3:
-            zones.append(_Zone(x, top, bottom, left, right))
+            zones.append(Zone(x, top, bottom, left, right))
     return arms, zones
 
 
-def _away(strand: _Strand, arm: _Arm) -> Array:
+def _away(strand: _Strand, arm: Arm) -> Array:
     """Vertical distance of a strand from an arm, infinite beside it."""
     return np.abs(strand.y - np.interp(strand.x, arm.x, arm.y, left=np.inf, right=np.inf))
 
@@ -246,7 +227,7 @@ def _without_short(clean: Bool, least: int) -> Bool:
     return out
 
 
-def _at(labels: NDArray[np.int32], arm: _Arm, end: int, zone: int, width: float) -> bool:
+def _at(labels: NDArray[np.int32], arm: Arm, end: int, zone: int, width: float) -> bool:
     """Whether an arm's end (0 its left, −1 its right) lies at a zone."""
     x, y = int(arm.x[end]), round(arm.y[end])
     beyond = slice(x, x + 14) if end else slice(max(x - 13, 0), x + 1)
@@ -256,7 +237,7 @@ def _at(labels: NDArray[np.int32], arm: _Arm, end: int, zone: int, width: float)
 
 def _edges_inside(
     strands: list[_Strand],
-    arms: list[_Arm],
+    arms: list[Arm],
     labels: NDArray[np.int32],
     zone: int,
     width: float,
@@ -277,110 +258,10 @@ def _edges_inside(
     return x, np.array([edges[int(k)][0] for k in x]), np.array([edges[int(k)][1] for k in x])
 
 
-def _paired(
-    zone: _Zone, arms: list[_Arm], edge_width: float
-) -> tuple[list[tuple[int, int]], float]:
-    """Arms of the left with arms of the right, and how sure that is (0–1)."""
-    left, right = zone.left, zone.right
-    if not left or not right:
-        return [], 1.0
-    if len(right) > 4 or len(left) > 4:
-        return [(a, b) for a, b in zip(left, right, strict=False)], 0.0
-    trials = [
-        (_misfit(zone, arms, choice, edge_width), choice)
-        for choice in _choices(left, right)
-        if all(arms[a].x[-1] < arms[b].x[0] + 15 for a, b in choice)
-    ]
-    if not trials:
-        return [], 0.0
-    trials.sort(key=lambda t: t[0])
-    best = trials[0]
-    if len(trials) == 1:
-        return best[1], 1.0
-    margin = 1.0 - best[0] / max(trials[1][0], 1e-9)
-    return best[1], float(margin)
-
-
-def _bent(a: _Arm, b: _Arm) -> float:
-    """How badly one cubic runs through two arms, one after the other [px²]."""
-    if a.x[-1] > b.x[0] + 15:
-        return float("inf")
-    window = 1.2 * abs(b.x[0] - a.x[-1]) + 60.0
-    before, after = a.x > a.x[-1] - window, b.x < b.x[0] + window
-    x, y = np.r_[a.x[before], b.x[after]], np.r_[a.y[before], b.y[after]]
-    if len(x) < 8:
-        return float("inf")
-    fit = np.polynomial.Polynomial.fit(x, y, 3)
-    # among equals the nearest
-    return float(((fit(x) - y) ** 2).mean() + 1e-4 * max(b.x[0] - a.x[-1], 0))
-
-
-def _with_far_side(zone: _Zone, arms: list[_Arm], edge_width: float, count: int) -> _Zone:
-    """The zone with arms made from its edges where it is wide again beyond its narrowest place.
-
-    Lines that run together from their start on may cross inside the common ink: it is then wide,
-    narrow, and wide again. The edges of the far part are an upper and a lower arm.
-    """
-    from scipy.ndimage import gaussian_filter1d
-
-    slope = np.gradient(gaussian_filter1d(0.5 * (zone.top + zone.bottom), 6.0), zone.x)
-    steep = np.sqrt(1 + slope * slope)
-    spread = gaussian_filter1d(zone.bottom - zone.top - edge_width * steep, 5.0)
-    narrow = int(spread[len(spread) // 4 :].argmin()) + len(spread) // 4
-    wide = (np.arange(len(spread)) < narrow) & (spread > 0.6 * spread[:narrow].max(initial=0))
-    if wide.sum() < 30 or spread[wide].mean() < 0.35 * edge_width + 2 * max(spread[narrow], 0.3):
-        return zone
-    x, half = zone.x[wide], 0.5 * edge_width * steep[wide]
-    upper, lower = zone.top[wide] + half, zone.bottom[wide] - half
-    first = len(arms)
-    for share in np.linspace(0, 1, count):
-        arms.append(_Arm(x, upper + share * (lower - upper)))
-    return replace(zone, left=tuple(range(first, len(arms))))
-
-
-def _choices(left: tuple[int, ...], right: tuple[int, ...]) -> list[list[tuple[int, int]]]:
-    """All ways to let every arm on the right come from one on the left, or the other way round."""
-    if len(left) >= len(right):
-        return [list(zip(order, right, strict=True)) for order in permutations(left, len(right))]
-    short = [[*pick] for pick in _products(left, len(right)) if set(pick) == set(left)]
-    return [list(zip(pick, right, strict=True)) for pick in short]
-
-
-def _products(items: tuple[int, ...], count: int) -> list[tuple[int, ...]]:
-    from itertools import product
-
-    return list(product(items, repeat=count))
-
-
-def _misfit(
-    zone: _Zone, arms: list[_Arm], pairs: list[tuple[int, int]], edge_width: float
-) -> float:
-    """Mean squared distance [px²] of quartics from the paired arms and the zone's edges."""
-    centre, scale = zone.x.mean(), max(np.ptp(zone.x), 40.0)
-    window = 1.2 * np.ptp(zone.x) + 60.0
-    heights, total, count = [], 0.0, 0
-    for a, b in pairs:
-        before = arms[a].x > zone.x[0] - window
-        after = arms[b].x < zone.x[-1] + window
-        x = np.r_[arms[a].x[before], arms[b].x[after]]
-        y = np.r_[arms[a].y[before], arms[b].y[after]]
-        if len(x) < 8:
-            return 1e6
-        fit = np.polynomial.Polynomial.fit((x - centre) / scale, y, 4)
-        total += float(((fit((x - centre) / scale) - y) ** 2).sum())
-        count += len(x)
-        heights.append((fit((zone.x - centre) / scale), fit.deriv()((zone.x - centre) / scale)))
-    half = [0.5 * edge_width * np.sqrt(1 + (d / scale) ** 2) for _, d in heights]
-    top = np.min([h - k for (h, _), k in zip(heights, half, strict=True)], axis=0)
-    bottom = np.max([h + k for (h, _), k in zip(heights, half, strict=True)], axis=0)
-    off = np.minimum((top - zone.top) ** 2, 6) + np.minimum((bottom - zone.bottom) ** 2, 6)
-    return total / count + float(off.mean()) + 0.01
-
-
 def _placed(
     chains: list[tuple[list[int], float]],
-    arms: list[_Arm],
-    zones: list[_Zone],
+    arms: list[Arm],
+    zones: list[Zone],
     made: set[int],
     edge_width: float,
     width: float,
@@ -447,7 +328,7 @@ class _Curve:
 
 
 def _share_edges(
-    zone: _Zone,
+    zone: Zone,
     inside: list[int],
     curves: list[_Curve],
     edge_width: float,
@@ -473,7 +354,7 @@ def _share_edges(
 
 
 def _member(
-    k: int, curves: list[_Curve], own: list[_Zone], sure: float, edge_width: float, width: float
+    k: int, curves: list[_Curve], own: list[Zone], sure: float, edge_width: float, width: float
 ) -> Member:
     curve = curves[k]
     at = curve.at

@@ -36,6 +36,7 @@ class Settings:
     long: float = 0.4  #: length across of a line that needs no second look
     contact: float = 0.03  #: contact of two lines that makes a bundle
     label: float = 0.045  #: what a label may hide of the end of a line across a family
+    misses: int = 4  #: tracks without enough clean ink after which no more are tried
     at_most: int = 40  #: lines of one ink
 
 
@@ -171,11 +172,16 @@ def _follow(layer: Layer, width: float, settings: Settings) -> list[Line]:
     known = cv2.resize(layer.known, size, interpolation=how)
     scale = np.array([cols / size[0], rows / size[1]])
     lines: list[Line] = []
+    misses = 0
     for _ in range(settings.at_most):
         track = best_track(across(small, known, settings.tracking), settings.tracking)
         if track is None or track.score < settings.shortest * size[0]:
             break
         line, own = _refined(layer, lines, track, scale, width)
+        if line is None or line.good.sum() < 0.6 * settings.shortest * cols:
+            misses += 1
+        if misses > settings.misses:
+            break
         if line is None:
             peel(small, known, track.x, track.y, 0.5 * own * k + 0.3)
             continue
