@@ -30,7 +30,7 @@ def project(matrix: ArrayLike, xy: ArrayLike) -> Array:
     """
     points = np.asarray(xy, float).reshape(-1, 2)
     h = np.c_[points, np.ones(len(points))] @ np.asarray(matrix, float).T
-    return h[:, :2] / h[:, 2:]
+    return np.asarray(h[:, :2] / h[:, 2:])
 
 
 def homography(source: ArrayLike, target: ArrayLike) -> Array:
@@ -102,7 +102,7 @@ class Warp:
     def to_panel(self, xy: ArrayLike) -> Array:
         """Page pixels → straightened box pixels; arrays of shape (n, 2)."""
         flat = project(self.matrix, xy)
-        return flat + self._bow(flat)
+        return np.asarray(flat + self._bow(flat))
 
     def to_page(self, xy: ArrayLike) -> Array:
         """Straightened box pixels → page pixels; arrays of shape (n, 2)."""
