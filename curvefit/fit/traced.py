@@ -145,7 +145,7 @@ def _unexplained(flow: Array, residual: Array, u: Array, grid: Array) -> Array:
     weight = np.convolve(np.ones(len(flow)), around, "same")
     mean = np.convolve(residual, around, "same") / weight
     beyond = np.sign(mean) * np.maximum(np.abs(mean) - 2.0 * u, 0.0)
-    return np.interp(grid, flow, beyond)
+    return np.asarray(np.interp(grid, flow, beyond))
 
 
 def outside_finding(curve: Curve, grid: Array, flow: Array) -> Finding:
