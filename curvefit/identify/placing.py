@@ -136,7 +136,8 @@ def text_height(panel: Panel) -> float:
     """Usual height of the text of a panel [box px]: of words rather than of scraps."""
     sure = [w for w in panel.words if len(w.text.strip()) > 2 and w.score > 0.7]
     sizes = [w.height for w in sure or panel.words]
-    return float(np.median(sizes)) * _scale(panel) if sizes else 0.03 * panel.warp.size[1]
+    found = float(np.median(sizes)) * _scale(panel) if sizes else 0.03 * panel.warp.size[1]
+    return max(found, 1.0)
 
 
 def label_of(panel: Panel, word: Word) -> Label:

@@ -219,7 +219,7 @@ def _diameters(clean: str, text: str) -> list[Meaning]:
     if match:
         code = {"m": "mm", "c": "cm", "i": "[in_i]"}[match[2][0].lower()]
         add(_float(match[1]), code, 0.0, True)
-    match = re.fullmatch(r"(\d{2,4}(?:[.,]\d)?)\s?[-/]\s?(\d{2,4})(?:\s?mm)?", body)
+    match = re.fullmatch(r"([1-9]\d{1,3}(?:[.,]\d)?)\s?[-/]\s?(\d{2,4})(?:\s?mm)?", body)
     if match and abs(float(match[2]) / _float(match[1]) - 1) < 0.25:  # a stepped trim
         add(_float(match[1]), "mm", 0.2, said)
     number = re.fullmatch(r"(\d{2,4}(?:[.,]\d)?)", body)

@@ -2,6 +2,8 @@
 
 import numpy as np
 import pytest
+from hypothesis import example, given
+from hypothesis import strategies as st
 
 from curvefit.identify.pumps import read_pump, speed_in
 from curvefit.identify.wording import meanings, quantity_named
@@ -117,3 +119,10 @@ def test_two_speeds_on_a_page_are_no_rated_speed():
 )
 def test_densities(text, density):
     assert pump(text).density_si == density
+
+
+@given(st.text(alphabet="0123456789.,/-%\"' ØDHnPkWz=", max_size=9))
+@example("00/11")
+@example("0/0")
+def test_no_text_breaks_the_reading_and_nothing_is_named_by_a_zero(text):
+    assert all(m.value is None or m.value > 0 for m in meanings(text))
