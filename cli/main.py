@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import sys
 
 import typer
@@ -50,8 +51,18 @@ app.command()(batch)
 app.command()(demo)
 
 
+def _one_thread() -> None:
+    """Keeps linear algebra on one thread: the many small products only wait for each other.
+
+    Must come before numpy is loaded; what the user has set is left alone.
+    """
+    for name in ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS"):
+        os.environ.setdefault(name, "1")
+
+
 def main(arguments: list[str] | None = None) -> None:
     """Runs the command line and exits with the code that its documentation promises."""
+    _one_thread()
     given = sys.argv[1:] if arguments is None else arguments
     sys.exit(ended(lambda: app(args=given, standalone_mode=False), debug="--debug" in given))
 

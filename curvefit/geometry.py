@@ -121,7 +121,7 @@ class Warp:
 def arc_length(xy: ArrayLike) -> Array:
     """Length along a polyline at each of its points; shape (n,)."""
     points = np.asarray(xy, float)
-    return np.r_[0.0, np.cumsum(np.hypot(*np.diff(points, axis=0).T))]
+    return np.asarray(np.r_[0.0, np.cumsum(np.hypot(*np.diff(points, axis=0).T))])
 
 
 def resample(xy: ArrayLike, step: float) -> Array:
@@ -130,4 +130,4 @@ def resample(xy: ArrayLike, step: float) -> Array:
     s = arc_length(points)
     n = max(int(np.ceil(s[-1] / step)), 1)
     t = np.linspace(0.0, s[-1], n + 1)
-    return np.c_[np.interp(t, s, points[:, 0]), np.interp(t, s, points[:, 1])]
+    return np.asarray(np.c_[np.interp(t, s, points[:, 0]), np.interp(t, s, points[:, 1])])

@@ -56,7 +56,7 @@ def summary_csv(outcomes: Iterable[Mapping[str, Any]]) -> str:
     writer = csv.writer(out, lineterminator="\r\n")
     writer.writerow(_COLUMNS)
     for one in outcomes:
-        pages = one["pages"] or ({},)
+        pages: Iterable[Mapping[str, Any]] = one["pages"] or ({},)
         for page in pages:
             counts = page.get("findings", {})
             row = (
