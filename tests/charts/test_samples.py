@@ -114,8 +114,10 @@ def test_the_published_pump_test_is_read_back(read_sample):
     curves = {m.truth.spec["quantity"]: m.curve for m in got.matches}
     for quantity, (values, si, span) in published.items():
         curve = curves[quantity]
-        read = np.interp(flow[1:-1], curve.flow_si, curve.value_si) / si
-        assert np.abs(read - values[1:-1]).max() < 0.005 * span, quantity
+        inside = (flow >= curve.flow_si[0]) & (flow <= curve.flow_si[-1])
+        assert inside.sum() >= 5, f"{quantity}: ends are asked for above"
+        read = np.interp(flow[inside], curve.flow_si, curve.value_si) / si
+        assert np.abs(read - np.array(values)[inside]).max() < 0.005 * span, quantity
 
 
 def test_a_report_of_two_pages_is_read_where_its_chart_is(read_sample):
