@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["Letters", "TextLine", "letters_of", "pieces_of", "text_lines"]
+__all__ = ["Letters", "TextLine", "letters_of", "no_dashes", "pieces_of", "text_lines", "without"]
 
 Array = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -100,11 +100,9 @@ def _is_bar(label: NDArray[np.int32], box: Ints, index: int) -> bool:
 def text_lines(letters: Letters, zones: Ints) -> list[TextLine]:
     """Lines of text made of characters; characters of different zones never join.
 
-    zones : (n,) the plot box that each stands in, 0 outside. Inside a box a bar counts only next
-    to a character of its own height (as a 1 does): the rest are dashes and pieces of curves.
+    zones : (n,) the plot box that each stands in, 0 outside.
     """
-    keep = (zones == 0) | ~letters.bar | _beside_letter(letters, zones)
-    boxes, zones = letters.boxes[keep], zones[keep]
+    boxes = letters.boxes
     if not len(boxes):
         return []
     size = np.maximum(boxes[:, 2] - boxes[:, 0], boxes[:, 3] - boxes[:, 1])
@@ -134,19 +132,23 @@ def text_lines(letters: Letters, zones: Ints) -> list[TextLine]:
     return lines
 
 
-def _beside_letter(letters: Letters, zones: Ints) -> NDArray[np.bool_]:
-    """Bars along x or y with a real character of the same height close by."""
-    out = np.zeros(len(letters.bar), bool)
+def no_dashes(letters: Letters, zones: Ints) -> NDArray[np.bool_]:
+    """Which are no dashes or pieces of curves.
+
+    Inside a box a bar counts only across the line of a character of its own height (as a 1 does).
+    """
+    out: NDArray[np.bool_] = np.asarray((zones == 0) | ~letters.bar, bool)
     real = letters.boxes[~letters.bar]
     if not len(real):
         return out
     tall = np.maximum(real[:, 2] - real[:, 0], real[:, 3] - real[:, 1])
     for i in np.flatnonzero(letters.bar & (zones > 0)):
-        x0, y0, x1, y1 = letters.boxes[i]
-        size = max(x1 - x0, y1 - y0)
-        gap_x = np.maximum(real[:, 0] - x1, x0 - real[:, 2])
-        gap_y = np.maximum(real[:, 1] - y1, y0 - real[:, 3])
-        near = np.maximum(gap_x, gap_y) < 0.45 * size
+        box = letters.boxes[i]
+        size = float((box[2:] - box[:2]).max())
+        along = int(np.argmin(box[2:] - box[:2]))  # the line runs across the bar
+        gap = np.maximum(real[:, along] - box[along + 2], box[along] - real[:, along + 2])
+        off = np.abs(real[:, [1 - along, 3 - along]] - box[[1 - along, 3 - along]]).max(1)
+        near = (gap < 0.45 * size) & (off < 0.3 * size)
         out[i] = bool((near & (np.abs(tall - size) < 0.25 * size)).any())
     return out
 
@@ -177,12 +179,18 @@ def _line(letters: Array, vertical: bool, zone: int) -> TextLine | None:
     return TextLine((x0, y0, x1, y1), vertical, letters[order], zone)
 
 
+def without(line: TextLine, k: int) -> TextLine | None:
+    """The line without its first (0) or last (-1) character."""
+    return _line(line.letters[1:] if k == 0 else line.letters[:-1], line.vertical, line.zone)
+
+
 def pieces_of(line: TextLine) -> list[TextLine]:
     """The line cut where its characters stand farther apart than digits of one number do."""
     a = 1 if line.vertical else 0
     reach = np.maximum.accumulate(line.letters[:, a + 2])
     gap = line.letters[1:, a] - reach[:-1]
-    cuts = np.flatnonzero(gap > _APART * line.height) + 1
+    tall = float(np.percentile(line.letters[:, 3 - a] - line.letters[:, 1 - a], 75))
+    cuts = np.flatnonzero(gap > _APART * tall) + 1
     parts = [_line(part, line.vertical, line.zone) for part in np.split(line.letters, cuts)]
     return [p for p in parts if p is not None]
 

@@ -8,7 +8,15 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from curvefit.calibrate.glyphs import TextLine, letters_of, pieces_of, text_lines
+from curvefit.calibrate.glyphs import (
+    TextLine,
+    letters_of,
+    no_dashes,
+    pieces_of,
+    text_lines,
+    without,
+)
+from curvefit.calibrate.linework import character_size, crossings, long_strokes
 from curvefit.geometry import project
 from curvefit.records import Word
 
@@ -25,10 +33,12 @@ _MARGIN = 0.22  # of the line's height, left white around a crop
 class Lettering:
     """The text of a straightened page, before it is read.
 
-    image : black on white, lines and curves taken out. lines : where text stands.
+    image : black on white, lines and curves taken out. plain : the same with them. lines : where
+    text stands.
     """
 
     image: Image
+    plain: Image
     lines: tuple[TextLine, ...]
 
 
@@ -53,9 +63,18 @@ def find_text(
 
     dark = (flat > _threshold(flat)).astype(np.uint8)
     long_side = max(flat.shape)
-    runs = _long_runs(dark, max(30, int(0.024 * long_side)), zone_of, rules)
-    drawn = (frame > 0) | (ticks > 0) | runs
-    dark[drawn] = 0
+    sides = (frame > 0) | (ticks > 0)
+    gone = sides | _long_runs(dark, max(30, int(0.024 * long_side)), zone_of, rules)
+    inside = (zone_of > 0).astype(np.uint8)
+    left = dark * ~gone
+    size = character_size(left * (1 - inside), 7, _TALLEST * long_side)
+    if size is not None:
+        strokes = long_strokes(left * inside, size)
+        left[strokes] = 0
+        within = (strokes | gone) & ~sides & (dark * inside > 0)
+        crossed = crossings(left * inside, within, 1 + 0.2 * size)
+        gone = (strokes | gone) & ~crossed
+    dark[gone] = 0
     letters = letters_of(dark, _TALLEST * long_side)
     at_side = np.unique(letters.label[cv2.dilate(frame, np.ones((3, 3), np.uint8)) > 0])
     at_tick = np.unique(letters.label[cv2.dilate(ticks, np.ones((7, 7), np.uint8)) > 0])
@@ -64,12 +83,15 @@ def find_text(
     crumb = (letters.bar | letters.speck) & np.isin(letters.index, [*at_tick, *at_side])
     crumb |= (zones > 0) & np.isin(letters.index, at_side)
     letters, zones = letters.of(~crumb), zones[~crumb]
+    keep = no_dashes(letters, zones)
+    letters, zones = letters.of(keep), zones[keep]
     lines = text_lines(letters, zones)
     text = np.zeros(int(letters.label.max()) + 1, bool)
     text[letters.index] = True
     other = (letters.label > 0) & ~text[letters.label]
-    other = (cv2.dilate(other.astype(np.uint8), np.ones((3, 3), np.uint8)) > 0) | drawn
-    return Lettering(255 - np.where(other & ~text[letters.label], 0, flat), tuple(lines))
+    other = (cv2.dilate(other.astype(np.uint8), np.ones((3, 3), np.uint8)) > 0) | gone
+    image = 255 - np.where(other & ~text[letters.label], 0, flat)
+    return Lettering(image, 255 - flat, tuple(lines))
 
 
 def _threshold(flat: Image) -> float:
@@ -125,11 +147,12 @@ def read_lines(
     matrix : (3, 3) page px → straightened px. turn : quarter turns clockwise that set the page
     upright.
     """
-    first = _read(lettering.image, lines, turn)
+    first = _read(lettering, lines, turn)
     # numbers side by side are several, words are one line
     crowded = [r for r in first if _SEVERAL.match(r.text) and len(pieces_of(r.line)) > 1]
     parts = [p for r in crowded for p in pieces_of(r.line)]
-    held = [r for r in first if r not in crowded] + _read(lettering.image, parts, turn)
+    held = [r for r in first if r not in crowded] + _read(lettering, parts, turn)
+    held = _with_units(_trimmed(lettering, held, turn))
     back = np.linalg.inv(matrix)
     return tuple(Word(r.text, project(back, _corners(r.line.box, r.turn)), r.score) for r in held)
 
@@ -142,10 +165,73 @@ class _Read:
     score: float
 
 
-_SEVERAL = re.compile(r"^[\d.,%\s−-]{2,}$")
+_SEVERAL = re.compile(r"^[\d.,%\s−–—_-]{2,}$")
 
 
-def _read(image: Image, lines: list[TextLine], turn: int) -> list[_Read]:
+_FIRST = "0123456789OoQCGDcøØ⌀∅@φΦ("  # what a label begins with, or its Ø is read as
+_LAST = re.compile(r"(^[^%]*\w|[%\"″”'])$")
+
+
+def _trimmed(lettering: Lettering, read: list[_Read], turn: int) -> list[_Read]:
+    """Labels without the end of a curve that stands in their row, where they read better so."""
+    odd = [
+        r
+        for r in read
+        if r.line.zone
+        and len(r.line.letters) > 2
+        and any(c.isdigit() for c in r.text)
+        and not _LABEL.match(r.text)
+    ]
+    ends = [(r, 0) for r in odd if r.text[0] not in _FIRST or _flat(r.line)]
+    ends += [(r, -1) for r in odd if not _LAST.search(r.text)]
+    shorter = [(r, part) for r, k in ends if (part := without(r.line, k))]
+    again = {id(x.line): x for x in _read(lettering, [part for _, part in shorter], turn)}
+    best = {id(r): r for r in read}
+    for r, part in shorter:
+        new = again.get(id(part))
+        if new is not None and _LABEL.match(new.text):
+            old = best[id(r)]
+            if not _LABEL.match(old.text) or len(new.text) > len(old.text):
+                best[id(r)] = new
+    return list(best.values())
+
+
+def _flat(line: TextLine) -> bool:
+    """Whether what comes first lies: a piece of a line, no figure."""
+    sizes = line.letters[:, 2:] - line.letters[:, :2]
+    along, across = (1, 0) if line.vertical else (0, 1)
+    tall = float(np.percentile(sizes[:, across], 75))
+    first = sizes[-1 if line.vertical else 0]
+    return bool(first[across] < 0.8 * tall and first[along] > 0.8 * tall)
+
+
+_UNIT = re.compile(r"^(mm|rpm|1/min|min-1|Hz|in)$")
+_BARE = re.compile(r"^[ØøD⌀∅]?\s?\d[\d.,]*$")
+
+
+def _with_units(read: list[_Read]) -> list[_Read]:
+    """A unit one space behind a number inside a box is the end of its label."""
+    numbers = [r for r in read if r.line.zone and not r.line.vertical and _BARE.match(r.text)]
+    out = {id(r): r for r in read}
+    for unit in (r for r in read if r.line.zone and _UNIT.match(r.text)):
+        x0, y0, x1, y1 = unit.line.box
+        for r in numbers:
+            a0, b0, a1, b1 = r.line.box
+            tall = b1 - b0
+            if -0.2 * tall < x0 - a1 < 1.6 * tall and abs(y1 - b1) < 0.4 * tall and r.turn == 0:
+                line = TextLine(
+                    (a0, min(b0, y0), x1, max(b1, y1)),
+                    False,
+                    np.r_[r.line.letters, unit.line.letters],
+                    r.line.zone,
+                )
+                out[id(r)] = _Read(line, 0, f"{r.text} {unit.text}", min(r.score, unit.score))
+                out.pop(id(unit), None)
+                break
+    return list(out.values())
+
+
+def _read(lettering: Lettering, lines: list[TextLine], turn: int) -> list[_Read]:
     from curvefit.ocr import NUMERIC, readings
 
     jobs: list[tuple[TextLine, int]] = []
@@ -154,17 +240,32 @@ def _read(image: Image, lines: list[TextLine], turn: int) -> list[_Read]:
             jobs.append((line, turn))
         else:  # upwards or downwards: both are tried
             jobs += [(line, (turn + 1) % 4), (line, (turn + 3) % 4)]
-    read = readings([crop_of(image, line, t) for line, t in jobs], (None, NUMERIC))
+    crops = [crop_of(lettering.image, line, t) for line, t in jobs]
+    for (line, t), crop in list(zip(jobs, crops, strict=True)):
+        plain = crop_of(lettering.plain, line, t)
+        if line.zone and not np.array_equal(crop, plain):  # a line crosses it: with it as well
+            jobs.append((line, t))
+            crops.append(plain)
     best: dict[int, _Read] = {}
-    for (line, t), (free, number) in zip(jobs, read, strict=True):
+    worth: dict[int, float] = {}
+    for (line, t), (free, number) in zip(jobs, readings(crops, (None, NUMERIC)), strict=True):
         text, score = number if _stands_for_number(free[0], number) else free
         text = _tidy(text, line)
-        worth = score * min(len(text), 8)
-        if _plausible(text, score, line) and (
-            id(line) not in best or worth > best[id(line)].score * min(len(best[id(line)].text), 8)
-        ):
-            best[id(line)] = _Read(line, t, text, score)
+        value = _worth(text, score)
+        if _plausible(text, score, line) and value > worth.get(id(line), 0.0):
+            best[id(line)], worth[id(line)] = _Read(line, t, text, score), value
     return list(best.values())
+
+
+_LABEL = re.compile(
+    r"^([ØøD⌀∅]?\s?\d{2,4}(\s?(mm|rpm|1/min|min-1|Hz))?|\d{1,2}([.,]\d)?\s?%|"
+    r"\d{1,2}( \d{1,2}/\d{1,2})?[\"″”])$"
+)
+
+
+def _worth(text: str, score: float) -> float:
+    """Of a reading: surer and longer is better, and best what curves are labelled with."""
+    return score * min(len(text), 8) * (1.25 if _LABEL.match(text) else 1.0)
 
 
 def _stands_for_number(free: str, number: tuple[str, float]) -> bool:
@@ -178,11 +279,14 @@ def _stands_for_number(free: str, number: tuple[str, float]) -> bool:
     )
 
 
+_STROKES = frozenset("1lIiíìïj|/\\")  # what a dash alone is read as
+
+
 def _plausible(text: str, score: float, line: TextLine) -> bool:
     """Not a crumb of a drawing: inside a box, strokes read as a sign or two are no words."""
     if not any(c.isalnum() for c in text):
         return False
-    if line.zone and len(text) <= 2 and score < 0.6:
+    if line.zone and len(text) <= 2 and (score < 0.6 or text in _STROKES):
         return False
     return score > 0.3
 
@@ -194,6 +298,7 @@ def _corners(box: tuple[float, float, float, float], turn: int) -> Array:
     return np.roll(np.array([[x0, y0], [x1, y0], [x1, y1], [x0, y1]]), turn, axis=0)
 
 
+_TAIL = re.compile(r"^(\d[\d.,]*\d|\d|\d[\d.,]*\s?%)\s*[-–—_.]$")
 _NUMBER = re.compile(r"^[-−–—]?\s*\d")
 
 
@@ -202,8 +307,7 @@ def _tidy(text: str, line: TextLine) -> str:
 
     Behind a number it is the end of a tick.
     """
-    if text[-1:] in "-–—" and text[:-1].strip().replace(".", "").replace(",", "").isdigit():
-        text = text[:-1].strip()
+    text = _TAIL.sub(r"\1", text)
     if not _NUMBER.match(text) or text[0].isdigit():
         return text
     first = line.letters[0] if not line.vertical else line.letters[-1]
