@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -33,13 +33,14 @@ class Member:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class _Strand:
-    """A tracked line by columns, with the run of ink around it."""
+    """A tracked line by columns, with the run of ink around it; blank: between two dashes."""
 
     x: Array
     y: Array
     slope: Array
     run: Run
     clean: Bool
+    blank: Bool
 
 
 def untangled(lines: list[Line], layer: Layer, least: float) -> tuple[list[Line], list[Member]]:
@@ -65,10 +66,26 @@ def untangled(lines: list[Line], layer: Layer, least: float) -> tuple[list[Line]
             continue
         told = _told_apart([lines[i] for i in group], layer)
         if told:
-            members += told
+            members += [_inked(member, [lines[i] for i in group]) for member in told]
         else:
             alone += [lines[i] for i in group]
     return alone, members
+
+
+def _inked(member: Member, lines: list[Line]) -> Member:
+    """The member with the ink that was seen along the line nearest to it: its dashes."""
+    at, height = member.line.xy.T
+
+    def away(line: Line) -> float:
+        x, y = columns_of(line)
+        apart = np.abs(np.interp(at, x, y, left=np.nan, right=np.nan) - height)
+        return float(np.nanmedian(apart)) if np.isfinite(apart).any() else np.inf
+
+    source = min(lines, key=away)
+    order = np.argsort(source.xy[:, 0], kind="stable")
+    columns = source.xy[order, 0]
+    seen = {k: np.interp(at, columns, getattr(source, k)[order]) for k in ("ink", "known", "side")}
+    return replace(member, line=replace(member.line, **seen))
 
 
 def _groups(lines: list[Line], least: float) -> list[list[int]]:
@@ -171,8 +188,17 @@ def _strands(lines: list[Line], layer: Layer, width: float) -> tuple[list[_Stran
             if j != k:
                 other = np.interp(x, ox, oy, left=np.inf, right=np.inf)
                 single &= np.abs(other - y) > 1.25 * width * steep
-        found.append(_Strand(x, y, slopes[k], runs[k], single))
+        found.append(_Strand(x, y, slopes[k], runs[k], single, _blank(lines[k], x, width)))
     return found, edge_width
+
+
+def _blank(line: Line, x: Array, width: float) -> Bool:
+    """Columns of a line without ink, the rounded ends of its dashes with them."""
+    from scipy.ndimage import binary_dilation
+
+    order = np.argsort(line.xy[:, 0], kind="stable")
+    ink = np.interp(x, line.xy[order, 0], line.ink[order])
+    return np.asarray(binary_dilation(ink < 0.3, iterations=round(width)), bool)
 
 
 def _arms_and_zones(
@@ -185,10 +211,13 @@ def _arms_and_zones(
     arms: list[Arm] = []
     least = int(max(15, 3 * width))
     for s in strands:
-        alone = _without_short(s.clean, least)
+        alone = _without_short(s.clean | s.blank, least)
         edges = np.flatnonzero(np.diff(np.r_[0, alone.astype(int), 0]))
         for a, b in zip(edges[::2], edges[1::2], strict=True):
             keep = s.clean[a:b]
+            if keep.sum() < min(least, 15):
+                alone[a:b] = False
+                continue
             centre = 0.5 * (s.run.top[a:b] + s.run.bottom[a:b])
             arms.append(Arm(s.x[a:b][keep], centre[keep]))
         for k in np.nonzero(~alone & np.isfinite(s.run.top))[0]:

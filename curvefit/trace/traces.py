@@ -54,7 +54,7 @@ def _trace(panel: Panel, found: Found, name: str) -> Trace:
         correlation=max(14.0, 3.0 * line.width),
         width=line.width,
         colour=found.colour,
-        dash="solid" if found.bundled is not None else dash_of(line),
+        dash=dash_of(line),
         path=path,
         closed=found.closed,
         findings=_said(panel, found, name),

@@ -228,3 +228,18 @@ def test_the_same_panel_gives_the_same_traces():
     for a, b in zip(first, second, strict=True):
         np.testing.assert_array_equal(a.flat, b.flat)
         np.testing.assert_array_equal(a.sigma, b.sigma)
+
+
+def test_a_dashed_line_that_touches_a_solid_one_for_a_while_stays_one_line():
+    sheet = Sheet()
+    t = (X - 40) / 660
+    solid, dashed = 120 + 160 * t, 330 - 230 * t + 110 * t**2  # they meet at a small angle
+    sheet.curve(X, solid, width=7)
+    sheet.curve(X, dashed, width=7, dash=(38, 22))
+    traces = trace(sheet.panel())
+    assert len(traces) == 2
+    for y, dash in ((solid, "solid"), (dashed, "dashed")):
+        one, rms, cover, *_ = matched(traces, X, y)
+        assert rms < 1.0
+        assert cover > 0.95
+        assert one.dash == dash
