@@ -167,8 +167,12 @@ def _distance(e: Evidence, word: Word, number: bool) -> float:
     x1, y1 = flat.max(0)
     dx = max(-(x0 + x1) / 2, (x0 + x1) / 2 - w, 0.0)
     above, below = max(-(y0 + y1) / 2, 0.0), max((y0 + y1) / 2 - h, 0.0)
-    if not number and dx == 0 and read_title(word.text).dimension == "flow":
-        below *= 0.5  # the title of a flow axis stands below its box
+    if not number and below:
+        dimension = read_title(word.text).dimension
+        if dimension == "flow":
+            below *= 0.5 if dx == 0 else 1.0  # the title of a flow axis stands below its box
+        elif dimension is not None:
+            below *= 4.0  # that of a value axis beside or above it
     return float(np.hypot(dx, above + below)) * scale
 
 
@@ -176,9 +180,9 @@ def looks_like_a_chart(e: Evidence, axes: Sequence[Axis]) -> bool:
     """Whether a box without readable scales is drawn like a chart, not like a table."""
     across = _evenly_divided(e, ("bottom", "top"))
     up = _evenly_divided(e, ("left", "right"))
-    if not (across and up):
-        return False
-    return bool(axes) or _few_words_in(e)
+    if axes and (across or up):  # curves that end on a side look like ticks there
+        return True
+    return across and up and _few_words_in(e)
 
 
 def _few_words_in(e: Evidence, most: int = 12) -> bool:

@@ -63,7 +63,8 @@ def _seen_boxes(sheet: Sheet, s: Settings) -> list[tuple[Array, Box]]:
     for box in find_boxes(sheet.across, sheet.upright, 0.3 * s.shortest * long_side):
         if box.area > s.smallest * sheet.flat.size:
             rough = project(np.linalg.inv(sheet.matrix), box.corners)
-            found.append((side_lines(sheet.ink, rough, box.seen, reach)[0], box))
+            ruled = min(len(box.across), len(box.upright)) >= 3
+            found.append((side_lines(sheet.ink, rough, box.seen, reach, ruled)[0], box))
     return found
 
 

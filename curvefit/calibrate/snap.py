@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -124,8 +124,25 @@ def _on_ends(
     k = [int(np.argmin(np.abs(places - t))) for t in ends[0].at]
     if max(abs(places[i] - t) for i, t in zip(k, ends[0].at, strict=True)) > 0.3 * size:
         return None
-    u = np.hypot(ends[0].u, 0.5 / side_px)
-    return _fitted(p, values[k], ends[0].at, u, side_px, size, "end", exact, s)
+    off = _contradicted(values, places, rows, size, side_px)
+    u = np.hypot(ends[0].u, np.hypot(0.5, off) / side_px)
+    found = _fitted(p, values[k], ends[0].at, u, side_px, size, "end", exact, s)
+    return replace(found, rms=max(found.rms, off))
+
+
+def _contradicted(
+    values: Array, places: Array, rows: Sequence[TickRow], size: float, side_px: float
+) -> float:
+    """How far [px, largest] a row of ticks lies off the numbered places that it must belong to."""
+    worst = 0.0
+    for row in rows:
+        if row.kind == "end" or row.offset or len(row.at) < 3:
+            continue
+        off = np.array([row.at[np.argmin(np.abs(row.at - t))] - t for t in places])
+        mine = np.abs(off) < 0.6 * size
+        if mine.sum() >= max(3, 0.7 * len(values)):
+            worst = max(worst, float(np.abs(off[mine]).max()) * side_px)
+    return worst
 
 
 def _candidates(rows: Sequence[TickRow], close: float) -> list[tuple[str, Array, Array, Array]]:

@@ -20,6 +20,7 @@ Side = Literal["bottom", "top", "left", "right"]
 SIDES: tuple[Side, ...] = ("bottom", "top", "left", "right")
 
 _SNAP = 0.35  # [px]: programs that draw on whole pixels put a line up to half a pixel off
+_OPEN = 1.0  # [px]: the end of a line is less certain than where two cross
 _FAINT = 40  # ink above this counts no more in a grid profile: a pale grid weighs as a dark curve
 FARTHEST = 0.34  # a scale of its own line stands no further outside than this share of the box
 
@@ -114,8 +115,9 @@ def tick_rows(
             box = view[m + round(0.02 * depth) : m + round(0.98 * depth)]
             for other in (side, "top" if side == "bottom" else "right"):
                 rows += _grid(other, box, m, length)
-        u = _SNAP / length
-        rows.append(_tick_row(side, "end", [0.0, 1.0], [u, u], [1.0, 1.0]))
+        beside = ("left", "right") if side in ("bottom", "top") else ("bottom", "top")
+        ends = [(_SNAP if drawn[s] else _OPEN) / length for s in beside]
+        rows.append(_tick_row(side, "end", [0.0, 1.0], ends, [1.0, 1.0]))
         for offset in spines.get(side, []):
             at = _line_near(view, m - round(offset))
             if at - reach - 8 < 0:

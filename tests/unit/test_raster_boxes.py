@@ -239,3 +239,16 @@ def test_a_curled_page_is_bent_straight(turn):
 def test_lines_across_alone_make_a_box():
     [e] = boxes(drawn((1050, 760), [(150, y, 900, y) for y in range(100, 601, 100)]))
     assert np.abs(e.corners - corners(150, 100, 900, 600)).max() < 2.5
+
+
+OPEN = [(200, 620, 900, 620), (200, 100, 200, 620), (900, 100, 900, 620)]
+
+
+@pytest.mark.parametrize("matrix", [None, SKEW, TILT], ids=["straight", "skewed", "in perspective"])
+def test_a_side_that_is_not_drawn_runs_between_the_ends_of_those_beside_it(matrix):
+    ticks = [(x, 620, x, 629) for x in np.linspace(200, 900, 6)]
+    ticks += [(191, y, 200, y) for y in np.linspace(100, 620, 6)]
+    ticks += [(900, y, 909, y) for y in np.linspace(100, 620, 6)]
+    page = drawn((1100, 760), OPEN + ticks, matrix, width=3.0)
+    (e,) = boxes(page)
+    assert np.abs(e.corners - corners(200, 100, 900, 620, matrix)).max() < 1.5
