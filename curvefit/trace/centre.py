@@ -67,13 +67,19 @@ def cut(image: Image, xy: Array, normal: Array, offsets: Array) -> Image:
     return np.asarray(cv2.remap(image, x, y, cv2.INTER_LINEAR, borderMode=cv2.BORDER_CONSTANT))
 
 
-def width_along(ink: Image, xy: Array, at_most: float) -> float:
-    """Width of a roughly known line [px]: the run of ink across it."""
+def width_along(ink: Image, known: Image, xy: Array, at_most: float) -> float:
+    """Width of a roughly known line [px]: the run of ink across it, where nothing hides a part."""
+    from scipy.ndimage import maximum_filter1d
+
     offsets = np.arange(-at_most, at_most + 0.01, 0.5)
-    strip = cut(ink, xy, normals(xy), offsets)
+    normal = normals(xy)
+    strip = cut(ink, xy, normal, offsets)
     run = _run(strip, offsets, np.zeros(len(xy)), at_most)
     mass = (strip * run).sum(1) * 0.5
     seen = (mass > 0.5) & ~run[:, 0] & ~run[:, -1]
+    hidden = cut(known, xy, normal, offsets) < 0.5
+    whole = seen & ~(hidden & maximum_filter1d(run, 5, axis=1)).any(1)
+    seen = whole if whole.sum() > 20 else seen
     peak = strip.max(1)
     seen &= peak > 0.85 * np.quantile(peak[seen], 0.6) if seen.any() else False
     if seen.sum() <= 4:

@@ -95,8 +95,11 @@ def _straighten(panel: Panel, image: Image, origin: NDArray[np.float64]) -> Imag
     return out
 
 
-def stroke_width(ink: Image, shortest: float) -> float:
-    """Width of the lines [px]: from components at least `shortest` px long, specks left out."""
+def stroke_width(ink: Image, shortest: float, hidden: NDArray[np.bool_]) -> float:
+    """Width of the lines [px]: from components at least `shortest` px long, specks left out.
+
+    hidden : (rows, cols) where nothing can be seen; strokes that it cuts into do not count.
+    """
     import cv2
 
     mask = (ink > 0.4).astype(np.uint8)
@@ -109,6 +112,9 @@ def stroke_width(ink: Image, shortest: float) -> float:
     keep = long[labels]
     distance = cv2.distanceTransform(mask, cv2.DIST_L2, 5)
     ridge = keep & (distance >= cv2.dilate(distance, np.ones((3, 3)))) & (distance > 0)
+    free = cv2.distanceTransform((~hidden | (mask > 0)).astype(np.uint8), cv2.DIST_L2, 5)
+    whole = ridge & (free > distance + 1.0)
+    ridge = whole if whole.sum() > 100 else ridge
     # each ridge pixel speaks for its length; a line of width w has ridge distance (w + 1) / 2
     return float(np.clip(2.0 * np.median(distance[ridge]) - 1.0, 1.0, 40.0))
 

@@ -71,7 +71,7 @@ def linked_lines(
 
 
 def _refined(layer: Layer, chain: Chain, width: float) -> Loose | None:
-    own = width_along(layer.lines, resample(chain.xy, 1.0), 2.5 * width + 2)
+    own = width_along(layer.lines, layer.known, resample(chain.xy, 1.0), 2.5 * width + 2)
     own = float(np.clip(own, 0.4 * width, 1.6 * width)) if np.isfinite(own) else width
     if chain.closed:
         return _refined_loop(layer, chain, own)

@@ -97,7 +97,7 @@ def _prepared(panel: Panel) -> tuple[Flat, Inked, float, Mask, Mask]:
     """The straightened panel, its ink without paper lines, stroke width, letters, markers."""
     flat = straightened(panel)
     inked = without_lines(flat.dark, MARGIN)
-    width = stroke_width(inked.ink, 0.02 * panel.warp.size[0])
+    width = stroke_width(inked.ink, 0.02 * panel.warp.size[0], inked.known < 0.3)
     blots = markers(inked.ink, width)
     letters = lettering(panel, np.where(blots | (inked.known < 0.6), 0, inked.ink), width)
     return flat, inked, width, letters, blots
@@ -108,7 +108,7 @@ def line_along(panel: Panel, path: NDArray[np.float64]) -> Found | None:
     flat, inked, width, letters, blots = _prepared(panel)
     layer = _layer(flat, inked, np.ones_like(flat.dark), letters, blots)
     smooth = _rounded(path)
-    own = width_along(layer.lines, resample(smooth, 2.0), 2.0 * width + 2)
+    own = width_along(layer.lines, layer.known, resample(smooth, 2.0), 2.0 * width + 2)
     own = float(np.clip(own, 0.5 * width, 1.6 * width)) if np.isfinite(own) else width
     line = centred(layer.lines, layer.known, smooth, own, slack=max(5.0, own))
     if line.good.sum() < 0.2 * (line.known > 0.5).sum() + 3:
@@ -149,7 +149,7 @@ def _sorted_out(
 
 def _layer(flat: Flat, inked: Inked, member: Image, letters: Mask, blots: Mask) -> Layer:
     """One ink alone: the others are neither ink nor blank, nor are letters and markers."""
-    own = inked.ink * member
+    own = np.clip(inked.ink * (member / _depth(inked.ink * member)), 0.0, 1.0)
     other = inked.ink * (1.0 - member)
     known = inked.known * np.clip(1.0 - 1.5 * other, 0, 1)
     known = np.where(spread(letters), 0.3 * known, known)
@@ -157,6 +157,12 @@ def _layer(flat: Flat, inked: Inked, member: Image, letters: Mask, blots: Mask) 
     lines = np.where(letters | blots, 0.0, own).astype(np.float32)
     weak = np.where(letters, 0.3 * own, own).astype(np.float32)
     return Layer(weak, lines, known)
+
+
+def _depth(ink: Image) -> float:
+    """How dark the strokes of an ink are in their middle: pale ones are as solid as black ones."""
+    seen = ink[ink > 0.35]
+    return float(np.clip(np.quantile(seen, 0.75), 0.6, 1.0)) if len(seen) > 50 else 1.0
 
 
 def _follow(layer: Layer, width: float, settings: Settings) -> list[Line]:
@@ -196,7 +202,7 @@ def _refined(
 ) -> tuple[Line | None, float]:
     """The track at sub-pixel precision between its true ends, and the width of its stroke."""
     rough = (np.stack([track.x, track.y], 1) + 0.5) * scale - 0.5
-    own = width_along(layer.lines, resample(rough, 2.0), 3.0 * width + 2)
+    own = width_along(layer.lines, layer.known, resample(rough, 2.0), 3.0 * width + 2)
     if not np.isfinite(own):
         own = width
     own = float(np.clip(own, 0.4 * width, 2.5 * width))
