@@ -25,6 +25,7 @@ __all__ = [
     "of_level",
     "of_odd",
     "of_page",
+    "of_shift",
     "of_twin",
 ]
 
@@ -198,6 +199,20 @@ def of_odd(line: Line) -> None:
             f'the label "{line.label}" does not lie where the heads of its family put it:'
             " a digit may be misread",
             remedy=f"a [[curve]] note with {_at(line.trace)} and diameter settles it",
+        )
+    )
+
+
+def of_shift(line: Line) -> None:
+    """Warn of a label that may belong to the next line, since one of the family has none."""
+    line.doubts |= {"diameter"} if line.diameter is not None else {"speed"}
+    line.findings.append(
+        Finding(
+            "warning",
+            "label.shifted",
+            f'the label "{line.label}" stands as near to the next line of the family, and a line'
+            " has no label: all labels may belong one line further",
+            remedy=f"a [[curve]] note with {_at(line.trace)} and diameter or speed settles it",
         )
     )
 

@@ -17,13 +17,15 @@ from curvefit.identify.placing import Label, Spot, spot
 from curvefit.identify.wording import Meaning
 from curvefit.records import Trace
 
-__all__ = ["Deal", "Member", "Settings", "deal", "order"]
+__all__ = ["Deal", "Member", "Settings", "deal", "movable", "order"]
 
 Array = NDArray[np.float64]
 
 # Exponents that the law and real trims leave between the ratio of heads and of what is printed
 _HEAD_EXPONENTS = {"diameter": (1.3, 4.0), "speed": (1.6, 2.4), "percent": (1.6, 2.4),
                    "stages": (0.8, 1.2)}  # fmt: skip
+# a label dealt to a line; without a meaning where its text stands there but could not be read
+_Got = tuple[int, Meaning | None]
 _KINDS = ("diameter", "speed", "percent", "stages", "letter")
 
 
@@ -34,6 +36,8 @@ class Settings:
     missing : a line gets no label; reach : a label further from its line is not its label;
     far : per height of distance; law : per factor e by which an exponent is out of its range;
     side : the label stands on the other side of its line than most.
+    unread : a text that cannot be read as a label takes its line all the same.
+    tied : two lines are equally near to a label within this many heights of its text.
     """
 
     missing: float = 2.2
@@ -41,6 +45,8 @@ class Settings:
     far: float = 0.35
     law: float = 2.0
     side: float = 0.5
+    unread: float = 0.6
+    tied: float = 0.5
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -54,11 +60,15 @@ class Member:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Deal:
-    """What each line got: (label, meaning) or None, in the order of the members; total cost."""
+    """What each line got: (label, meaning) or None, in the order of the members; total cost.
+
+    unread : in the same order, a text that stands as the line's label but could not be read.
+    """
 
     kind: str
     given: tuple[tuple[Label, Meaning] | None, ...]
     cost: float
+    unread: tuple[Label | None, ...] = ()
 
 
 def order(members: Sequence[Member], quantity: str) -> list[int]:
@@ -130,10 +140,67 @@ def deal(
                 best = found
     if best is None:
         return None
-    given: list[tuple[Label, Meaning] | None] = [None] * len(members)
-    for i, got in zip(ranks, best.given, strict=True):
-        given[i] = got
-    return Deal(best.kind, tuple(given), best.cost)
+    back = np.argsort(ranks)
+    given, unread = (tuple(row[k] for k in back) for row in (best.given, best.unread))
+    return Deal(best.kind, given, best.cost, unread)
+
+
+def movable(
+    members: Sequence[Member], quantity: str, found: Deal, settings: Settings | None = None
+) -> list[int]:
+    """Members whose label could as well be that of the next line, so that all move on by one.
+
+    Notes
+    -----
+    Where a line has no label, those that follow it can move towards it as long as each stands
+    nearly as near to the next line as to its own: nothing but the missing label then tells which
+    dealing is right.
+    """
+    settings = settings or Settings()
+    ranks = order(members, quantity)
+    loose = set()
+    for k, empty in enumerate(ranks):
+        if found.given[empty] is not None or found.unread[empty] is not None:
+            continue
+        for way in (ranks[k + 1 :], ranks[:k][::-1]):
+            free = empty
+            for own in way:
+                got = found.given[own]
+                if got is None:
+                    break
+                at = [spot(got[0], members[i].trace) for i in (own, free)]
+                if not _tied(at[0], at[1], settings.tied):
+                    break
+                loose.add(own)
+                free = own
+    return sorted(loose)
+
+
+def _tied(own: Spot, other: Spot, within: float) -> bool:
+    """Whether a label stands to another line as well as to its own."""
+    if min(own.start, own.end) < 1.2 and abs(own.above) < 0.35 and abs(other.above) > 0.7:
+        return False  # in line with the end of its own
+    ends = [(own.start, other.start), (own.end, other.end)]
+    at_ends = all(b <= a + within for a, b in ends if a < 1.2)
+    return at_ends and other.near <= own.near + within
+
+
+def _torn(labels: Sequence[Label], holding: Sequence[int]) -> list[int]:
+    """Texts that say nothing, but look like those that label lines: a digit, their size."""
+    height = float(np.median([labels[j].height for j in holding]))
+    long = float(np.median([len(labels[j].text) for j in holding]))
+    known = [labels[j].centre for j in holding]
+    return [
+        j
+        for j, w in enumerate(labels)
+        if j not in holding
+        and not w.masked
+        and not any(m.plain for m in w.meanings)
+        and any(c.isdigit() for c in w.text)
+        and max(2.0, 0.5 * long) <= len(w.text) <= 1.7 * long + 1
+        and 0.6 < w.height / height < 1.6
+        and all(np.hypot(*(w.centre - c)) > height for c in known)
+    ]
 
 
 def _chain(
@@ -149,10 +216,11 @@ def _chain(
 ) -> Deal | None:
     """Cheapest chain of labels down the ordered lines: each value smaller than the one before."""
     signed = any(m.plain for j in holding for m in labels[j].means(kind))
-    steps: list[list[tuple[int, Meaning, float]]] = []
+    torn = _torn(labels, holding) if kind != "letter" else []
+    steps: list[list[tuple[int, Meaning | None, float]]] = []
     for i in range(len(ranked)):
-        row = []
-        for j in holding:
+        row: list[tuple[int, Meaning | None, float]] = []
+        for j in (*holding, *torn):
             plain = kind == "letter" or any(m.plain for m in labels[j].means(kind))
             near = _placing(spots[i, j], stand, elsewhere[j], plain, settings)
             if near is None:
@@ -160,52 +228,55 @@ def _chain(
             for m in labels[j].means(kind):
                 bent = m.cost * (0.5 if signed and kind == "diameter" and m.cost >= 0.5 else 1.0)
                 row.append((j, m, near + bent))
+            if j in torn:
+                row.append((j, None, near + settings.unread))
         steps.append(row)
-    # state: the last label dealt (None at first); cost and the whole dealing so far
-    states: dict[tuple[int, float] | None, tuple[float, tuple[tuple[int, Meaning] | None, ...]]]
-    states = {None: (0.0, ())}
-    for i, row in enumerate(steps):
-        following: dict[
-            tuple[int, float] | None, tuple[float, tuple[tuple[int, Meaning] | None, ...]]
-        ] = {}
-
-        def keep(
-            key: tuple[int, float] | None,
-            cost: float,
-            dealt: tuple[tuple[int, Meaning] | None, ...],
-            into: dict[
-                tuple[int, float] | None, tuple[float, tuple[tuple[int, Meaning] | None, ...]]
-            ] = following,
-        ) -> None:
-            if key not in into or cost < into[key][0] - 1e-12:
-                into[key] = cost, dealt
-
-        for key, (cost, dealt) in states.items():
-            keep(key, cost + settings.missing, (*dealt, None))
-            used = {d[0] for d in dealt if d is not None}
-            last = max((k for k, d in enumerate(dealt) if d is not None), default=None)
-            for j, m, near in row:
-                if j in used:
-                    continue
-                step = near
-                if last is not None:
-                    before = dealt[last]
-                    assert before is not None
-                    law = _law(ranked[last], before[1], ranked[i], m, kind, quantity, settings)
-                    if law is None:
-                        continue
-                    step += law
-                keep((j, m.value or 0.0), cost + step, (*dealt, (j, m)))
-        states = following
-    cost, dealt = min(states.values(), key=lambda s: s[0])
-    if all(d is None for d in dealt):
+    cost, dealt = _cheapest(ranked, quantity, steps, kind, settings)
+    if all(d is None or d[1] is None for d in dealt):
         return None
     if kind == "letter" and sum(d is not None for d in dealt) < 0.6 * len(dealt):
         return None  # scraps of grid and line are read as letters too
     cost += 0.3 * (kind == "letter") + 0.4 * (kind == "percent")
     cost += 0.15 * (stand != "any")
-    got = tuple(None if d is None else (labels[d[0]], d[1]) for d in dealt)
-    return Deal(kind, got, cost)
+    got = tuple(None if d is None or d[1] is None else (labels[d[0]], d[1]) for d in dealt)
+    unread = tuple(labels[d[0]] if d is not None and d[1] is None else None for d in dealt)
+    return Deal(kind, got, cost, unread)
+
+
+def _cheapest(
+    ranked: Sequence[Member],
+    quantity: str,
+    steps: Sequence[Sequence[tuple[int, Meaning | None, float]]],
+    kind: str,
+    settings: Settings,
+) -> tuple[float, tuple[_Got | None, ...]]:
+    """The cheapest of all dealings, line by line from the largest; its cost."""
+    # state: the last label that was read (None at first); cost and the whole dealing so far
+    states: dict[tuple[int, float] | None, tuple[float, tuple[_Got | None, ...]]]
+    states = {None: (0.0, ())}
+    for i, row in enumerate(steps):
+        following: dict[tuple[int, float] | None, tuple[float, tuple[_Got | None, ...]]] = {}
+        for key, (cost, dealt) in states.items():
+            options: list[tuple[tuple[int, float] | None, float, _Got | None]]
+            options = [(key, settings.missing, None)]
+            used = {d[0] for d in dealt if d is not None}
+            before = next(((k, d[1]) for k, d in reversed([*enumerate(dealt)]) if d and d[1]), None)
+            for j, m, near in row:
+                if j in used:
+                    continue
+                if m is None:
+                    options.append((key, near, (j, None)))
+                    continue
+                law: float | None = 0.0
+                if before is not None:
+                    law = _law(ranked[before[0]], before[1], ranked[i], m, kind, quantity, settings)
+                if law is not None:
+                    options.append(((j, m.value or 0.0), near + law, (j, m)))
+            for now, step, got in options:
+                if now not in following or cost + step < following[now][0] - 1e-12:
+                    following[now] = cost + step, (*dealt, got)
+        states = following
+    return min(states.values(), key=lambda s: s[0])
 
 
 def _placing(

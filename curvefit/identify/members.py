@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from curvefit.identify import doubts
-from curvefit.identify.families import Deal, deal, order
+from curvefit.identify.families import Deal, deal, movable, order
 from curvefit.identify.impellers import agree, member
 from curvefit.identify.ink import Sample, line_sample, same_ink
 from curvefit.identify.line import Line
@@ -66,6 +66,8 @@ def _label_group(
         _set(line, *got)
         doubts.of_label(line, *got)
         taken |= same_place(got[0], free)
+    for k in movable([member(x) for x in group], quantity, found):
+        doubts.of_shift(group[k])
     return taken
 
 
@@ -89,6 +91,7 @@ def _dealt(
         named = [(x.trace, g[0]) for x, g in zip(group, found.given, strict=True) if g is not None]
         unnamed = [x.trace for x, g in zip(group, found.given, strict=True) if g is None]
         bent = [g[0] for g in found.given if g is not None and g[1].cost >= 0.3]
+        bent += [w for w in found.unread if w is not None]
         words += [*missing(panel, named, unnamed), *again(panel, bent)]
         found = _better(found, deal(members, quantity, words, others))
     unnamed = [x.trace for k, x in enumerate(group) if found is None or found.given[k] is None]

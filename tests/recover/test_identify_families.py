@@ -116,6 +116,40 @@ def test_a_misread_digit_is_not_believed_in_silence():
         assert warnings(findings)
 
 
+def crowded(labels):
+    """Heads two text heights apart with labels half way between each line and the one above."""
+    scene = Scene()
+    box = scene.box(HEAD)
+    for k, label in enumerate(labels):
+        pump = ModelPump(np.sqrt(1 - 3.2 * k / 42))
+        box.line(pump.head, pump.reach)
+        (x, y), *_ = box.flat(np.array([6.0]), pump.head(np.array([6.0])))
+        if label:
+            box.word(label, x, y - 16.0)
+    return scene.read()
+
+
+@pytest.mark.parametrize("torn", ["D205 n m", "D2 n m", "0205 nm", "B205 m", "Dz0.5mn"])
+@pytest.mark.parametrize("place", [0, 3, 6])
+def test_a_label_that_cannot_be_read_keeps_its_line(torn, place):
+    labels = ["D205 mm", "D197 mm", "D189 mm", "D180 mm", "D171 mm", "D161 mm", "D151 mm"]
+    expected = [205, 197, 189, 180, 171, 161, 151]
+    labels[place], expected[place] = torn, None
+    curves, _, findings = crowded(labels)
+    assert diameters(curves) == expected
+    assert warnings(findings) == ["curve.unlabelled"]
+
+
+@pytest.mark.parametrize("lost", ["", "x"])
+def test_labels_that_could_all_move_on_by_one_line_are_all_in_doubt(lost):
+    curves, _, _ = crowded([lost, "D197 mm", "D189 mm", "D180 mm", "D171 mm"])
+    for curve, right in zip(curves, [None, 197, 189, 180, 171], strict=True):
+        wrong = curve.diameter_si is not None and round(curve.diameter_si * 1000) != right
+        said = {f.code for f in curve.findings if f.severity == "warning"}
+        assert not wrong or "label.shifted" in said
+        assert not wrong or "diameter" in curve.guessed
+
+
 def test_two_lines_with_one_label_text_are_not_both_named():
     curves, _, findings = heads(["Ø210", "Ø190", "Ø190", "Ø180"])
     assert len({d for d in diameters(curves) if d}) == sum(d is not None for d in diameters(curves))
