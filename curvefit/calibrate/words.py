@@ -34,12 +34,13 @@ class Lettering:
     """The text of a straightened page, before it is read.
 
     image : black on white, lines and curves taken out. plain : the same with them. lines : where
-    text stands.
+    text stands. size : of a character [px], 0 where unknown.
     """
 
     image: Image
     plain: Image
     lines: tuple[TextLine, ...]
+    size: float = 0.0
 
 
 def find_text(
@@ -91,7 +92,7 @@ def find_text(
     other = (letters.label > 0) & ~text[letters.label]
     other = (cv2.dilate(other.astype(np.uint8), np.ones((3, 3), np.uint8)) > 0) | gone
     image = 255 - np.where(other & ~text[letters.label], 0, flat)
-    return Lettering(image, 255 - flat, tuple(lines))
+    return Lettering(image, 255 - flat, tuple(lines), size or 0.0)
 
 
 def _threshold(flat: Image) -> float:
@@ -152,6 +153,7 @@ def read_lines(
     crowded = [r for r in first if _SEVERAL.match(r.text) and len(pieces_of(r.line)) > 1]
     parts = [p for r in crowded for p in pieces_of(r.line)]
     held = [r for r in first if r not in crowded] + _read(lettering, parts, turn)
+    held = _widened(lettering, lines, held, turn)
     held = _with_units(_trimmed(lettering, held, turn))
     back = np.linalg.inv(matrix)
     return tuple(Word(r.text, project(back, _corners(r.line.box, r.turn)), r.score) for r in held)
@@ -166,6 +168,69 @@ class _Read:
 
 
 _SEVERAL = re.compile(r"^[\d.,%\s−–—_-]{2,}$")
+
+
+_MOST_WIDENED = 40
+_MARKS = "-–—_./\\|'`,:;~= "
+
+
+def _widened(
+    lettering: Lettering, lines: list[TextLine], read: list[_Read], turn: int
+) -> list[_Read]:
+    """Labels that a curve has taken characters of, read once more from more of the page.
+
+    Only what makes a label, longer than and ending on what was read, counts.
+    """
+    from curvefit.ocr import recognise
+
+    size = lettering.size
+    known = {id(r.line): r for r in read}
+
+    def known_well(line: TextLine) -> bool:
+        return id(line) in known and known[id(line)].text.isdigit()
+
+    torn = [
+        line
+        for line in sorted(lines, key=known_well)
+        if line.zone
+        and line.vertical == bool(turn % 2)
+        and 0.4 * size < line.height < 1.8 * size
+        and line.length < 4.5 * size
+        and (id(line) not in known or not _WHOLE.match(known[id(line)].text))
+    ][:_MOST_WIDENED]
+    wider = [_wider(line, size, turn) for line in torn]
+    crops = [crop_of(lettering.plain, line, turn) for line in wider]
+    out = dict(known)
+    for line, wide, (text, score) in zip(torn, wider, recognise(crops), strict=True):
+        old = known.get(id(line))
+        text = text.strip(_MARKS)
+        if score < 0.7 or not _WHOLE.match(text):
+            continue
+        if old is None or _completes(text, old.text):
+            out[id(line)] = _Read(wide, turn, text, score)
+    return list(out.values())
+
+
+def _wider(line: TextLine, size: float, turn: int) -> TextLine:
+    """The line with room for two more characters in front and one behind."""
+    x0, y0, x1, y1 = line.box
+    lack = max(size - line.height, 0.0)
+    front, behind = 1.5 * size, 0.6 * size
+    grown = {
+        0: (x0 - front, y0 - lack, x1 + behind, y1 + lack),
+        1: (x0 - lack, y0 - behind, x1 + lack, y1 + front),
+        2: (x0 - behind, y0 - lack, x1 + front, y1 + lack),
+        3: (x0 - lack, y0 - front, x1 + lack, y1 + behind),
+    }[turn]
+    box = (max(grown[0], 0.0), max(grown[1], 0.0), grown[2], grown[3])
+    return TextLine(box, line.vertical, line.letters, line.zone)
+
+
+def _completes(text: str, torn: str) -> bool:
+    """Whether a label is what was torn, with what was lost of it or without what is none of it."""
+    figures = re.sub(r"\D", "", torn)
+    longer = len(text) > len(torn) and figures[-1:] in text
+    return longer or text in torn
 
 
 _FIRST = "0123456789OoQCGDcøØ⌀∅@φΦ("  # what a label begins with, or its Ø is read as
@@ -258,7 +323,13 @@ def _read(lettering: Lettering, lines: list[TextLine], turn: int) -> list[_Read]
 
 
 _LABEL = re.compile(
-    r"^([ØøD⌀∅]?\s?\d{2,4}(\s?(mm|rpm|1/min|min-1|Hz))?|\d{1,2}([.,]\d)?\s?%|"
+    r"^([ØøD⌀∅0O]?\s?\d{2,4}(\s?(mm|rpm|1/min|min-1|Hz))?|\d{1,2}([.,]\d)?\s?%|"
+    r"\d{1,2}( \d{1,2}/\d{1,2})?[\"″”])$"
+)
+
+
+_WHOLE = re.compile(  # no label of a curve is shorter
+    r"^([ØøD⌀∅]\s?\d{2,4}(\s?mm)?|[0O]\s?\d{3}(\s?mm)?|\d{3,4}\s?(mm|rpm|1/min|min-1)|\d\d([.,]\d)?\s?%|"
     r"\d{1,2}( \d{1,2}/\d{1,2})?[\"″”])$"
 )
 
