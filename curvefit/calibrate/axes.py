@@ -14,14 +14,14 @@ from curvefit.calibrate.consensus import (
     agree,
     near_value,
 )
-from curvefit.calibrate.doubts import doubts_of
+from curvefit.calibrate.doubts import bowed, doubts_of
 from curvefit.calibrate.evidence import Evidence, TickRow
 from curvefit.calibrate.given import given_axes, with_meaning
 from curvefit.calibrate.labels import row_readings
 from curvefit.calibrate.naming import name_axes
 from curvefit.calibrate.pitch import pitch_of, too_wide
 from curvefit.calibrate.rows import Column, Spot, columns, spots
-from curvefit.calibrate.snap import Scale, snap
+from curvefit.calibrate.snap import Scale, ends_covariance, snap
 from curvefit.notes import PanelNotes
 from curvefit.records import Axis, Finding, Mark, Word
 from curvefit.records.base import Side
@@ -86,6 +86,7 @@ def scales(
     axes = _named_by_titles(evidence, notes, axes, rest)
     for f in found:
         findings += f.doubts
+    findings += bowed(evidence, panel_name)
     if evidence.look is not None or not evidence.exact:
         beside = [f for f in found if f.column.order == 1]  # farther out ticks run into numbers
         findings += too_wide(
@@ -249,6 +250,9 @@ def _where(evidence: Evidence, column: Column, t: float) -> Array:
 
 def _axis(evidence: Evidence, f: Found) -> Axis:
     s = f.scale
+    # a line may sag anywhere by what is left of the bow: half of it, as a standard uncertainty
+    bow = evidence.bow[0 if f.column.side in ("bottom", "top") else 1]
+    sagging = ends_covariance(s.slope, 0.5 * bow / _side_px(evidence, f.column.side))
     return Axis(
         name=f.name,
         side=f.column.side,
@@ -258,7 +262,7 @@ def _axis(evidence: Evidence, f: Found) -> Axis:
         scale="log" if s.log else "linear",
         offset=s.offset,
         slope=s.slope,
-        covariance=s.covariance,
+        covariance=s.covariance + sagging,
         marks=_marks(evidence, f),
     )
 

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from curvefit.geometry import Warp
 
-__all__ = ["bent", "quarter"]
+__all__ = ["bent", "quarter", "sag"]
 
 Array = NDArray[np.float64]
 
@@ -36,19 +36,19 @@ def bent(warp: Warp, across: Sequence[Array], upright: Sequence[Array], bow: flo
     bend = np.zeros((len(_POWERS), 2))
     for axis, lines in ((1, across), (0, upright)):
         flat = [warp.to_panel(xy) for xy in lines]
-        before = max((_sag(p, axis) for p in flat), default=0.0)
+        before = max((sag(p, axis) for p in flat), default=0.0)
         if before < bow or len(flat) < 2:
             continue
         column = _coefficients(flat, axis, warp.size)
         trial = np.zeros_like(bend)
         trial[:, axis] = column
-        after = max(_sag(Warp(warp.matrix, warp.size, trial).to_panel(xy), axis) for xy in lines)
+        after = max(sag(Warp(warp.matrix, warp.size, trial).to_panel(xy), axis) for xy in lines)
         if after < 0.6 * before:
             bend[:, axis] = column
     return warp if not bend.any() else replace(warp, bend=bend)
 
 
-def _sag(xy: Array, axis: int) -> float:
+def sag(xy: Array, axis: int) -> float:
     """How far a quadratic through points leaves its own chord [px]."""
     t, y = xy[:, 1 - axis], xy[:, axis]
     if len(t) < 12:

@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from curvefit.calibrate.consensus import Progression, near_value
+from curvefit.calibrate.evidence import Evidence
 from curvefit.calibrate.rows import Column
 from curvefit.calibrate.snap import Scale
 from curvefit.errors import Location
 from curvefit.records import Finding
 
-__all__ = ["doubts_of", "marks_remedy"]
+__all__ = ["bowed", "doubts_of", "marks_remedy"]
 
 
 def marks_remedy(panel: str, axis: str) -> str:
@@ -58,3 +59,18 @@ def doubts_of(
         message = f"the ticks lie {scale.rms:.1f} px (rms) off an even scale, 1 px is usual."
         out.append(Finding("warning", "axis.uneven", message, where, remedy))
     return out, False
+
+
+def bowed(evidence: Evidence, panel: str) -> list[Finding]:
+    """What is said of lines that the warp leaves bowed: the page was curled more than it takes."""
+    w, h = evidence.warp.size
+    most = max(1.5, 0.002 * min(w, h))
+    worst = max(evidence.bow)
+    if worst <= most:
+        return []
+    message = (
+        f"the sides of the box are bowed by {worst:.1f} px more than could be taken out, "
+        f"{most:.1f} px are usual; the uncertainty of its scales was widened."
+    )
+    remedy = "Scan the page flat, or photograph it from straight above without a fold."
+    return [Finding("warning", "panel.bow", message, Location(panel=panel), remedy)]

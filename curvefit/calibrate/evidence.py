@@ -49,6 +49,7 @@ class Evidence:
     look : reads the numbers afresh where they should stand: boxes (4, 2) page px → (text, score)
         each; None where there are no pixels to look at. read : the same for text of any kind.
     exact : True for a vector page.
+    bow : how far straight lines still sag after the warp, along x and along y [px].
     """
 
     corners: Array
@@ -60,3 +61,4 @@ class Evidence:
     exact: bool = False
     findings: tuple[Finding, ...] = ()
     read: Callable[[Sequence[Array]], list[tuple[str, float]]] | None = None
+    bow: tuple[float, float] = (0.0, 0.0)

@@ -124,7 +124,8 @@ def _evidence(sheet: Sheet, plot: Plot, turn: int, words: tuple[Word, ...]) -> E
     warp = plot.warp
     for _ in range(turn):
         warp = quarter(warp)
-    return Evidence(corners, warp, turn, rows, words, look, read=read)
+    bow = plot.bow if turn % 2 == 0 else plot.bow[::-1]
+    return Evidence(corners, warp, turn, rows, words, look, read=read, bow=bow)
 
 
 def _turned(row: TickRow, turn: int) -> TickRow:

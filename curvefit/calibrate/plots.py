@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from curvefit.calibrate.bow import bent
+from curvefit.calibrate.bow import bent, sag
 from curvefit.calibrate.boxes import Box, find_boxes
 from curvefit.calibrate.evidence import TickRow
 from curvefit.calibrate.lines import Line
@@ -28,6 +28,7 @@ class Plot:
     """A plot box as it lies on the page. corners : (4, 2) page px, clockwise from the top left.
 
     bars : outlines (4, 2) of its outside ticks, straightened panel px.
+    bow : how far straight lines still sag there, along x and along y [px].
     """
 
     corners: Array
@@ -35,6 +36,7 @@ class Plot:
     warp: Warp
     ticks: tuple[TickRow, ...]
     bars: list[Array]
+    bow: tuple[float, float] = (0.0, 0.0)
 
 
 def find_plots(sheet: Sheet, notes: Sequence[PanelNotes], s: Settings) -> list[Plot]:
@@ -68,33 +70,48 @@ def _seen_boxes(sheet: Sheet, s: Settings) -> list[tuple[Array, Box]]:
     return found
 
 
-def _straightest(sheet: Sheet, corners: Array, box: Box, s: Settings) -> Warp:
-    """The warp of a box: bent where its sides and long inner lines sag."""
+def _straightest(
+    sheet: Sheet, corners: Array, box: Box, s: Settings
+) -> tuple[Warp, tuple[float, float]]:
+    """The warp of a box, bent where its sides and long inner lines sag, and the sag left."""
     warp = warp_of(corners)
-    if not all(box.seen):
-        return warp
+    found = {1: _courses(sheet, corners, box, s, True), 0: _courses(sheet, corners, box, s, False)}
+    for axis, lines in found.items():  # a side that is not drawn bows as the one facing it
+        across = np.eye(2)[axis] * warp.size[axis]
+        for k, way in ((0, -1), (-1, 1)):
+            if not len(lines[k]) and len(lines[-1 - k]):
+                lines[k] = warp.to_page(warp.to_panel(lines[-1 - k]) + way * across)
+    if min(len(lines[k]) for lines in found.values() for k in (0, -1)) >= 12:
+        warp = bent(warp, found[1], found[0], s.bow)
+    left = [max(sag(warp.to_panel(found[k][i]), k) for i in (0, -1)) for k in (0, 1)]
+    return warp, (left[0], left[1])
+
+
+def _courses(sheet: Sheet, corners: Array, box: Box, s: Settings, along_x: bool) -> list[Array]:
+    """Centres (n, 2), page px, along the lines of a box one way, its sides first and last.
+
+    A side that is not drawn has none.
+    """
     reach = 4.0 * max(1.0, max(sheet.flat.shape) / s.work) + 1
-    back = np.linalg.inv(sheet.matrix)
     top, right, bottom, left = (corners[[i, (i + 1) % 4]] for i in range(4))
-    chords = {
-        1: [top, *_inner(box.across, box.top, box.bottom, box.left, box.right, True), bottom[::-1]],
-        0: [
-            left[::-1],
-            *_inner(box.upright, box.left, box.right, box.top, box.bottom, False),
-            right,
-        ],
-    }
-    found: dict[int, list[Array]] = {0: [], 1: []}
-    for axis, ends in chords.items():
-        for k, pair in enumerate(ends):
-            side = k in (0, len(ends) - 1)
-            a, b = pair if side else project(back, pair)
-            xy = follow(sheet.ink, a + 0.01 * (b - a), b - 0.01 * (b - a), reach)[0]
-            if side or len(xy) >= 40:
-                found[axis].append(xy)
-        if min(len(found[axis][0]), len(found[axis][-1])) < 12:
-            return warp
-    return bent(warp, found[1], found[0], s.bow)
+    if along_x:
+        inner = _inner(box.across, box.top, box.bottom, box.left, box.right, True)
+        pairs, seen = [top, *inner, bottom[::-1]], (box.seen[0], box.seen[2])
+    else:
+        inner = _inner(box.upright, box.left, box.right, box.top, box.bottom, False)
+        pairs, seen = [left[::-1], *inner, right], (box.seen[3], box.seen[1])
+    back = np.linalg.inv(sheet.matrix)
+    out = []
+    for k, pair in enumerate(pairs):
+        side = k in (0, len(pairs) - 1)
+        if side and not seen[0 if k == 0 else 1]:
+            out.append(np.zeros((0, 2)))
+            continue
+        a, b = pair if side else project(back, pair)
+        xy = follow(sheet.ink, a + 0.01 * (b - a), b - 0.01 * (b - a), reach)[0]
+        if side or len(xy) >= 40:
+            out.append(xy)
+    return out
 
 
 def _inner(
@@ -121,11 +138,11 @@ def _outline(size: tuple[float, float]) -> Array:
 def _plot(
     sheet: Sheet, corners: Array, box: Box, others: list[Box], s: Settings, given: bool = False
 ) -> Plot:
-    warp = warp_of(corners) if given else _straightest(sheet, corners, box, s)
+    warp, bow = (warp_of(corners), (0.0, 0.0)) if given else _straightest(sheet, corners, box, s)
     corners = corners if given else warp.to_page(_outline(warp.size))
     flat = flatten(sheet.ink, warp, int(min(FARTHEST * max(warp.size) + 16, 700)))
     rows = tick_rows(flat, box.seen, _spines(sheet, box, others))
-    return Plot(corners, box, warp, rows, tick_bars(flat, rows))
+    return Plot(corners, box, warp, rows, tick_bars(flat, rows), bow)
 
 
 def _given(sheet: Sheet, note: PanelNotes, others: list[Box], s: Settings) -> Plot:

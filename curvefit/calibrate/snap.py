@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from curvefit.calibrate.consensus import Progression
 from curvefit.calibrate.evidence import TickRow
 
-__all__ = ["Scale", "Settings", "line_through", "snap"]
+__all__ = ["Scale", "Settings", "ends_covariance", "line_through", "snap"]
 
 Array = NDArray[np.float64]
 
@@ -284,7 +284,7 @@ def _fitted(
     rms = float(np.sqrt((residual**2).sum() / max(n - 2, 1))) if n > 2 else 0.0
     expected = float(np.sqrt((u[keep] ** 2).mean())) * side_px
     cov = cov * max(1.0, (rms / expected) ** 2)
-    cov = cov + _ends(slope, (s.exact_floor if exact else s.floor) / side_px)
+    cov = cov + ends_covariance(slope, (s.exact_floor if exact else s.floor) / side_px)
     at_label, label_value = _labelled(p)
     shift = (at_label - (label_value - offset) / slope) / size
     middle = float(np.median(shift))
@@ -314,7 +314,7 @@ def _covered(p: Progression, used: Array) -> float:
     return float(np.mean([np.abs(used - v).min() < 1e-9 + 1e-6 * abs(v) for v in values]))
 
 
-def _ends(slope: float, u: float) -> Array:
+def ends_covariance(slope: float, u: float) -> Array:
     """Covariance of offset and slope from independent errors u (fractions) of the two ends."""
     variance = (slope * u) ** 2
     return variance * np.array([[1.0, -1.0], [-1.0, 2.0]])
@@ -327,7 +327,7 @@ def _from_labels(p: Progression, side_px: float, size: float, exact: bool, s: Se
     offset, slope, cov = line_through(f, at, u)
     # the numbers of a side may all stand a little to one side of their ticks
     cov = cov + (slope * s.label_scatter * size) ** 2 * np.array([[1.0, 0.0], [0.0, 0.0]])
-    cov = cov + _ends(slope, (s.exact_floor if exact else s.floor) / side_px)
+    cov = cov + ends_covariance(slope, (s.exact_floor if exact else s.floor) / side_px)
     values = 10.0**f if p.log else f
     residual = ((f - offset) / slope - at) / size
     return Scale(

@@ -163,3 +163,13 @@ def test_exact_ticks_carry_an_exact_scale():
     left = next(a for a in axes if a.side == "left")
     assert np.sqrt(left.covariance[0, 0]) < 0.01
     np.testing.assert_allclose(left.value(np.array([0.0, 1.0])), [0, 80], atol=1e-6)
+
+
+def test_a_bow_that_is_left_widens_the_scales_and_is_said():
+    evidence = drawn([FLOW, steps("left", 0, 90, 30)], np.random.default_rng(5))
+    flat, _, silent = scales(evidence, "A", None)
+    bowed, _, said = scales(replace(evidence, bow=(0.0, 6.0)), "A", None)
+    left = [next(a for a in axes if a.side == "left") for axes in (flat, bowed)]
+    u = [np.sqrt(a.covariance[0, 0]) / a.slope * 800 for a in left]
+    assert u[1] == pytest.approx(np.hypot(u[0], 3.0), rel=1e-6)
+    assert [f.code for f in said if f.code not in {g.code for g in silent}] == ["panel.bow"]

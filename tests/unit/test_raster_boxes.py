@@ -252,3 +252,15 @@ def test_a_side_that_is_not_drawn_runs_between_the_ends_of_those_beside_it(matri
     page = drawn((1100, 760), OPEN + ticks, matrix, width=3.0)
     (e,) = boxes(page)
     assert np.abs(e.corners - corners(200, 100, 900, 620, matrix)).max() < 1.5
+
+
+def test_an_open_box_on_a_curled_page_is_bent_by_its_one_drawn_line():
+    x = np.linspace(200, 900, 60)
+    y = 620 + 6 * (1 - ((x - 550) / 350) ** 2)
+    lines = [tuple(v) for v in np.c_[x[:-1], y[:-1], x[1:], y[1:]]]
+    lines += [(200, 100, 200, 620), (900, 100, 900, 620)]
+    (e,) = boxes(drawn((1100, 760), lines))
+    inside = np.c_[x, y - 260]  # a line in the middle of the box sags as the bottom does
+    flat = e.warp.to_panel(inside)[:, 1]
+    assert np.ptp(flat) < 0.6
+    assert max(e.bow) < 0.7
