@@ -137,6 +137,7 @@ def read_page(
             panels = _same_panels(before, given) or calibrate(page, given.page, given.panels)
         done = replace(done, panels=panels, findings=_gathered(page, panels))
         with _stage("trace", seconds, progress):
+            given = _placed(page, panels, given, before)
             traces = tuple(t for p in panels for t in _traces(p, given, before))
         done = replace(done, traces=traces, findings=_gathered(page, panels, traces))
         with _stage("identify", seconds, progress):
@@ -175,6 +176,34 @@ def _same_panels(before: Reading | None, notes: Notes) -> tuple[Panel, ...] | No
         return None
     unchanged = (before.notes.page, before.notes.panels) == (notes.page, notes.panels)
     return before.panels if unchanged else None
+
+
+def _placed(page: Page, panels: tuple[Panel, ...], notes: Notes, before: Reading | None) -> Notes:
+    """Notes that redraw a line by its name, with a point on that line.
+
+    A line's name says what it means, which is known only once it was followed and identified:
+    where such notes stand, the lines are read once without them.
+    """
+    from curvefit.identify import identify
+
+    def by_name_alone(c: CurveNotes) -> bool:
+        return c.name is not None and c.at is None and bool(c.path or c.leave_out)
+
+    if not any(by_name_alone(c) for c in notes.curves):
+        return notes
+    curves = before.curves if before is not None else ()
+    if not curves:
+        bare = replace(notes, curves=tuple(c for c in notes.curves if not by_name_alone(c)))
+        traces = tuple(t for p in panels for t in _traces(p, bare, None))
+        curves, _, _ = identify(page, panels, traces, bare)
+    on = {c.name: c.trace.xy[len(c.trace.flat) // 2] for c in curves if c.trace is not None}
+    placed = tuple(
+        replace(c, at=(float(on[c.name][0]), float(on[c.name][1])))
+        if by_name_alone(c) and c.name in on
+        else c
+        for c in notes.curves
+    )
+    return replace(notes, curves=placed)
 
 
 def _traces(panel: Panel, notes: Notes, before: Reading | None) -> tuple[Trace, ...]:

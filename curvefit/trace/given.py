@@ -103,12 +103,9 @@ def _line_of(panel: Panel, lines: list[Trace], note: CurveNotes, path: Array) ->
         if t.name == note.name:
             return k
     # the name was given by what the line means, which is not known here: the line that is meant
-    # is the one that the path leaves and comes back to, or runs along
+    # is the one that the path leaves and comes back to; any other guess could replace a wrong one
     ends = [float(_away(t, path[[0, -1]]).max()) for t in lines]
-    if ends and min(ends) <= REACH:
-        return int(np.argmin(ends))
-    along = [float(np.median(_away(t, path))) for t in lines]
-    return int(np.argmin(along)) if along else None
+    return int(np.argmin(ends)) if ends and min(ends) <= REACH else None
 
 
 def _away(line: Trace, points: Array) -> Array:

@@ -127,3 +127,16 @@ def test_a_dropped_curve_is_gone_and_the_other_stays(twin):
     again = read_chart(path, Notes(curves=(CurveNotes(at=_point(eta), drop=True),)))
     left = sorted(c.quantity for c in read.curves if c is not eta)
     assert sorted(c.quantity for c in again.curves) == left
+
+
+def test_a_path_named_by_its_line_alone_replaces_that_line(twin):
+    """A name says what a line means; the line is found by it even where another runs nearer."""
+    path, read = twin
+    head, eta = _longest(read, "head"), _longest(read, "efficiency")
+    drawn = head.trace.xy[:: max(1, len(head.trace.xy) // 12)] + np.array([0.0, 25.0])
+    given = CurveNotes(name=head.name, path=tuple((float(x), float(y)) for x, y in drawn))
+    again = read_chart(path, Notes(curves=(given,)))
+    assert _same(_longest(again, "efficiency"), eta)
+    moved = next(c for c in again.curves if c.name == head.name)
+    assert moved.by == "given"
+    assert not _same(moved, head)
