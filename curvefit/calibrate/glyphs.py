@@ -142,15 +142,28 @@ def no_dashes(letters: Letters, zones: Ints) -> NDArray[np.bool_]:
     if not len(real):
         return out
     tall = np.maximum(real[:, 2] - real[:, 0], real[:, 3] - real[:, 1])
+    bars = letters.boxes[letters.bar]
+    upright = bars[bars[:, 3] - bars[:, 1] > bars[:, 2] - bars[:, 0]]
     for i in np.flatnonzero(letters.bar & (zones > 0)):
         box = letters.boxes[i]
         size = float((box[2:] - box[:2]).max())
         along = int(np.argmin(box[2:] - box[:2]))  # the line runs across the bar
         gap = np.maximum(real[:, along] - box[along + 2], box[along] - real[:, along + 2])
         off = np.abs(real[:, [1 - along, 3 - along]] - box[[1 - along, 3 - along]]).max(1)
-        near = (gap < 0.45 * size) & (off < 0.3 * size)
-        out[i] = bool((near & (np.abs(tall - size) < 0.25 * size)).any())
+        near = (gap < 0.45 * size) & (off < 0.3 * size) & (np.abs(tall - size) < 0.25 * size)
+        out[i] = bool(near.any()) or (along == 0 and _is_quote(box, real, tall, upright))
     return out
+
+
+def _is_quote(box: Array, real: Array, tall: Array, upright: Array) -> bool:
+    """Whether a short upright bar is one of a pair that hangs from the top behind a character."""
+    size = box[3] - box[1]
+    gap = box[0] - real[:, 2]
+    behind = (gap > -0.2 * tall) & (gap < 0.8 * tall) & (np.abs(box[1] - real[:, 1]) < 0.2 * tall)
+    behind &= (size > 0.2 * tall) & (size < 0.6 * tall)
+    apart = np.maximum(upright[:, 0] - box[2], box[0] - upright[:, 2])
+    twin = (np.abs(upright[:, [1, 3]] - box[[1, 3]]).max(1) < 0.3 * size) & (apart < size)
+    return bool(behind.any() and np.count_nonzero(twin) == 2)  # itself and the other one
 
 
 def _joins_column(boxes: Array, vertical: NDArray[np.bool_], in_row: Array) -> NDArray[np.bool_]:
