@@ -8,6 +8,7 @@ from dataclasses import replace
 from curvefit.errors import Location, NotesError
 from curvefit.identify import doubts
 from curvefit.identify.given import apply, dropped, pump_notes
+from curvefit.identify.inside import inside
 from curvefit.identify.leaders import follow_leaders
 from curvefit.identify.levels import Level, iso_lines, levels
 from curvefit.identify.line import Line
@@ -29,6 +30,7 @@ def assemble(
 ) -> tuple[tuple[Curve, ...], tuple[Pump, ...], tuple[Finding, ...]]:
     """See :func:`curvefit.identify.identify`."""
     findings: list[Finding] = []
+    traces = [inside(t) for t in traces]
     settled, of, labels = [], [], []
     for panel in panels:
         known, said = with_units(panel, panels)

@@ -132,8 +132,8 @@ def _lines(reading: Reading) -> list[_Line]:
     found: list[tuple[Trace, Curve | None]] = [
         (c.trace, c) for c in reading.curves if c.trace is not None
     ]
-    taken = {id(t) for t, _ in found}
-    found += [(t, None) for t in reading.traces if id(t) not in taken]
+    taken = {(t.panel.name, t.name) for t, _ in found}  # a curve's trace may be cut to its box
+    found += [(t, None) for t in reading.traces if (t.panel.name, t.name) not in taken]
     lines = []
     for i, (trace, curve) in enumerate(found):
         doubtful = curve is None or any(

@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from identify_scene import ModelPump, Scene
 
+from curvefit.identify import identify
 from curvefit.identify.values import values
 
 pump = ModelPump()
@@ -112,3 +113,41 @@ def test_a_flow_axis_that_runs_backwards():
     v = values(trace, panel.axis("bottom"), panel.axis("left"))
     assert (np.diff(v.flow) > 0).all()
     np.testing.assert_allclose(v.value, pump.head(v.flow * 3600), rtol=1e-12)
+
+
+def overshot(path=False):
+    """A head line and an efficiency line whose ends run past the frame, as the ink of it does."""
+    scene = Scene()
+    box = scene.box(("head", "m", 0.0, 50.0), ("efficiency", "%", 0.0, 100.0))
+    box.line(pump.head, (0.0, 200.0), path=path)
+    box.line(pump.efficiency, (0.0, 180.0), axis="right")
+    page, panels, traces = scene.records()
+    longer = []
+    for t in traces:
+        start = t.flat[0] + np.c_[np.linspace(-3.0, -0.4, 6), np.linspace(2.0, 0.3, 6)]
+        flat = np.r_[start, t.flat]
+        n = len(flat)
+        longer.append(replace(t, flat=flat, sigma=np.full(n, 0.1), flags=np.zeros(n, np.uint8)))
+    return page, panels, tuple(longer)
+
+
+@pytest.mark.parametrize("path", [False, True])
+def test_no_line_leaves_its_box(path):
+    page, panels, traces = overshot(path)
+    curves, _, _ = identify(page, panels, traces)
+    assert len(curves) == 2
+    for curve in curves:
+        assert curve.flow_si.min() >= 0.0
+        assert curve.value_si.min() >= 0.0
+        assert path or len(curve.trace.flat) == len(curve.flow_si)
+    if not path:
+        assert curves[0].flow_si[0] == pytest.approx(0.0, abs=1e-12)
+        assert curves[0].value_si[0] == pytest.approx(pump.head(0.0), rel=1e-3)
+        assert (np.diff(curves[0].flow_si) > 0).all()
+
+
+def test_a_line_that_the_user_drew_is_left_as_it_is():
+    page, panels, traces = overshot()
+    drawn = replace(traces[0], by="given")
+    curves, _, _ = identify(page, panels, (drawn,))
+    assert len(curves[0].flow_si) == len(drawn.flat)
