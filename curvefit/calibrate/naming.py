@@ -10,7 +10,6 @@ from numpy.typing import NDArray
 
 from curvefit.calibrate.rows import Column, Spot, outward
 from curvefit.calibrate.titles import Title, read_title
-from curvefit.errors import Location
 from curvefit.records import Axis, Finding, Word
 
 __all__ = ["name_axes"]
@@ -275,15 +274,3 @@ def _suffix(column: Column) -> str:
     """A unit printed behind the numbers themselves ("80 %")."""
     found = [r.readings[0].suffix for r in column.labels if r.readings[0].suffix]
     return max(set(found), key=found.count) if found else ""
-
-
-def gallon_finding(axis: Axis) -> Finding:
-    """Gallons of no stated kind were taken as US gallons."""
-    panel = axis.name.partition(".")[0]
-    return Finding(
-        "info",
-        "axis.gallons",
-        f'"{axis.printed_unit}" was taken for US gallons: the chart does not say which.',
-        Location(panel=panel, axis=axis.name),
-        f'In the notes give the axis unit = "US gpm" or "igpm" (panel "{panel}").',
-    )

@@ -8,7 +8,6 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
-from curvefit.calibrate.naming import gallon_finding
 from curvefit.calibrate.titles import read_title
 from curvefit.errors import Location
 from curvefit.records import Axis, Finding, Panel
@@ -18,14 +17,15 @@ __all__ = ["checked_together"]
 
 Array = NDArray[np.float64]
 _FLOWS = ("m3/h", "L/s", "L/min", "[gal_us]/min", "[gal_br]/min", "m3/s")
+_LENGTHS = {"m": "m", "[ft_i]": "ft"}
 _POWERS_OF_TEN = (0.001, 0.01, 0.1, 10.0, 100.0, 1000.0)
 
 
 def checked_together(panels: Sequence[Panel]) -> tuple[Panel, ...]:
     """The panels with units filled in from, and doubts raised by, the axes beside them."""
-    out = [_same_dimension(_lone_length(p)) for p in panels]
-    out = _stacked(out)
-    return tuple(_gallons(_per_cent(p)) for p in out)
+    out = [_same_dimension(_two_heads(_lone_length(p))) for p in panels]
+    out = _stacked([_hundred(p) for p in out])
+    return tuple(_per_cent(p) for p in out)
 
 
 def _per_cent(panel: Panel) -> Panel:
@@ -54,6 +54,56 @@ def _lone_length(panel: Panel) -> Panel:
         replace(a, quantity="head", guessed=True) if a is unnamed[0] else a for a in panel.axes
     )
     return replace(panel, axes=axes)
+
+
+def _two_heads(panel: Panel) -> Panel:
+    """A scale without a unit that runs 3.2808 times as fast as the head's in metres is in feet."""
+    axes = list(panel.axes)
+    heads = [a for a in axes if a.quantity == "head" and a.unit in _LENGTHS and not a.along_flow]
+    for k, axis in enumerate(axes):
+        if axis.along_flow or axis.unit is not None or axis.quantity not in (None, "head"):
+            continue
+        for head in heads:
+            for unit in _LENGTHS:
+                ratio = _ratio(axis, head, unit)
+                if unit != head.unit and ratio is not None and abs(ratio - 1) < 0.005:
+                    axes[k] = replace(
+                        axis, quantity="head", unit=unit, printed_unit=_LENGTHS[unit], guessed=False
+                    )
+    borne = {
+        a.name for a in heads for b in heads
+        if a.unit != b.unit and abs((_ratio(a, b) or 0.0) - 1) < 0.005
+    }  # fmt: skip
+    axes = [replace(a, guessed=a.guessed and a.name not in borne) for a in axes]
+    return replace(panel, axes=tuple(axes))
+
+
+def _hundred(panel: Panel) -> Panel:
+    """A nameless scale from 0 to 100 beside a head is taken as an efficiency, and said so."""
+    values = [a for a in panel.axes if not a.along_flow]
+    nameless = [
+        a for a in values
+        if a.quantity is None and a.unit is None and a.by == "read" and a.scale == "linear"
+        and np.abs(a.value(np.array([0.0, 1.0])) - [0.0, 100.0]).max() < 1.0
+    ]  # fmt: skip
+    named = {a.quantity for a in values}
+    if len(nameless) != 1 or "head" not in named or named & {"efficiency", "overall_efficiency"}:
+        return panel
+    axis = nameless[0]
+    told = [w.text for w in panel.words if read_title(w.text).dimension in ("power", "pressure")]
+    if told:  # its own title may be one of these
+        return panel
+    side = axis.name.partition(".")[2]
+    finding = Finding(
+        "warning",
+        "axis.unit-guessed",
+        "no title could be read; a scale from 0 to 100 beside a head was taken as efficiency in %.",
+        Location(panel=panel.name, axis=axis.name),
+        f'Give quantity and unit of axis "{side}" of panel "{panel.name}" in the notes.',
+    )
+    taken = replace(axis, quantity="efficiency", unit="%", printed_unit="%", guessed=True)
+    axes = tuple(taken if a is axis else a for a in panel.axes)
+    return replace(panel, axes=axes, findings=(*panel.findings, finding))
 
 
 def _ends_si(axis: Axis, unit: str | None = None) -> Array:
@@ -149,22 +199,3 @@ def _doubted(panel: Panel, axis: Axis, other: Axis, ratio: float) -> Panel:
     where = Location(panel=panel.name, axis=axis.name)
     finding = Finding("warning", "axis.factor", message, where, remedy)
     return replace(panel, findings=(*panel.findings, finding))
-
-
-def _gallons(panel: Panel) -> Panel:
-    """Gallons of no stated kind: said, unless another flow axis of the panel confirms them."""
-    said = []
-    for axis in panel.axes:
-        if axis.by == "given" or not axis.along_flow or not read_title(axis.title).bare_gallon:
-            continue
-        if not any(
-            o is not axis and o.along_flow and o.unit is not None and _confirms(axis, o)
-            for o in panel.axes
-        ):
-            said.append(gallon_finding(axis))
-    return replace(panel, findings=panel.findings + tuple(said))
-
-
-def _confirms(a: Axis, b: Axis) -> bool:
-    ratio = _ratio(a, b)
-    return ratio is not None and abs(ratio - 1) < 0.02

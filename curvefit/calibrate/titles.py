@@ -26,7 +26,7 @@ class Title:
 
     quantity : key of QUANTITIES or None; unit : UCUM code or None; printed_unit : as on the page.
     factor : multiplies printed numbers on the way to `unit`. dimension : of quantity or unit.
-    guessed : rests on a lone symbol or a look-alike. bare_gallon : gallons of no stated kind.
+    guessed : rests on a lone symbol or a look-alike.
     """
 
     text: str
@@ -36,7 +36,6 @@ class Title:
     factor: float = 1.0
     dimension: str | None = None
     guessed: bool = False
-    bare_gallon: bool = False
 
     @property
     def strength(self) -> int:
@@ -47,17 +46,6 @@ class Title:
 _DIMENSIONS = ("flow", "length", "ratio", "power", "pressure")
 _NEVER = ("1", "[in_i]", "mm", "cm")  #: no axis is scaled in these; "H in m" holds an "in"
 _DEFAULT = {"flow": "flow", "ratio": "efficiency", "power": "shaft_power"}
-_BARE_GALLON = {
-    "gpm",
-    "gal/min",
-    "g.p.m.",
-    "gallons/min",
-    "gallonsperminute",
-    "gph",
-    "gal/h",
-    "mgd",
-    "gal/hr",
-}
 _ALIKE = str.maketrans(
     {
         "l": "1",
@@ -284,10 +272,4 @@ def _joined(
             return None
         default = _DEFAULT.get(u.dimension)
         title = replace(title, quantity=default, guessed=not exact or u.dimension in ("power",))
-    bare = u.code.startswith(("[gal_us]", "10*6.[gal_us]")) and (
-        fold(shown) in _BARE_GALLON
-        and "us" not in re.split(r"\W+", text.lower())
-        and "u.s" not in text.lower()
-        and "usgpm" not in fold(text)
-    )
-    return replace(title, bare_gallon=bare)
+    return title

@@ -70,9 +70,3 @@ def test_other_words_name_no_axis(text):
 )  # fmt: skip
 def test_factor_to_the_unit(text, factor):
     assert read_title(text).factor == pytest.approx(factor)
-
-
-def test_gallons_of_no_stated_kind():
-    assert read_title("Flow (gpm)").bare_gallon
-    assert not read_title("Flow (US gpm)").bare_gallon
-    assert not read_title("Capacity - US GPM").bare_gallon
