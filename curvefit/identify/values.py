@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from curvefit.identify.inside import OVER
 from curvefit.records import Axis, Trace
 from curvefit.units import unit
 
@@ -85,6 +86,7 @@ def values(trace: Trace, flow_axis: Axis, value_axis: Axis, *, iso: bool = False
         back = slice(None, None, -1)
         flow, value, trace_sigma, flags = flow[back], value[back], trace_sigma[back], flags[back]
         calibration = calibration[back]
+    flow, value = _from_zero(flow, flow_axis), _from_zero(value, value_axis)
     sigma = np.sqrt(trace_sigma**2 + (calibration**2).sum(1))
     return Values(flow, value, sigma, trace_sigma, calibration, correlation, flags)
 
@@ -106,6 +108,16 @@ def _si(axis: Axis, t: Array) -> tuple[Array, Array]:
     if axis.scale == "log":
         return value, np.log(10.0) * axis.slope * value
     return value, np.full(len(value), axis.slope * axis.factor * factor)
+
+
+def _from_zero(value: Array, axis: Axis) -> Array:
+    """Values of an axis that starts at zero, without the hair by which some fall below it."""
+    start, end = axis.value(np.array([0.0, 1.0])) * axis_factor(axis)
+    hair = OVER * abs(end - start)
+    below = (value < 0) & (value > -2 * hair)
+    if abs(start) > hair or not below.any() or (axis.along_flow and below.sum() > 1):
+        return value
+    return np.where(below, 0.0, value)
 
 
 def _axis_errors(axis: Axis, t: Array, rate: Array) -> Array:

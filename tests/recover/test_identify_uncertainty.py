@@ -151,3 +151,15 @@ def test_a_line_that_the_user_drew_is_left_as_it_is():
     drawn = replace(traces[0], by="given")
     curves, _, _ = identify(page, panels, (drawn,))
     assert len(curves[0].flow_si) == len(drawn.flat)
+
+
+def test_an_axis_whose_zero_is_a_hair_off_makes_no_negative_number():
+    page, (panel,), traces = overshot()
+    axes = tuple(replace(a, offset=a.offset - 1e-4 * a.slope) for a in panel.axes)
+    moved = replace(panel, axes=axes)
+    curves, _, _ = identify(page, (moved,), tuple(replace(t, panel=moved) for t in traces))
+    assert len(curves) == 2
+    for curve in curves:
+        assert curve.flow_si.min() == 0.0
+        assert (np.diff(curve.flow_si) > 0).all()
+        assert curve.value_si.min() >= 0.0
