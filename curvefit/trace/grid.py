@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 __all__ = ["Inked", "without_lines"]
 
 Image = NDArray[np.float32]
+Ruled = tuple[NDArray[np.float64], float]  # centre row at every column, thickness
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -38,24 +39,46 @@ def without_lines(dark: Image, margin: int) -> Inked:
     than the line alone by 1.6 px.
     """
     ink, known = dark.copy(), np.ones_like(dark)
-    curves = _curve_darkness(dark)
-    found = []
-    for turned in (False, True):
-        source = dark.T if turned else dark
-        lines = _find_lines(source, margin)
-        target, seen = (ink.T, known.T) if turned else (ink, known)
+    level, upright = _find_lines(dark, margin), _find_lines(dark.T, margin)
+    curves = _curve_darkness(dark, level, upright)
+    for lines, source, target, seen in (
+        (level, dark, ink, known),
+        (upright, dark.T, ink.T, known.T),
+    ):
         for centre, thickness in lines:
             _take_out(source, target, seen, centre, thickness, curves)
-        found.append(np.array([(c.mean(), t) for c, t in lines]).reshape(-1, 2))
-    return Inked(ink, known, found[0], found[1])
+    rows, cols = (
+        np.array([(c.mean(), t) for c, t in lines]).reshape(-1, 2) for lines in (level, upright)
+    )
+    return Inked(ink, known, rows, cols)
 
 
-def _curve_darkness(dark: Image) -> float:
+def _curve_darkness(dark: Image, level: list[Ruled], upright: list[Ruled]) -> float:
+    """How dark curves are: of all ink, or of that beside the lines where these are many."""
     strong = dark[dark > 0.25]
-    return float(np.quantile(strong, 0.85)) if strong.size > 50 else 0.8
+    darkness = float(np.quantile(strong, 0.85)) if strong.size > 50 else 0.8
+    beside = dark.copy()
+    for lines, image in ((level, beside), (upright, beside.T)):
+        for centre, thickness in lines:
+            at, across, _ = _strip(image, centre, thickness)
+            image[at, across] = 0.0
+    strong = beside[beside > 0.25]
+    if strong.size < 0.001 * dark.size:
+        return darkness
+    return max(darkness, float(np.quantile(strong, 0.85)))
 
 
-def _find_lines(dark: Image, margin: int) -> list[tuple[NDArray[np.float64], float]]:
+def _strip(
+    dark: Image, centre: NDArray[np.float64], thickness: float
+) -> tuple[NDArray[np.int64], NDArray[np.int64], int]:
+    """Rows (offset, column) and columns of the pixels along a line; half their number."""
+    half = int(np.ceil(thickness / 2 + 1.0))
+    offsets = np.arange(-half, half + 1)[:, None]
+    at = np.clip(np.round(centre).astype(int) + offsets, 0, len(dark) - 1)
+    return at, np.arange(dark.shape[1])[None, :], half
+
+
+def _find_lines(dark: Image, margin: int) -> list[Ruled]:
     """Horizontal lines: their centre row at every column, and thickness [px]."""
     rows, cols = dark.shape
     edges = np.linspace(margin, cols - margin, 13).astype(int)
@@ -63,7 +86,8 @@ def _find_lines(dark: Image, margin: int) -> list[tuple[NDArray[np.float64], flo
     typical = np.sort(mean, axis=1)[:, 3:6].mean(1)  # present in the lower-middle blocks
     base = _local_base(typical, 12)
     excess = np.clip(typical - base, 0, None)
-    found, used = [], np.zeros(rows, bool)
+    found: list[Ruled] = []
+    used = np.zeros(rows, bool)
     for row in np.argsort(-excess):
         if excess[row] < 0.045:
             break
@@ -131,11 +155,8 @@ def _take_out(
     """Take one horizontal line out of `ink`, in place."""
     from scipy.ndimage import uniform_filter1d
 
-    rows, cols = dark.shape
-    half = int(np.ceil(thickness / 2 + 1.0))
-    offsets = np.arange(-half, half + 1)
-    at = np.clip(np.round(centre).astype(int) + offsets[:, None], 0, rows - 1)
-    across = np.arange(cols)[None, :]
+    cols = dark.shape[1]
+    at, across, half = _strip(dark, centre, thickness)
     strip = dark[at, across]
     typical = np.median(strip, axis=1)
     if typical.max() > 0.62 * curves or strip.max() < 0.01:
@@ -144,7 +165,8 @@ def _take_out(
     local = _running_median(strip, max(cols // 14, 31))
     cap = 1.25 * typical[:, None] + 0.03
     line = np.minimum(uniform_filter1d(local, 9, axis=1), cap).astype(np.float32)
-    rest = np.clip((strip - line) / np.maximum(1.0 - line, 0.2), 0, 1)
+    # an opaque curve over the line: line + coverage × (curve − line)
+    rest = np.clip((strip - line) / np.maximum(1.0 - line / max(curves, 0.2), 0.35), 0, 1)
     rest[rest < 0.12] = 0.0
     ink[at, across] = np.minimum(ink[at, across], rest)
     sure = 1.0 - np.clip(line / max(curves, 0.2), 0, 1) * 0.6

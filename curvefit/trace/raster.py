@@ -15,6 +15,7 @@ from curvefit.trace.centre import Line, centred, width_along
 from curvefit.trace.ends import settled
 from curvefit.trace.grid import Inked, without_lines
 from curvefit.trace.ink import MARGIN, Flat, Layer, hues, straightened, stroke_width
+from curvefit.trace.legend import without_legends
 from curvefit.trace.linked import Loose, linked_lines, without
 from curvefit.trace.sift import is_frame, own_ink, without_doubles
 from curvefit.trace.text import lettering, markers, spread
@@ -96,7 +97,7 @@ def _across(one: Found, family: list[Line], reach: float) -> list[Found]:
 def _prepared(panel: Panel) -> tuple[Flat, Inked, float, Mask, Mask]:
     """The straightened panel, its ink without paper lines, stroke width, letters, markers."""
     flat = straightened(panel)
-    inked = without_lines(flat.dark, MARGIN)
+    inked = without_legends(panel, flat.dark, without_lines(flat.dark, MARGIN))
     width = stroke_width(inked.ink, 0.02 * panel.warp.size[0], inked.known < 0.3)
     blots = markers(inked.ink, width)
     letters = lettering(panel, np.where(blots | (inked.known < 0.6), 0, inked.ink), width)

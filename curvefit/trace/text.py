@@ -59,7 +59,7 @@ def _word_mask(panel: Panel, shape: tuple[int, ...]) -> NDArray[np.uint8]:
     mask = np.zeros(shape, np.uint8)
     for word in panel.words:
         letters = sum(c.isalnum() for c in word.text)
-        if letters < 2 or word.score < 0.4:  # a dash is easily read as a lone 1
+        if letters < 2 or word.score < 0.55:  # a dash is easily read as a lone 1
             continue
         box = panel.warp.to_panel(word.box) + MARGIN
         middle = box.mean(0)
