@@ -12,7 +12,7 @@ from curvefit.calibrate.bow import quarter
 from curvefit.calibrate.evidence import Evidence, TickRow
 from curvefit.calibrate.glyphs import TextLine
 from curvefit.calibrate.ink import ink_of
-from curvefit.calibrate.plots import Plot, clockwise, find_plots
+from curvefit.calibrate.plots import Plot, clockwise, find_plots, split_plots
 from curvefit.calibrate.sheet import Settings, Sheet, straighten
 from curvefit.calibrate.ticks import Side
 from curvefit.calibrate.upright import quarter_turns
@@ -56,6 +56,8 @@ def gather(
     if turn is None:
         turn = quarter_turns(lettering)
     words = read_lines(lettering, _wanted(lettering, plots, s), sheet.matrix, turn)
+    if turn == 0:
+        plots = split_plots(sheet, plots, words, s)
     return tuple(_evidence(sheet, plot, turn, words) for plot in _upright_order(plots, turn))
 
 

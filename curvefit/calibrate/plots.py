@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 from curvefit.calibrate.bow import bent, sag
 from curvefit.calibrate.boxes import Box, find_boxes
+from curvefit.calibrate.divide import divided
 from curvefit.calibrate.evidence import TickRow
 from curvefit.calibrate.lines import Line
 from curvefit.calibrate.sheet import Settings, Sheet
@@ -17,8 +18,9 @@ from curvefit.calibrate.sides import follow, side_lines, warp_of
 from curvefit.calibrate.ticks import FARTHEST, Side, flatten, tick_bars, tick_rows
 from curvefit.geometry import Warp, project
 from curvefit.notes import PanelNotes
+from curvefit.records import Word
 
-__all__ = ["Plot", "clockwise", "find_plots"]
+__all__ = ["Plot", "clockwise", "find_plots", "split_plots"]
 
 Array = NDArray[np.float64]
 
@@ -60,14 +62,34 @@ def find_plots(sheet: Sheet, notes: Sequence[PanelNotes], s: Settings) -> list[P
 def _seen_boxes(sheet: Sheet, s: Settings) -> list[tuple[Array, Box]]:
     """Corners on the page (sub-pixel) of each box that lines make."""
     long_side = max(sheet.flat.shape)
-    reach = 4.0 * max(1.0, long_side / s.work) + 1
     found = []
     for box in find_boxes(sheet.across, sheet.upright, 0.3 * s.shortest * long_side):
         if box.area > s.smallest * sheet.flat.size:
-            rough = project(np.linalg.inv(sheet.matrix), box.corners)
-            ruled = min(len(box.across), len(box.upright)) >= 3
-            found.append((side_lines(sheet.ink, rough, box.seen, reach, ruled)[0], box))
+            found.append((_corners(sheet, box, s), box))
     return found
+
+
+def _corners(sheet: Sheet, box: Box, s: Settings) -> Array:
+    """The corners of a box (4, 2), page px, from the sides that are drawn."""
+    reach = 4.0 * max(1.0, max(sheet.flat.shape) / s.work) + 1
+    rough = project(np.linalg.inv(sheet.matrix), box.corners)
+    ruled = min(len(box.across), len(box.upright)) >= 3
+    return side_lines(sheet.ink, rough, box.seen, reach, ruled)[0]
+
+
+def split_plots(sheet: Sheet, plots: list[Plot], words: Sequence[Word], s: Settings) -> list[Plot]:
+    """The plots of an upright page, each frame that holds several boxes taken apart."""
+    parts = [divided(p.box, words, sheet.matrix) for p in plots]
+    if all(len(boxes) == 1 for boxes in parts):
+        return plots
+    others = [b for boxes in parts for b in boxes]
+    out = []
+    for plot, boxes in zip(plots, parts, strict=True):
+        if len(boxes) == 1:
+            out.append(plot)
+        else:
+            out += [_plot(sheet, _corners(sheet, b, s), b, others, s) for b in boxes]
+    return _in_reading_order(out)
 
 
 def _straightest(

@@ -264,3 +264,67 @@ def test_an_open_box_on_a_curled_page_is_bent_by_its_one_drawn_line():
     flat = e.warp.to_panel(inside)[:, 1]
     assert np.ptp(flat) < 0.6
     assert max(e.bow) < 0.7
+
+
+def figure_pixels(figure):
+    from matplotlib.backends.backend_agg import FigureCanvasAgg
+
+    canvas = FigureCanvasAgg(figure)
+    canvas.draw()
+    return np.ascontiguousarray(np.asarray(canvas.buffer_rgba())[:, :, :3])
+
+
+def test_boxes_that_share_a_frame_line_are_told_apart_by_their_numbers():
+    from matplotlib.figure import Figure
+
+    figure = Figure(figsize=(6, 7), dpi=130)
+    upper, lower = figure.subplots(2, 1, sharex=True, gridspec_kw={"hspace": 0})
+    upper.set(xlim=(0, 200), ylim=(0, 60), yticks=[10, 20, 30, 40, 50, 60])
+    lower.set(ylim=(0, 100), yticks=[0, 20, 40, 60, 80])
+    for axes in (upper, lower):
+        axes.grid(True, color="0.7", linewidth=0.5)
+    first, second = boxes(figure_pixels(figure))
+    tall = 7 * 130
+    for axes, found in ((upper, first), (lower, second)):
+        y1, y0 = (tall * (1 - y) - 0.5 for y in (axes.get_position().y0, axes.get_position().y1))
+        assert found.corners[:, 1] == pytest.approx([y0, y0, y1, y1], abs=1)
+
+
+def test_one_scale_with_a_heavy_line_across_stays_one_box():
+    from matplotlib.figure import Figure
+
+    figure = Figure(figsize=(6, 6), dpi=130)
+    axes = figure.subplots()
+    axes.set(xlim=(0, 200), ylim=(0, 60), yticks=[0, 10, 20, 30, 40, 50, 60])
+    axes.axhline(30, color="black", linewidth=0.8)
+    assert len(boxes(figure_pixels(figure))) == 1
+
+
+def test_labels_that_curves_cross_are_read_whole():
+    from matplotlib.figure import Figure
+
+    figure = Figure(figsize=(7, 5), dpi=200)
+    axes = figure.subplots()
+    axes.set(xlim=(0, 120), ylim=(0, 50), yticks=[0, 10, 20, 30, 40, 50])
+    q = np.linspace(0, 110, 80)
+    labels = ["65%", "75%", "80%", "210 mm", "190 mm"]
+    for k, label in enumerate(labels):
+        head = 48 - 8 * k - 0.0012 * q**2
+        axes.plot(q, head, color="black", linewidth=1.2)
+        at = 30 + 10 * k
+        axes.text(q[at], head[at] - 0.9, label)  # the curve runs through its middle
+    texts = [w.text for w in boxes(figure_pixels(figure))[0].words]
+    assert sum(label in texts for label in labels) >= 4
+
+
+def test_a_unit_a_space_behind_its_number_and_inch_marks_stay_with_it():
+    from matplotlib.figure import Figure
+
+    figure = Figure(figsize=(7, 5), dpi=150)
+    axes = figure.subplots()
+    axes.set(xlim=(0, 120), ylim=(0, 50))
+    axes.text(30, 20, "1450 rpm", family="monospace")
+    axes.text(30, 30, "210 mm", family="monospace")
+    axes.text(80, 30, '9 1/4"', family="serif")
+    texts = [w.text for w in boxes(figure_pixels(figure))[0].words]
+    assert {"1450 rpm", "210 mm", '9 1/4"'} <= set(texts)
