@@ -7,6 +7,7 @@ from dataclasses import replace
 
 from curvefit.errors import Location, NotesError
 from curvefit.identify import doubts
+from curvefit.identify.counts import too_few
 from curvefit.identify.given import apply, dropped, pump_notes
 from curvefit.identify.inside import inside
 from curvefit.identify.leaders import follow_leaders
@@ -60,10 +61,11 @@ def assemble(
     as_read = names(lines)
     gone = dropped(lines, as_read, notes)
     apply(lines, as_read, notes)
-    lines = [line for i, line in enumerate(lines) if i not in gone]
+    found, lines = lines, [line for i, line in enumerate(lines) if i not in gone]
     pumps = _with_named(pumps, lines, notes)
     final = names(lines)
     findings += doubts.of_page(lines, settled, labels, used)
+    findings += too_few(found, settled, labels, findings)
     curves = tuple(_curve(line, name) for line, name in zip(lines, final, strict=True))
     return curves, pumps, tuple(findings)
 
