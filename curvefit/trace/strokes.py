@@ -15,6 +15,7 @@ from curvefit.records import BRIDGED, Panel, Stroke, Trace
 from curvefit.trace.given import REACH, with_notes
 from curvefit.trace.strokes_chains import Chain, Piece, joined
 from curvefit.trace.strokes_outline import middle_line
+from curvefit.trace.strokes_pointers import without_pointers
 from curvefit.trace.strokes_smooth import smooth
 
 __all__ = ["Settings", "has_curves", "trace_strokes"]
@@ -96,9 +97,10 @@ def _along(panel: Panel, path: Array, s: Settings) -> Trace | None:
 
 def _curves(panel: Panel, s: Settings) -> list[Chain]:
     pieces = _without_hatching(list(_pieces(panel, s)), s)
-    chains = joined(pieces, _words(panel))
-    chains = [c for c in chains if _is_curve(c, panel, s)]
-    return _without_doubles(chains)
+    words = _words(panel)
+    chains = [c for c in joined(pieces, words) if _is_curve(c, panel, s)]
+    longest = s.leader * float(np.hypot(*panel.warp.size))
+    return _without_doubles(without_pointers(chains, words, longest))
 
 
 def _pieces(panel: Panel, s: Settings) -> Iterator[Piece]:
@@ -138,6 +140,9 @@ def _is_rule(xy: Array, stroke: Stroke, size: tuple[float, float]) -> bool:
     step = np.abs(np.diff(xy, axis=0))
     if (step.min(1) > 0.06).any():
         return False
+    step = np.abs(np.diff(_corner_points(xy), axis=0))
+    if (step.min(1) > 0.15).any():
+        return False  # a steep or flat curve in many small steps
     extent = np.ptp(xy, axis=0)
     if len(xy) > 2 and (extent > 0.5).all():
         return True  # a rectangle, a comb of ticks
@@ -147,6 +152,16 @@ def _is_rule(xy: Array, stroke: Stroke, size: tuple[float, float]) -> bool:
     other = 1 - k
     on_side = min(abs(xy[0, other]), abs(xy[0, other] - size[other])) < 2.0
     return bool(on_side)  # a short one may be a dash where a curve begins; a tick stays alone
+
+
+def _corner_points(xy: Array) -> Array:
+    """The points of a polyline that it cannot do without by more than a tenth of a pixel."""
+    import cv2
+
+    if len(xy) < 3:
+        return xy
+    kept = cv2.approxPolyDP(xy.astype(np.float32).reshape(-1, 1, 2), 0.1, False)
+    return np.asarray(kept[:, 0], float)
 
 
 def _clipped(xy: Array, size: tuple[float, float], edge: float) -> Iterator[Array]:
