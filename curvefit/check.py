@@ -30,13 +30,19 @@ class Tolerances:
     """own : relative disagreement between makers' own curves that is let pass.
 
     sigmas : how many combined standard uncertainties come on top. low_efficiency : where the
-    efficiency is smaller, ρgQH/P says nothing. trim : exponents of head against diameter (or
-    speed) between which a family is believed.
+    efficiency is smaller (and less than half its peak), ρgQH/P says nothing. shut_off : share of
+    its peak that an efficiency may have at zero flow, and how much more a share of the flow range
+    adds to it. peak : no pump's best efficiency is
+    smaller; npsh : no pump's NPSHr [m] is larger (common practice, no source). trim : exponents of
+    head against diameter (or speed) between which a family is believed.
     """
 
     own: float = 0.015
     sigmas: float = 3.0
     low_efficiency: float = 0.2
+    shut_off: tuple[float, float] = (0.1, 6.0)
+    peak: float = 0.08
+    npsh: float = 40.0
     trim: tuple[float, float] = (0.8, 4.5)
     speed: tuple[float, float] = (1.7, 2.3)
     density: float = RHO_WATER
@@ -62,6 +68,7 @@ def check(
     found: list[Finding] = []
     for curve in real:
         found += _range(curve)
+        found += _usual(curve, allowed)
         found += _shape(curve)
     density = {p.name: p.density_si for p in pumps if p.density_si is not None}
     for group in _pumps(real):
@@ -101,6 +108,38 @@ def _range(curve: Curve) -> Iterable[Finding]:
             "The flow falls below zero.",
             "Check the marks of the flow axis.",
         )
+
+
+def _usual(curve: Curve, allowed: Tolerances) -> Iterable[Finding]:
+    """Values that hardly any pump has: a scale or an axis was mistaken for another."""
+    top = float(curve.value_si.max())
+    if curve.quantity in ("efficiency", "overall_efficiency"):
+        start = float(curve.flow_si[0] / curve.flow_si[-1]) if curve.flow_si[-1] > 0 else 1.0
+        limit = (allowed.shut_off[0] + allowed.shut_off[1] * max(start, 0.0)) * top
+        limit += allowed.sigmas * float(_uncertainty(curve)[0])
+        if start < 0.08 and curve.value_si[0] > limit:
+            yield _finding(
+                "warning",
+                "check.efficiency-shut-off",
+                curve,
+                f"The efficiency is {curve.value_si[0]:.1%} near zero flow, where it is zero for "
+                f"any pump ({limit:.1%} allowed).",
+                "Check the marks of its axis, or name the curve's quantity in the notes.",
+            )
+        if top < allowed.peak:
+            yield _implausible(curve, f"{top:.1%}", f"{allowed.peak:.0%} or more")
+    if curve.quantity == "npsh_required" and top > allowed.npsh:
+        yield _implausible(curve, f"{top:.3g} m", f"{allowed.npsh:g} m or less")
+
+
+def _implausible(curve: Curve, top: str, usual: str) -> Finding:
+    return _finding(
+        "warning",
+        "check.implausible",
+        curve,
+        f"The {_word(curve)} reaches {top}, where {usual} is usual.",
+        "Check the unit and the marks of its axis, or name the curve's axis in the notes.",
+    )
 
 
 def _shape(curve: Curve) -> Iterable[Finding]:
@@ -223,7 +262,8 @@ def _ratio(
         return None
     flow = np.linspace(max(low, 0.1 * span), high, 41)
     h, e, p = (np.interp(flow, c.flow_si, c.value_si) for c in (head, efficiency, power))
-    good = (e > allowed.low_efficiency) & (p > 0) & (h > 0)
+    low_efficiency = min(allowed.low_efficiency, 0.5 * float(e.max()))
+    good = (e > low_efficiency) & (p > 0) & (h > 0)
     if good.sum() < 5:
         return None
     flow, h, e, p = flow[good], h[good], e[good], p[good]
@@ -267,7 +307,7 @@ def _family(family: list[tuple[float, Curve]], allowed: Tolerances) -> Iterable[
     of_speed = family[0][1].diameter_si is None
     low, high = allowed.speed if of_speed else allowed.trim
     for (small, a), (large, b) in pairwise(family):
-        if large / small < 1.005:
+        if small <= 0 or large / small < 1.005:
             continue
         exponent = _exponent(a, b, small, large)
         if exponent is None:

@@ -62,6 +62,31 @@ def test_a_wrong_scale_breaks_the_power_identity(quantity, factor):
     assert "check.power-identity" in codes(spoilt)
 
 
+def test_exchanged_scales_of_head_and_efficiency_break_the_power_identity():
+    """A head of 0–50 m read on a scale of 0–100 %, and the efficiency on the head's."""
+    for top in (10.0, 25.0, 60.0):
+        spoilt = spoil(pump(), "head", value_si=lambda v, t=top: v * 100 / t)
+        spoilt = spoil(spoilt, "efficiency", value_si=lambda v, t=top: v * t / 100)
+        assert "check.power-identity" in codes(spoilt)
+
+
+def test_an_efficiency_on_the_scale_of_another_axis_is_implausible():
+    assert "check.implausible" in codes(spoil(pump(), "efficiency", value_si=lambda v: v * 0.05))
+    alone = [c for c in pump() if c.quantity in ("head", "efficiency")]
+    lifted = spoil(alone, "efficiency", value_si=lambda v: 0.3 + 0.5 * v)
+    assert codes(lifted) == {"check.efficiency-shut-off"}
+
+
+def test_an_npsh_on_the_scale_of_a_head_is_implausible():
+    spoilt = spoil(pump(), "npsh_required", value_si=lambda v: v * 20)
+    assert codes(spoilt) == {"check.implausible"}
+
+
+def test_a_diameter_of_nothing_breaks_no_check():
+    nothing = [c for c in pump(0.8, 0.0) + pump(1.0, 0.25) if c.quantity == "head"]
+    assert codes(nothing) == set()
+
+
 def test_the_finding_names_curve_number_and_cause():
     spoilt = spoil(pump(), "shaft_power", value_si=lambda v: v * 1.341)
     (finding,) = check(spoilt, ())
