@@ -251,8 +251,9 @@ def _where(evidence: Evidence, column: Column, t: float) -> Array:
 def _axis(evidence: Evidence, f: Found) -> Axis:
     s = f.scale
     # a line may sag anywhere by what is left of the bow: half of it, as a standard uncertainty
-    bow = evidence.bow[0 if f.column.side in ("bottom", "top") else 1]
-    sagging = ends_covariance(s.slope, 0.5 * bow / _side_px(evidence, f.column.side))
+    way = 0 if f.column.side in ("bottom", "top") else 1
+    px = float(np.hypot(0.5 * evidence.bow[way], evidence.loose[way]))
+    sagging = ends_covariance(s.slope, px / _side_px(evidence, f.column.side))
     return Axis(
         name=f.name,
         side=f.column.side,

@@ -62,15 +62,25 @@ def doubts_of(
 
 
 def bowed(evidence: Evidence, panel: str) -> list[Finding]:
-    """What is said of lines that the warp leaves bowed: the page was curled more than it takes."""
+    """What is said of a box that the warp may not have made square."""
     w, h = evidence.warp.size
     most = max(1.5, 0.002 * min(w, h))
     worst = max(evidence.bow)
-    if worst <= most:
+    if worst > most:
+        message = (
+            f"the sides of the box are bowed by {worst:.1f} px more than could be taken out, "
+            f"{most:.1f} px are usual; the uncertainty of its scales was widened."
+        )
+        remedy = "Scan the page flat, or photograph it from straight above without a fold."
+    elif max(evidence.loose) > most:
+        message = (
+            "the page was seen at a slant, and neither a frame nor ticks tell how much: places "
+            f"far from the axes may be off by {max(evidence.loose):.0f} px, {most:.1f} px are "
+            "usual; the uncertainty of the scales was widened."
+        )
+        remedy = (
+            f'Scan the page flat, or give corners = [[x, y], …] of panel "{panel}" in the notes.'
+        )
+    else:
         return []
-    message = (
-        f"the sides of the box are bowed by {worst:.1f} px more than could be taken out, "
-        f"{most:.1f} px are usual; the uncertainty of its scales was widened."
-    )
-    remedy = "Scan the page flat, or photograph it from straight above without a fold."
     return [Finding("warning", "panel.bow", message, Location(panel=panel), remedy)]

@@ -50,6 +50,7 @@ class Evidence:
         each; None where there are no pixels to look at. read : the same for text of any kind.
     exact : True for a vector page.
     bow : how far straight lines still sag after the warp, along x and along y [px].
+    loose : how far a corner that nothing drawn shows may be off, along x and y [px].
     """
 
     corners: Array
@@ -62,3 +63,4 @@ class Evidence:
     findings: tuple[Finding, ...] = ()
     read: Callable[[Sequence[Array]], list[tuple[str, float]]] | None = None
     bow: tuple[float, float] = (0.0, 0.0)
+    loose: tuple[float, float] = (0.0, 0.0)

@@ -126,8 +126,10 @@ def _evidence(sheet: Sheet, plot: Plot, turn: int, words: tuple[Word, ...]) -> E
     warp = plot.warp
     for _ in range(turn):
         warp = quarter(warp)
-    bow = plot.bow if turn % 2 == 0 else plot.bow[::-1]
-    return Evidence(corners, warp, turn, rows, words, look, read=read, bow=bow)
+    bow, loose = plot.bow, plot.loose
+    if turn % 2:
+        bow, loose = bow[::-1], loose[::-1]
+    return Evidence(corners, warp, turn, rows, words, look, read=read, bow=bow, loose=loose)
 
 
 def _turned(row: TickRow, turn: int) -> TickRow:

@@ -13,6 +13,7 @@ from curvefit.calibrate.boxes import Box, find_boxes
 from curvefit.calibrate.divide import divided
 from curvefit.calibrate.evidence import TickRow
 from curvefit.calibrate.lines import Line
+from curvefit.calibrate.open_box import closed, skew_px, tilted
 from curvefit.calibrate.sheet import Settings, Sheet
 from curvefit.calibrate.sides import follow, side_lines, warp_of
 from curvefit.calibrate.ticks import FARTHEST, Side, flatten, tick_bars, tick_rows
@@ -30,7 +31,8 @@ class Plot:
     """A plot box as it lies on the page. corners : (4, 2) page px, clockwise from the top left.
 
     bars : outlines (4, 2) of its outside ticks, straightened panel px.
-    bow : how far straight lines still sag there, along x and along y [px].
+    bow : how far straight lines still sag there, along x and along y [px]. loose : how far a
+    corner that nothing drawn shows may be off, along x and y [px].
     """
 
     corners: Array
@@ -39,6 +41,7 @@ class Plot:
     ticks: tuple[TickRow, ...]
     bars: list[Array]
     bow: tuple[float, float] = (0.0, 0.0)
+    loose: tuple[float, float] = (0.0, 0.0)
 
 
 def find_plots(sheet: Sheet, notes: Sequence[PanelNotes], s: Settings) -> list[Plot]:
@@ -73,8 +76,8 @@ def _corners(sheet: Sheet, box: Box, s: Settings) -> Array:
     """The corners of a box (4, 2), page px, from the sides that are drawn."""
     reach = 4.0 * max(1.0, max(sheet.flat.shape) / s.work) + 1
     rough = project(np.linalg.inv(sheet.matrix), box.corners)
-    ruled = min(len(box.across), len(box.upright)) >= 3
-    return side_lines(sheet.ink, rough, box.seen, reach, ruled)[0]
+    met, lines = side_lines(sheet.ink, rough, box.seen, reach)
+    return closed(sheet.ink, met, lines, box.seen, _known(sheet))
 
 
 def split_plots(sheet: Sheet, plots: list[Plot], words: Sequence[Word], s: Settings) -> list[Plot]:
@@ -90,6 +93,34 @@ def split_plots(sheet: Sheet, plots: list[Plot], words: Sequence[Word], s: Setti
         else:
             out += [_plot(sheet, _corners(sheet, b, s), b, others, s) for b in boxes]
     return _in_reading_order(out)
+
+
+def _known(sheet: Sheet) -> tuple[bool, bool]:
+    """Whether lines far apart tell how lines across, and upright, run anywhere on the page."""
+    long_side = max(sheet.flat.shape)
+    told = []
+    for lines in (sheet.across, sheet.upright):
+        at = np.array([line.at for line in lines if line.length > 0.2 * long_side])
+        told.append(len(at) >= 2 and float(np.ptp(at)) > 0.25 * long_side)
+    return told[0], told[1]
+
+
+def _in_perspective(sheet: Sheet, corners: Array, box: Box) -> tuple[Array, tuple[float, float]]:
+    """Corners of a box on two axes set by its ticks, and how far one may be off, x and y [px]."""
+    across, upright = _known(sheet)
+    if sum(box.seen) != 2 or (across and upright) or box.seen[0] == box.seen[2]:
+        return corners, (0.0, 0.0)
+    warp = warp_of(corners)
+    rows = tick_rows(flatten(sheet.ink, warp, 40), box.seen, {})
+    ticks: dict[str, list[Array]] = {}
+    for row in rows:
+        if row.kind in ("outside", "inside"):
+            ticks.setdefault(row.side, []).append(row.at)
+    set_by_ticks = tilted(corners, box.seen, ticks)
+    if set_by_ticks is not None:
+        return set_by_ticks, (0.0, 0.0)
+    x, y = skew_px(corners)
+    return corners, (0.0 if upright else x, 0.0 if across else y)
 
 
 def _straightest(
@@ -160,11 +191,15 @@ def _outline(size: tuple[float, float]) -> Array:
 def _plot(
     sheet: Sheet, corners: Array, box: Box, others: list[Box], s: Settings, given: bool = False
 ) -> Plot:
-    warp, bow = (warp_of(corners), (0.0, 0.0)) if given else _straightest(sheet, corners, box, s)
+    if given:
+        warp, bow, loose = warp_of(corners), (0.0, 0.0), (0.0, 0.0)
+    else:
+        corners, loose = _in_perspective(sheet, corners, box)
+        warp, bow = _straightest(sheet, corners, box, s)
     corners = corners if given else warp.to_page(_outline(warp.size))
     flat = flatten(sheet.ink, warp, int(min(FARTHEST * max(warp.size) + 16, 700)))
     rows = tick_rows(flat, box.seen, _spines(sheet, box, others))
-    return Plot(corners, box, warp, rows, tick_bars(flat, rows), bow)
+    return Plot(corners, box, warp, rows, tick_bars(flat, rows), bow, loose)
 
 
 def _given(sheet: Sheet, note: PanelNotes, others: list[Box], s: Settings) -> Plot:

@@ -121,83 +121,22 @@ def warp_of(corners: Array) -> Warp:
 
 
 def side_lines(
-    ink: NDArray[np.uint8],
-    corners: Array,
-    seen: tuple[bool, bool, bool, bool],
-    reach: float,
-    ruled: bool = False,
+    ink: NDArray[np.uint8], corners: Array, seen: tuple[bool, bool, bool, bool], reach: float
 ) -> tuple[Array, list[Array]]:
-    """Corners moved to where the drawn sides meet, and the centres found along each side.
+    """Corners moved to where the drawn sides meet, and the four sides a·x + b·y = c.
 
-    Parameters
-    ----------
-    corners : array of shape (4, 2), page px, clockwise from the top left.
-    seen : top, right, bottom, left. ruled : lines inside tell the course of sides not drawn.
-
-    Notes
-    -----
-    A side that is not drawn runs between the ends of the two drawn beside it. With one of them
-    alone the box is a parallelogram, unless it is ruled.
+    corners : (4, 2) page px, clockwise from the top left. seen : top, right, bottom, left; the
+    course of a side that is not drawn stays as it was.
     """
-    found, lines = [], []
+    lines = []
     for i in range(4):
         a, b = corners[i], corners[(i + 1) % 4]
         chord = straight(np.vstack([a, b]))
-        xy = np.zeros((0, 2))
         if seen[i]:
             inset = 0.01 * (b - a)
             xy = follow(ink, a + inset, b - inset, reach)[0]
             if len(xy) >= 12:
                 chord = straight(xy)
-        found.append(xy)
         lines.append(chord)
     moved = np.array([meeting(lines[i - 1], lines[i]) for i in range(4)])
-    return _to_drawn_ends(ink, moved, lines, seen, ruled), found
-
-
-def _to_drawn_ends(
-    ink: NDArray[np.uint8],
-    corners: Array,
-    lines: list[Array],
-    seen: tuple[bool, bool, bool, bool],
-    ruled: bool,
-) -> Array:
-    """Corners with those of sides that are not drawn at the ends of the sides beside them."""
-    out = corners.copy()
-    for i in range(4):
-        if seen[i] == seen[i - 1]:
-            continue
-        # one of the two sides that meet in corner i is drawn: the corner is its end
-        k, other = (i, (i + 1) % 4) if seen[i] else (i - 1, (i - 1) % 4)
-        end = _drawn_end(ink, corners[other], corners[i], lines[k])
-        if end is not None:
-            out[i] = end
-    for i in range(4):
-        if not seen[i] and not seen[i - 1] and not ruled:
-            out[i] = out[i - 1] + out[(i + 1) % 4] - out[i - 2]
-    return out
-
-
-def _drawn_end(ink: NDArray[np.uint8], start: Array, end: Array, line: Array) -> Array | None:
-    """Where the ink of a line ends near the point `end`, (2,); None where it is not clear."""
-    import cv2
-
-    a, b = (p - (line[:2] @ p - line[2]) * line[:2] for p in (start, end))
-    span = float(np.hypot(*(b - a)))
-    t = np.arange(0.85 * span, 1.12 * span, 0.5)
-    across = np.arange(-6.0, 6.1, 0.5)
-    xy = a + t[:, None] * (b - a) / span
-    grid = xy[:, None] + across[:, None] * line[:2]
-    strip = cv2.remap(
-        ink, grid[..., 0].astype(np.float32), grid[..., 1].astype(np.float32), cv2.INTER_LINEAR
-    )
-    profile = np.median(strip[t < 0.95 * span], axis=0)
-    ridge = strip[:, np.abs(across) <= 1.5].max(1)
-    level = float(np.median(ridge[t < 0.95 * span]))
-    white = np.convolve(ridge < 0.5 * level, np.ones(12), "valid") > 11.5  # 6 px without ink
-    gaps = np.flatnonzero(white)
-    if level < 20 or not len(gaps) or abs(t[gaps[0]] - span) > 0.08 * span:
-        return None
-    # the middle of a tick on the very end lies half a thickness back, a blunt end does not
-    back = 0.125 * float((profile > 0.5 * level).sum())
-    return np.asarray(xy[max(gaps[0] - 1, 0)] - back * (b - a) / span)
+    return moved, lines
