@@ -32,8 +32,8 @@ class Tolerances:
     sigmas : how many combined standard uncertainties come on top. low_efficiency : where the
     efficiency is smaller (and less than half its peak), ρgQH/P says nothing. shut_off : share of
     its peak that an efficiency may have at zero flow, and how much more a share of the flow range
-    adds to it. peak : no pump's best efficiency is
-    smaller; npsh : no pump's NPSHr [m] is larger (common practice, no source). trim : exponents of
+    adds to it. peak : hardly a pump's best efficiency is smaller (an overall efficiency: half of
+    it); npsh : no pump's NPSHr [m] is larger (common practice, no source). trim : exponents of
     head against diameter (or speed) between which a family is believed.
     """
 
@@ -41,7 +41,7 @@ class Tolerances:
     sigmas: float = 3.0
     low_efficiency: float = 0.2
     shut_off: tuple[float, float] = (0.1, 6.0)
-    peak: float = 0.08
+    peak: float = 0.15
     npsh: float = 40.0
     trim: tuple[float, float] = (0.8, 4.5)
     speed: tuple[float, float] = (1.7, 2.3)
@@ -126,8 +126,9 @@ def _usual(curve: Curve, allowed: Tolerances) -> Iterable[Finding]:
                 f"any pump ({limit:.1%} allowed).",
                 "Check the marks of its axis, or name the curve's quantity in the notes.",
             )
-        if top < allowed.peak:
-            yield _implausible(curve, f"{top:.1%}", f"{allowed.peak:.0%} or more")
+        least = allowed.peak * (1.0 if curve.quantity == "efficiency" else 0.5)
+        if top < least:
+            yield _implausible(curve, f"{top:.1%}", f"{least:.1%} or more")
     if curve.quantity == "npsh_required" and top > allowed.npsh:
         yield _implausible(curve, f"{top:.3g} m", f"{allowed.npsh:g} m or less")
 
