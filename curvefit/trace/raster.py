@@ -15,10 +15,11 @@ from curvefit.trace.centre import Line, centred, width_along
 from curvefit.trace.ends import settled
 from curvefit.trace.grid import Inked, without_lines
 from curvefit.trace.ink import MARGIN, Flat, Layer, hues, straightened, stroke_width
+from curvefit.trace.joins import joined
 from curvefit.trace.legend import without_legends
 from curvefit.trace.linked import Loose, linked_lines, without
-from curvefit.trace.sift import is_frame, own_ink, without_doubles
-from curvefit.trace.text import lettering, markers, spread
+from curvefit.trace.sift import is_frame, own_ink, pointers, without_doubles
+from curvefit.trace.text import label_boxes, lettering, markers, spread
 from curvefit.trace.track import Track, Tracking, across, best_track, peel
 
 __all__ = ["Found", "Settings", "line_along", "lines_of"]
@@ -69,10 +70,14 @@ def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
         ]
         lines = [lines[i] for i in without_doubles(lines, least)]
         lines, loose = _sorted_out(panel, layer, lines, width, tolerances)
+        lines, loose = joined(lines, loose, layer, 20.0 + 4.0 * width)
         alone, members = untangled(lines, layer, tolerances.contact * panel.warp.size[0])
         found += [Found(line, colour) for line in alone]
         found += [Found(m.line, colour, bundled=m) for m in members]
         found += [Found(x.line, colour, True, x.closed) for x in loose if not frame(x.line)]
+    led = 0.15 * float(np.hypot(*panel.warp.size))
+    leaders = pointers([f.line for f in found], label_boxes(panel), led)
+    found = [f for i, f in enumerate(found) if i not in leaders]
     family = [f.line for f in found if not f.loose]
     family = [x for x in family if np.ptp(x.xy[:, 0]) > tolerances.long * panel.warp.size[0]]
     reach = tolerances.label * panel.warp.size[0]

@@ -39,6 +39,8 @@ def _trace(panel: Panel, found: Found, name: str) -> Trace:
     line = found.line
     sigma, flags = _doubt(found)
     flat = line.xy - MARGIN
+    inside = _inside(flat, panel.warp.size)
+    flat, sigma, flags = flat[inside], sigma[inside], flags[inside]
     if flat[0, 0] > flat[-1, 0]:
         flat, sigma, flags = flat[::-1], sigma[::-1], flags[::-1]
     path = found.closed or (found.loose and not _single_valued(flat))
@@ -59,6 +61,12 @@ def _trace(panel: Panel, found: Found, name: str) -> Trace:
         closed=found.closed,
         findings=_said(panel, found, name),
     )
+
+
+def _inside(flat: Array, size: tuple[float, float]) -> NDArray[np.intp]:
+    """Indices of the points of a line in the box, to half a pixel: a stroke's end is round."""
+    within = ((flat > -0.5) & (flat < np.array(size) + 0.5)).all(1)
+    return np.flatnonzero(within) if within.sum() > 5 else np.arange(len(flat))
 
 
 def _single_valued(flat: Array) -> bool:

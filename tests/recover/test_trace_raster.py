@@ -243,3 +243,29 @@ def test_a_dashed_line_that_touches_a_solid_one_for_a_while_stays_one_line():
         assert rms < 1.0
         assert cover > 0.95
         assert one.dash == dash
+
+
+@pytest.mark.parametrize("dash", [None, (16, 8)])
+def test_a_steep_start_belongs_to_its_curve(dash):
+    sheet = Sheet()
+    t = np.linspace(0, 1, 900) ** 2
+    x = 20 + 660 * t
+    y = 460 - 620 * (1.35 * np.sqrt(t) - 0.75 * t)
+    sheet.curve(x, y, width=4, dash=dash)
+    traces = trace(sheet.panel(2.0))
+    assert len(traces) == 1
+    one = traces[0]
+    assert not one.path
+    assert one.flat[0, 0] < 27
+    away = np.hypot(one.flat[:, :1] - x, one.flat[:, 1:] - y).min(1)
+    assert np.sqrt((away**2).mean()) < 0.5
+
+
+def test_no_point_lies_outside_the_box():
+    sheet = Sheet()
+    x = np.linspace(0, WIDTH, 300)
+    sheet.curve(x, 100 + 250 * (x / WIDTH) ** 2, width=5)
+    (one,) = trace(sheet.panel())
+    assert one.flat[:, 0].min() > -0.6
+    assert one.flat[:, 0].max() < WIDTH + 0.6
+    assert np.ptp(one.flat[:, 0]) > WIDTH - 4
