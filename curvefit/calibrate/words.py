@@ -65,7 +65,8 @@ def find_text(
     dark = (flat > _threshold(flat)).astype(np.uint8)
     long_side = max(flat.shape)
     sides = (frame > 0) | (ticks > 0)
-    gone = sides | _long_runs(dark, max(30, int(0.024 * long_side)), zone_of, rules)
+    runs = _long_runs(dark, max(30, int(0.024 * long_side)), zone_of, rules)
+    gone = sides | runs
     inside = (zone_of > 0).astype(np.uint8)
     left = dark * ~gone
     size = character_size(left * (1 - inside), 7, _TALLEST * long_side)
@@ -83,6 +84,10 @@ def find_text(
     zones = zone_of[middle[:, 1], middle[:, 0]].astype(np.int64)
     crumb = (letters.bar | letters.speck) & np.isin(letters.index, [*at_tick, *at_side])
     crumb |= (zones > 0) & np.isin(letters.index, at_side)
+    # beside a scale line of its own a dash that touches it is its tick, no minus
+    at_run = np.unique(letters.label[cv2.dilate(runs.astype(np.uint8), np.ones((9, 9))) > 0])
+    short = (letters.boxes[:, 2:] - letters.boxes[:, :2]).max(1) < 0.6 * (size or 10.0)
+    crumb |= (zones == 0) & (letters.bar | short) & np.isin(letters.index, at_run)
     letters, zones = letters.of(~crumb), zones[~crumb]
     keep = no_dashes(letters, zones)
     letters, zones = letters.of(keep), zones[keep]
@@ -150,7 +155,12 @@ def read_lines(
     """
     first = _read(lettering, lines, turn)
     # numbers side by side are several, words are one line
-    crowded = [r for r in first if _SEVERAL.match(r.text) and len(pieces_of(r.line)) > 1]
+    crowded = [
+        r
+        for r in first
+        if (_SEVERAL.match(r.text) or (r.line.zone and re.search(r"%.*\d", r.text)))
+        and len(pieces_of(r.line)) > 1
+    ]
     parts = [p for r in crowded for p in pieces_of(r.line)]
     held = [r for r in first if r not in crowded] + _read(lettering, parts, turn)
     held = _widened(lettering, lines, held, turn)
@@ -370,6 +380,7 @@ def _corners(box: tuple[float, float, float, float], turn: int) -> Array:
 
 
 _TAIL = re.compile(r"^(\d[\d.,]*\d|\d|\d[\d.,]*\s?%)\s*[-–—_.]$")
+_RING = re.compile(r"^(\d[\d.,]*\s?%)[6o°]$")  # the second ring of a % read twice
 _NUMBER = re.compile(r"^[-−–—]?\s*\d")
 
 
@@ -378,7 +389,7 @@ def _tidy(text: str, line: TextLine) -> str:
 
     Behind a number it is the end of a tick.
     """
-    text = _TAIL.sub(r"\1", text)
+    text = _RING.sub(r"\1", _TAIL.sub(r"\1", text))
     if not _NUMBER.match(text) or text[0].isdigit():
         return text
     first = line.letters[0] if not line.vertical else line.letters[-1]
