@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 from curvefit.records import Panel
 from curvefit.trace.ink import MARGIN
 
-__all__ = ["lettering", "markers", "spread"]
+__all__ = ["label_boxes", "lettering", "markers", "spread"]
 
 Image = NDArray[np.float32]
 
@@ -41,6 +41,16 @@ def lettering(panel: Panel, ink: Image, width: float) -> NDArray[np.bool_]:
     return np.asarray(letters[labels])
 
 
+def label_boxes(panel: Panel) -> NDArray[np.float64]:
+    """(n, 4) left, top, right, bottom of the words that may name a curve, percentages left out."""
+    found = []
+    for word in panel.words:
+        if word.score >= 0.4 and any(c.isalnum() for c in word.text) and "%" not in word.text:
+            box = panel.warp.to_panel(word.box) + MARGIN
+            found.append([*box.min(0), *box.max(0)])
+    return np.array(found).reshape(-1, 4)
+
+
 def _compact(shape: NDArray[np.bool_], area: int, width: float) -> bool:
     """Whether a shape is thicker than a stroke and no filled rectangle."""
     import cv2
@@ -50,6 +60,9 @@ def _compact(shape: NDArray[np.bool_], area: int, width: float) -> bool:
     short, long = sorted((size[0] + 1.0, size[1] + 1.0))
     fill = area / (short * long)
     dash = long > 2.2 * short and fill > 0.5
+    if long > 1.6 * short and fill > 0.55:  # a ragged bit of line is no thicker than a stroke
+        inside = cv2.distanceTransform(np.pad(shape, 1).astype(np.uint8), cv2.DIST_L2, 5)
+        dash |= bool(2.0 * inside.max() - 1.0 < 1.5 * width + 1.0)
     return bool(short > 1.9 * width + 1.0 and fill < 0.78 and not dash)
 
 
