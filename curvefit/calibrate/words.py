@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -180,7 +180,8 @@ class _Read:
 _SEVERAL = re.compile(r"^[\d.,%\s−–—_-]{2,}$")
 
 
-_MOST_WIDENED = 40
+_MOST_WIDENED, _MOST_PLAIN = 40, 12
+_TWO_WAYS = 0.6  # score of a label that is read in two ways
 _MARKS = "-–—_./\\|'`,:;~= "
 
 
@@ -196,18 +197,18 @@ def _widened(
     size = lettering.size
     known = {id(r.line): r for r in read}
 
-    def known_well(line: TextLine) -> bool:
-        return id(line) in known and known[id(line)].text.isdigit()
-
     torn = [
         line
-        for line in sorted(lines, key=known_well)
+        for line in lines
         if line.zone
         and line.vertical == bool(turn % 2)
         and 0.4 * size < line.height < 1.8 * size
         and line.length < 4.5 * size
-        and (id(line) not in known or not _WHOLE.match(known[id(line)].text))
-    ][:_MOST_WIDENED]
+        and (id(line) not in known or not _sound(known[id(line)]))
+    ]
+    # a plain number may have lost its Ø; a table is full of them
+    plain = [line for line in torn if id(line) in known and known[id(line)].text.isdigit()]
+    torn = [line for line in torn if line not in plain][:_MOST_WIDENED] + plain[:_MOST_PLAIN]
     wider = [_wider(line, size, turn) for line in torn]
     crops = [crop_of(lettering.plain, line, turn) for line in wider]
     out = dict(known)
@@ -216,9 +217,17 @@ def _widened(
         text = text.strip(_MARKS)
         if score < 0.7 or not _WHOLE.match(text):
             continue
-        if old is None or _completes(text, old.text):
+        if old is not None and _WHOLE.match(old.text):
+            if text != old.text:  # two readings: neither is sure
+                surer = old if old.score > score else _Read(line, turn, text, score)
+                out[id(line)] = replace(surer, score=min(surer.score, _TWO_WAYS))
+        elif old is None or _completes(text, old.text):
             out[id(line)] = _Read(wide, turn, text, score)
     return list(out.values())
+
+
+def _sound(read: _Read) -> bool:
+    return bool(_WHOLE.match(read.text)) and read.score > 0.95
 
 
 def _wider(line: TextLine, size: float, turn: int) -> TextLine:

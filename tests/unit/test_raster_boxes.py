@@ -328,3 +328,18 @@ def test_a_unit_a_space_behind_its_number_and_inch_marks_stay_with_it():
     axes.text(80, 30, '9 1/4"', family="serif")
     texts = [w.text for w in boxes(figure_pixels(figure))[0].words]
     assert {"1450 rpm", "210 mm", '9 1/4"'} <= set(texts)
+
+
+def test_ticks_of_a_second_right_scale_are_no_minus_signs():
+    from matplotlib.figure import Figure
+
+    figure = Figure(figsize=(7, 5), dpi=150)
+    axes = figure.add_axes((0.12, 0.14, 0.6, 0.76))
+    axes.set(xlim=(0, 120), ylim=(0, 50))
+    second, third = axes.twinx(), axes.twinx()
+    third.spines["right"].set_position(("outward", 60))
+    second.set(ylim=(0, 100))
+    third.set(ylim=(0, 125), yticks=[0, 25, 50, 75, 100, 125])
+    texts = [w.text for w in boxes(figure_pixels(figure))[0].words]
+    assert {"25", "75", "125"} <= set(texts)
+    assert not [t for t in texts if t[0] in "-−"]
