@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from curvefit.trace.centre import Line
 from curvefit.trace.column import Run, columns_of, run_around, slope_of
+from curvefit.trace.dashes import dash_of
 from curvefit.trace.ink import Layer
 from curvefit.trace.pairing import Arm, Zone, bent, paired, with_far_side
 
@@ -193,9 +194,11 @@ def _strands(lines: list[Line], layer: Layer, width: float) -> tuple[list[_Stran
 
 
 def _blank(line: Line, x: Array, width: float) -> Bool:
-    """Columns of a line without ink, the rounded ends of its dashes with them."""
+    """Columns of a dashed line without ink, the rounded ends of its dashes with them."""
     from scipy.ndimage import binary_dilation
 
+    if dash_of(line) == "solid":
+        return np.zeros(len(x), bool)
     order = np.argsort(line.xy[:, 0], kind="stable")
     ink = np.interp(x, line.xy[order, 0], line.ink[order])
     return np.asarray(binary_dilation(ink < 0.3, iterations=round(width)), bool)
