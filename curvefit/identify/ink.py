@@ -93,7 +93,11 @@ def _sample_in(strip: Array, height: float) -> Sample | None:
     paper = np.percentile(strip.reshape(-1, 3), 80, axis=0)
     drop = np.clip(paper - strip, 0, None).max(2)
     dark = drop > 0.25
-    dark[:, dark.mean(0) > 0.6] = False  # the frame of the legend
+    frame = np.flatnonzero(dark.mean(0) > 0.6)
+    dark[:, frame] = False
+    beyond = frame[frame > 1.5 * height]
+    if len(beyond):  # what stands behind the frame of the legend is no part of it
+        dark[:, int(beyond[0]) :] = False
     rows = dark.mean(1)
     line = int(np.argmax(rows))
     band = dark[max(line - 1, 0) : line + 2].any(0)
@@ -120,4 +124,5 @@ def _dash(band: NDArray[np.bool_], stroke: float) -> str:
         return "solid"
     if on.max() < 2.2 * stroke:
         return "dotted"
-    return "dash-dotted" if on.min() < 0.45 * on.max() and len(on) > 3 else "dashed"
+    inner = on[1:-1]  # the first and the last may be cut off
+    return "dash-dotted" if len(inner) and inner.min() < 0.45 * on.max() else "dashed"

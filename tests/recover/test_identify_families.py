@@ -228,6 +228,30 @@ def test_a_legend_whose_looks_do_not_tell_all_lines_apart_goes_by_size():
     assert diameters(curves) == [210, 200, 190]
 
 
+def test_a_legend_in_a_frame_beside_an_axis_names_lines_by_their_dashes():
+    """Ticks and the axis stand left of the frame, in the row of a sample and stronger than it."""
+    scene = Scene()
+    box = scene.box(HEAD)
+    patterns = {"solid": [60], "dashed": [20, 9, 20], "dash-dotted": [25, 7, 4, 7, 13]}
+    for ratio, dash in zip(RATIOS, patterns, strict=False):
+        family(box, [""], [ratio], dash=dash)
+    ink = scene.pixels
+    ink[440:560, 122:126] = 0
+    ink[440:560, 160:162] = 0
+    for k, dash in enumerate(["dash-dotted", "solid", "dashed"]):
+        row = 460 + 36 * k
+        ink[row - 4 : row + 1, 118:126] = 0
+        ink[row - 3 : row + 1, 100:160] = 0
+        x = 174
+        for i, length in enumerate(patterns[dash]):
+            ink[row - 2 : row + 2, x : x + length] = ink[row, x] if i % 2 else 0
+            x += length
+        box.word(["Ø190", "Ø210", "Ø200"][k], 146, row - 100)
+    curves, _, findings = scene.read()
+    assert diameters(curves) == [210, 200, 190]
+    assert not warnings(findings)
+
+
 @pytest.mark.parametrize("corner", [True, False])
 def test_labels_at_the_end_of_leaders(corner):
     """Each label stands nearer to the line below than to its own; thin lines lead to its own."""
