@@ -19,7 +19,7 @@ from curvefit.trace.joins import joined
 from curvefit.trace.legend import without_legends
 from curvefit.trace.linked import Loose, linked_lines, without
 from curvefit.trace.sift import is_frame, own_ink, pointers, without_doubles
-from curvefit.trace.text import label_boxes, lettering, markers, spread
+from curvefit.trace.text import beside_markers, label_boxes, lettering, markers, spread
 from curvefit.trace.track import Track, Tracking, across, best_track, peel
 
 __all__ = ["Found", "Settings", "line_along", "lines_of"]
@@ -106,6 +106,7 @@ def _prepared(panel: Panel) -> tuple[Flat, Inked, float, Mask, Mask]:
     width = stroke_width(inked.ink, 0.02 * panel.warp.size[0], inked.known < 0.3)
     blots = markers(inked.ink, width)
     letters = lettering(panel, np.where(blots | (inked.known < 0.6), 0, inked.ink), width)
+    letters &= ~beside_markers(letters, blots, width)
     return flat, inked, width, letters, blots
 
 

@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 from curvefit.records import Panel
 from curvefit.trace.ink import MARGIN
 
-__all__ = ["label_boxes", "lettering", "markers", "spread"]
+__all__ = ["beside_markers", "label_boxes", "lettering", "markers", "spread"]
 
 Image = NDArray[np.float32]
 
@@ -126,6 +126,22 @@ def markers(ink: Image, width: float) -> NDArray[np.bool_]:
         return np.zeros(ink.shape, bool)
     grown = cv2.dilate(round_ones[labels].astype(np.uint8), np.ones((5, 5)))
     return np.asarray(grown > 0)
+
+
+def beside_markers(
+    letters: NDArray[np.bool_], blots: NDArray[np.bool_], width: float
+) -> NDArray[np.bool_]:
+    """(rows, cols) mask of the bits of line next to a marker: both together are read as "10"."""
+    import cv2
+
+    reach = 2 * round(width) + 1
+    near = cv2.dilate(blots.astype(np.uint8), np.ones((reach, reach)))
+    count, labels, stats, _ = cv2.connectedComponentsWithStats(letters.astype(np.uint8))
+    w, h = stats[:, cv2.CC_STAT_WIDTH], stats[:, cv2.CC_STAT_HEIGHT]
+    touching = np.bincount(labels.ravel(), near.ravel(), minlength=count) > 0
+    bits = touching & (w > 1.5 * h) & (h < 1.6 * width + 3.0)
+    bits[0] = False
+    return np.asarray(bits[labels])
 
 
 def _holes_filled(mask: NDArray[np.uint8], width: float) -> NDArray[np.uint8]:

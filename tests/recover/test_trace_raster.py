@@ -269,3 +269,17 @@ def test_no_point_lies_outside_the_box():
     assert one.flat[:, 0].min() > -0.6
     assert one.flat[:, 0].max() < WIDTH + 0.6
     assert np.ptp(one.flat[:, 0]) > WIDTH - 4
+
+
+def test_a_marker_and_the_bit_of_line_beside_it_are_no_word():
+    sheet = Sheet()
+    y = head()
+    sheet.curve(X, y, width=4)
+    at = (int(X[11]) + PAD, int(y[11]) + PAD)
+    cv2.circle(sheet.image, at, 10, (255, 255, 255), -1)
+    cv2.circle(sheet.image, at, 10, (0, 0, 0), 3, cv2.LINE_AA)
+    left, right, top = 36 + PAD, X[11] + 12 + PAD, y[11] - 12 + PAD
+    box = np.array([[left, top], [right, top], [right, top + 24], [left, top + 24]])
+    traces = trace(sheet.panel(words=(Word("10", box),)))
+    assert len(traces) == 1
+    assert traces[0].flat[0, 0] == pytest.approx(40, abs=4)
