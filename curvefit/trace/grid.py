@@ -81,8 +81,10 @@ def _strip(
 def _find_lines(dark: Image, margin: int) -> list[Ruled]:
     """Horizontal lines: their centre row at every column, and thickness [px]."""
     rows, cols = dark.shape
+    sag = _sag(dark, margin)
+    level = _levelled(dark, sag, margin)
     edges = np.linspace(margin, cols - margin, 13).astype(int)
-    mean = np.stack([dark[:, a:b].mean(1) for a, b in pairwise(edges)], 1)
+    mean = np.stack([level[:, a:b].mean(1) for a, b in pairwise(edges)], 1)
     typical = np.sort(mean, axis=1)[:, 3:6].mean(1)  # present in the lower-middle blocks
     base = _local_base(typical, 12)
     excess = np.clip(typical - base, 0, None)
@@ -99,8 +101,50 @@ def _find_lines(dark: Image, margin: int) -> list[Ruled]:
         if high - low > 0.02 * rows + 8:
             continue
         centre = _follow(mean, edges, float(row), max(thickness, 1.0), cols)
+        centre = centre + sag[int(row)] * _arch(cols, margin)
         found.append((centre, max(thickness, 1.0)))
     return found
+
+
+def _arch(n: int, margin: int) -> NDArray[np.float64]:
+    """A parabola over n places: 1 in the middle, 0 at `margin` from both ends."""
+    u = (2.0 * np.arange(n) - (n - 1)) / (n - 1 - 2 * margin)
+    return np.asarray(1.0 - u * u)
+
+
+def _sag(dark: Image, margin: int) -> NDArray[np.float64]:
+    """How far horizontal lines hang in their middle at every row [px], from both frame sides.
+
+    Notes
+    -----
+    A side hangs if 1.6 times as much ink lies along an arch through its corners as
+    along the straight line. Lines between the sides hang by something between.
+    """
+    rows, cols = dark.shape
+    trials = np.arange(-(margin - 1.0), margin + 3.0)
+    across = np.arange(margin, cols - margin)
+    arch = _arch(cols, margin)[across]
+    sags = []
+    for side in (margin, rows - 1 - margin):
+        at = np.round(side + trials[:, None] * arch).astype(int)
+        seen = [dark[np.clip(at + k, 0, rows - 1), across] for k in (-1, 0, 1)]
+        ink = np.max(seen, axis=0).mean(1)
+        straight = ink[np.abs(trials) < 0.5].max()
+        best = trials[ink > 0.97 * ink.max()].mean()  # a broad line fits several
+        sags.append(float(best) if ink.max() > max(1.6 * straight, 0.35) else 0.0)
+    return np.interp(np.arange(rows), [margin, rows - 1 - margin], sags)
+
+
+def _levelled(dark: Image, sag: NDArray[np.float64], margin: int) -> Image:
+    """The image with its horizontal lines made straight."""
+    import cv2
+
+    if not sag.any():
+        return dark
+    rows, cols = dark.shape
+    x, y = np.meshgrid(np.arange(cols, dtype=np.float32), np.arange(rows, dtype=np.float32))
+    y = y + (sag[:, None] * _arch(cols, margin)).astype(np.float32)
+    return np.asarray(cv2.remap(dark, x, y, cv2.INTER_LINEAR, borderMode=cv2.BORDER_REPLICATE))
 
 
 def _local_base(profile: NDArray[np.float32], reach: int) -> NDArray[np.float32]:
