@@ -206,8 +206,14 @@ def _widened(
         and line.length < 4.5 * size
         and (id(line) not in known or not _sound(known[id(line)]))
     ]
-    # a plain number may have lost its Ø; a table is full of them
+
+    def untouched(line: TextLine) -> bool:
+        a, b = (crop_of(image, line, turn) for image in (lettering.image, lettering.plain))
+        return np.array_equal(a, b)
+
+    # a plain number may have lost its Ø or %; a table is full of them, no curve near
     plain = [line for line in torn if id(line) in known and known[id(line)].text.isdigit()]
+    plain.sort(key=untouched)
     torn = [line for line in torn if line not in plain][:_MOST_WIDENED] + plain[:_MOST_PLAIN]
     wider = [_wider(line, size, turn) for line in torn]
     crops = [crop_of(lettering.plain, line, turn) for line in wider]
