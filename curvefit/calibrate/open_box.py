@@ -135,9 +135,14 @@ def _one_unevenness(t: Array) -> float | None:
         return None
     k = np.arange(len(t))
     # t = (a + b k) / (1 + c k), linear in a, b, c
-    a, b, c = np.linalg.lstsq(np.c_[np.ones(len(t)), k, -k * t], t, rcond=None)[0]
-    if np.abs((a + b * k) / (1 + c * k) - t).max() > 0.0015:
+    design = np.c_[np.ones(len(t)), k, -k * t]
+    a, b, c = np.linalg.lstsq(design, t, rcond=None)[0]
+    off = (a + b * k) / (1 + c * k) - t
+    if np.abs(off).max() > 0.0015:
         return None
+    scatter = max(float(np.sqrt((off**2).sum() / max(len(t) - 3, 1))), 0.0002)
+    if abs(c) < 3 * scatter * float(np.sqrt(np.linalg.inv(design.T @ design)[2, 2])):
+        return 1.0  # even within their scatter: no perspective is seen
     start, middle, end = ((x - a) / (b - c * x) for x in (0.0, 0.5, 1.0))
     half = (middle - start) / (end - start)
     return float((1 - half) / half)

@@ -51,3 +51,14 @@ def test_square_axes_leave_no_doubt_and_skew_ones_do():
     assert skew_px(BOX) == (0.0, 0.0)
     x, y = skew_px(project(SLANT, BOX))
     assert min(x, y) > 5
+
+
+def test_scattered_ticks_of_a_flat_page_make_no_perspective():
+    rng = np.random.default_rng(4)
+    seen = (False, False, True, True)
+    for _ in range(20):
+        rows = {s: [np.linspace(0, 1, 7) + rng.normal(0, 3e-4, 7)] for s in ("bottom", "left")}
+        found = tilted(BOX, seen, rows)
+        assert found is not None
+        assert np.abs(found - BOX).max() < 5
+    assert np.allclose(tilted(BOX, seen, {s: [np.linspace(0, 1, 7)] for s in rows}), BOX)
