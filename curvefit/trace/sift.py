@@ -32,12 +32,14 @@ def is_frame(line: Line, rows: Array, cols: Array, shape: tuple[int, ...], margi
 def without_doubles(lines: list[Line], least: float) -> list[int]:
     """Indices of the lines that show enough ink that no better line has taken.
 
-    least : ink that a line must have for itself [px], or half of its own where that is less.
+    least : ink that a line must have for itself [px], or half of its own where that is less; a
+        line that shares more than nine tenths of its ink is no other in any case.
     """
     order = sorted(range(len(lines)), key=lambda i: -float(lines[i].good.sum()))
     kept: list[int] = []
     for i in order:
-        enough = min(least, 0.5 * float((lines[i].ink > 0.45).sum()))
+        own = float((lines[i].ink > 0.45).sum())
+        enough = min(max(least, 0.1 * own), 0.5 * own)
         if own_ink(lines[i], [lines[k] for k in kept]) >= max(enough, 4.0):
             kept.append(i)
     return sorted(kept)

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from curvefit.records import Panel
+from curvefit.records import Panel, Word
 from curvefit.trace.ink import MARGIN
 
 __all__ = ["beside_markers", "label_boxes", "lettering", "markers", "spread"]
@@ -71,14 +71,19 @@ def _word_mask(panel: Panel, shape: tuple[int, ...]) -> NDArray[np.uint8]:
 
     mask = np.zeros(shape, np.uint8)
     for word in panel.words:
-        letters = sum(c.isalnum() for c in word.text)
-        if letters < 2 or word.score < 0.55:  # a dash is easily read as a lone 1
+        if not _is_word(word):
             continue
         box = panel.warp.to_panel(word.box) + MARGIN
         middle = box.mean(0)
         box = middle + (box - middle) * 1.06
         cv2.fillPoly(mask, [np.round(box).astype(np.int32)], 1)
     return mask
+
+
+def _is_word(word: Word) -> bool:
+    """Whether letters were read, and not dashes: these look like 1, l, I or signs."""
+    letters = [c for c in word.text if c.isalnum()]
+    return len(letters) > 1 and word.score >= 0.55 and not set(letters) <= set("1lIi")
 
 
 def _within(mask: NDArray[np.uint8], labels: NDArray[np.int32], count: int) -> NDArray[np.float64]:

@@ -37,3 +37,16 @@ def test_leaders_are_no_curves(bend):
 
 def test_a_branch_as_broad_as_the_curves_is_no_leader():
     assert len(trace(drawn(3, 0.0))) > 2
+
+
+@pytest.mark.parametrize("text", ["11", "1-", "l I", "\u2014 1 1"])
+def test_dashes_read_as_characters_hide_no_line(text):
+    sheet = Sheet()
+    sheet.curve(X, head(), dash=(12, 9))
+    word = Word(text, np.array([[230, 75], [430, 75], [430, 185], [230, 185]]) + 30.0, 0.9)
+    traces = trace(sheet.panel(3.0, words=(word,)))
+    assert len(traces) == 1
+    one, rms, cover, *_ = matched(traces, X, head())
+    assert rms < 0.3
+    assert cover > 0.96
+    assert one.dash == "dashed"
