@@ -6,7 +6,7 @@ import pytest
 
 from curvefit.geometry import Warp
 from curvefit.notes import CurveNotes
-from curvefit.records import GIVEN, Page, Panel, Word
+from curvefit.records import BRIDGED, GIVEN, Page, Panel, Word
 from curvefit.trace import trace
 
 WIDTH, HEIGHT, PAD = 760, 480, 30
@@ -275,11 +275,29 @@ def test_a_marker_and_the_bit_of_line_beside_it_are_no_word():
     sheet = Sheet()
     y = head()
     sheet.curve(X, y, width=4)
-    at = (int(X[11]) + PAD, int(y[11]) + PAD)
+    at = (int(X[16]) + PAD, int(y[16]) + PAD)
     cv2.circle(sheet.image, at, 10, (255, 255, 255), -1)
     cv2.circle(sheet.image, at, 10, (0, 0, 0), 3, cv2.LINE_AA)
-    left, right, top = 36 + PAD, X[11] + 12 + PAD, y[11] - 12 + PAD
+    left, right, top = 36 + PAD, X[16] + 12 + PAD, y[16] - 12 + PAD
     box = np.array([[left, top], [right, top], [right, top + 24], [left, top + 24]])
     traces = trace(sheet.panel(words=(Word("10", box),)))
     assert len(traces) == 1
     assert traces[0].flat[0, 0] == pytest.approx(40, abs=4)
+
+
+def test_a_label_in_a_gap_of_the_line_is_bridged_and_flagged():
+    sheet = Sheet()
+    tops = (90.0, 150.0, 210.0)
+    for top in tops:
+        y = head(top=top)
+        sheet.curve(X[:200], y[:200], width=4)
+        sheet.curve(X[245:], y[245:], width=4)
+        sheet.text("210 mm", X[204], y[222] + 4, 0.6)
+    traces = trace(sheet.panel(3.0))
+    assert len(traces) == 3
+    for top in tops:
+        one, rms, cover, *_ = matched(traces, X, head(top=top))
+        assert rms < 0.6
+        assert cover > 0.98
+        gap = (one.flat[:, 0] > X[215]) & (one.flat[:, 0] < X[230])
+        assert (one.flags[gap] & BRIDGED).any()
