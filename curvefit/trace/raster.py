@@ -15,7 +15,7 @@ from curvefit.trace.centre import Line, centred, width_along
 from curvefit.trace.ends import settled
 from curvefit.trace.grid import Inked, without_lines
 from curvefit.trace.ink import MARGIN, Flat, Layer, hues, straightened, stroke_width
-from curvefit.trace.joins import joined
+from curvefit.trace.joins import bridged, joined
 from curvefit.trace.legend import without_legends
 from curvefit.trace.linked import Loose, linked_lines, without
 from curvefit.trace.sift import is_frame, own_ink, pointers, without_doubles
@@ -37,6 +37,7 @@ class Settings:
     loose: float = 0.035  #: ink that a line in any direction must show
     long: float = 0.4  #: length across of a line that needs no second look
     contact: float = 0.03  #: contact of two lines that makes a bundle
+    gap: float = 0.12  #: what a label in a line may take of it
     label: float = 0.045  #: what a label may hide of the end of a line across a family
     misses: int = 4  #: tracks without enough clean ink after which no more are tried
     at_most: int = 40  #: lines of one ink
@@ -71,6 +72,7 @@ def lines_of(panel: Panel, settings: Settings | None = None) -> list[Found]:
         lines = [lines[i] for i in without_doubles(lines, least)]
         lines, loose = _sorted_out(panel, layer, lines, width, tolerances)
         lines, loose = joined(lines, loose, layer, 20.0 + 4.0 * width)
+        lines = bridged(lines, layer, tolerances.gap * panel.warp.size[0])
         alone, members = untangled(lines, layer, tolerances.contact * panel.warp.size[0])
         found += [Found(line, colour) for line in alone]
         found += [Found(m.line, colour, bundled=m) for m in members]
