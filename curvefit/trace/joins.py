@@ -87,8 +87,8 @@ def _cleared(layer: Layer, start: Array, end: Array, width: float) -> tuple[Imag
     area = np.zeros(layer.lines.shape, np.uint8)
     ends = [(round(float(x)), round(float(y))) for x, y in (start, end)]
     cv2.line(area, ends[0], ends[1], 1, max(round(width), 1))
-    columns = np.arange(area.shape[1])
-    area[:, (columns <= ends[0][0]) | (columns >= ends[1][0])] = 0
+    columns = np.arange(layer.lines.shape[1])
+    area[:, np.flatnonzero((columns <= ends[0][0]) | (columns >= ends[1][0]))] = 0
     return np.where(area, 0, layer.lines).astype(np.float32), np.where(area, 1, layer.known).astype(
         np.float32
     )
