@@ -14,6 +14,8 @@ __all__ = ["bent", "quarter", "sag"]
 
 Array = NDArray[np.float64]
 
+MOST = 0.05  #: of the box's side that a bend may move a point
+
 _POWERS = [(i, j) for i in range(4) for j in range(4 - i)]  # of Warp.terms
 
 
@@ -43,9 +45,15 @@ def bent(warp: Warp, across: Sequence[Array], upright: Sequence[Array], bow: flo
         trial = np.zeros_like(bend)
         trial[:, axis] = column
         after = max(sag(Warp(warp.matrix, warp.size, trial).to_panel(xy), axis) for xy in lines)
-        if after < 0.6 * before:
+        if after < 0.6 * before and _reach(column) < min(4 * before + 2, MOST * warp.size[axis]):
             bend[:, axis] = column
     return warp if not bend.any() else replace(warp, bend=bend)
+
+
+def _reach(column: Array) -> float:
+    """How far a bend moves any point of the box [px]: far more than lines sag, it is no page."""
+    u, v = (g.ravel() for g in np.meshgrid(np.linspace(-1, 1, 9), np.linspace(-1, 1, 9)))
+    return float(np.abs(Warp.terms(u, v) @ column).max())
 
 
 def sag(xy: Array, axis: int) -> float:
