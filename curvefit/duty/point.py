@@ -81,6 +81,7 @@ def duty(
             "no head curve is among the chosen curves",
             remedy="Choose a pump and diameter whose head was read (--pump, --diameter, --curve).",
         )
+    _npsh_answerable(single, system)
     moved = {name: line.arranged(how) for name, line in single.items()}
     head = moved["head"]
     found = crossings(head.value, system.head, *head.range)
@@ -117,6 +118,18 @@ def duty(
         minimum_speed_ratio(head, system),
         method,
         tuple(findings),
+    )
+
+
+def _npsh_answerable(lines: Mapping[str, Line], system: System) -> None:
+    """Raises where the system asks for an NPSH margin that the chart cannot answer."""
+    if system.operation.npsh_key is None or "npsh_required" in lines:
+        return
+    key, line = system.operation.npsh_key
+    raise InputError(
+        "the system asks for an NPSH margin, and the chosen curves hold no NPSHr",
+        Location(file=system.file or None, line=line, key=key),
+        "Take the key out, or choose a pump whose NPSHr was read.",
     )
 
 
@@ -286,7 +299,28 @@ def _range_findings(point: DutyPoint, system: System, say: _Words) -> list[Findi
                 remedy="Choose another diameter, speed or pump, or set operation.preferred_range.",
             )
         )
+    allowed = system.operation.allowable
+    if share is not None and allowed is not None and not allowed[0] <= share <= allowed[1]:
+        said.append(
+            Finding(
+                "error",
+                "duty.outside-allowable-range",
+                f"The duty lies at {share:.0%} of the best-efficiency flow; the allowable range is "
+                f"{allowed[0]:.0%} to {allowed[1]:.0%}.",
+                remedy="The pump must not run there: choose another diameter, speed or pump.",
+            )
+        )
     need, have = point.npsh_required_si, point.npsh_available_si
+    if need is None and have is not None:
+        said.append(
+            Finding(
+                "info",
+                "duty.npsh-not-charted",
+                f"NPSH available is {say.head(have.value)}, but the chosen curves hold no NPSHr "
+                "at the duty: the margin is not known.",
+                remedy="Ask the maker for NPSHr at the duty.",
+            )
+        )
     if need is not None and have is not None:
         rule = max(
             need.value * system.operation.npsh_ratio, need.value + system.operation.npsh_margin
@@ -306,7 +340,7 @@ def _range_findings(point: DutyPoint, system: System, say: _Words) -> list[Findi
                     remedy="Raise the suction level, cut suction losses, or choose a lower NPSHr.",
                 )
             )
-    elif need is not None and have is None:
+    elif need is not None:
         said.append(
             Finding(
                 "info",

@@ -35,7 +35,8 @@ class Operation:
     """How the pump is to be run and judged.
 
     preferred, allowable : (low, high) as fractions of the BEP flow; hours per year; grade of
-    ISO 9906 to draw about the duty.
+    ISO 9906 to draw about the duty. npsh_key : the key, with its line, that asks for an NPSH
+    margin; None where none was asked for and the defaults only serve to warn.
     """
 
     preferred: tuple[float, float] = (0.7, 1.2)
@@ -44,6 +45,7 @@ class Operation:
     grade: str | None = None
     npsh_ratio: float = 1.1
     npsh_margin: float = 0.6
+    npsh_key: tuple[str, int | None] | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -285,6 +285,14 @@ class _Reader:
             self.quantity(given, "operation", "npsh_margin", "length", least=0.0)
             if "npsh_margin" in given
             else default.npsh_margin,
+            next(
+                (
+                    (f"operation.{n}", self.line_of(f"operation.{n}"))
+                    for n in ("npsh_margin", "npsh_ratio")
+                    if n in given
+                ),
+                None,
+            ),
         )
 
     def span(self, table: Mapping[str, Any], name: str) -> tuple[float, float] | None:

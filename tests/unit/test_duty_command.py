@@ -163,3 +163,27 @@ def test_the_page_holds_duty_losses_and_cautions_and_escapes(curves, plant, tmp_
     for word in ("95 % interval", "k as stated", "witnessed test", "<svg"):
         assert word in page
     assert "http://" not in page.replace("http://www.w3.org/2000/svg", "")
+
+
+def test_an_npsh_margin_that_the_chart_cannot_answer_is_refused(curves, plant, tmp_path, capsys):
+    asking = plant(PLANT + '[operation]\nnpsh_margin = "1 m"\n')
+    code = run("duty", curves, asking, "--diameter", "210 mm", "--on", "points", "--out", tmp_path)
+    assert code == 0  # this chart has an NPSHr curve
+    document = json.loads(curves.read_text(encoding="utf-8"))
+    document["fits"] = [f for f in document["fits"] if "NPSHr" not in f["curves"]]
+    bare = tmp_path / "bare.curves.json"
+    bare.write_text(json.dumps(document), encoding="utf-8")
+    assert run("duty", bare, asking, "--diameter", "210 mm", "--out", tmp_path) == 2
+    said = capsys.readouterr().err
+    for word in ("plant.toml", "line 7", "operation.npsh_margin", "no NPSHr"):
+        assert word in said
+
+
+def test_a_duty_outside_the_allowable_range_is_an_error(curves, plant, tmp_path, capsys):
+    narrow = plant(PLANT + '[operation]\nallowable_range = ["10 %", "30 %"]\n')
+    run("duty", curves, narrow, "--diameter", "195 mm", "--out", tmp_path)
+    document = json.loads((tmp_path / "pump.duty.json").read_text(encoding="utf-8"))
+    found = {f["code"]: f["severity"] for f in document["findings"]}
+    share = document["points"][0]["share_of_bep_flow"]
+    assert share is None or found["duty.outside-allowable-range"] == "error"
+    assert share is not None
